@@ -1,0 +1,237 @@
+"""Short averages of a pass: bins of successive readings, and the design rows of their means.
+
+A bin closes when the probe has moved about half a knot, or when a slice of a dwell has
+passed. The rows are averaged like the readings, so averaging approximates nothing: within a
+piece of the spline a basis function is a polynomial, and the mean of a polynomial over some
+readings is its coefficients times the readings' moments. Each reading is touched once per
+node of the probe's response, in vectorised sums.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+import numpy.typing as npt
+from scipy import sparse
+
+from fieldmap.estimate.response import Response
+from fieldmap.estimate.spline import DEGREE, UniformSpline, piece_polynomials
+from fieldmap.readings.passes import Pass
+
+__all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows"]
+
+Floats = npt.NDArray[np.float64]
+Ints = npt.NDArray[np.intp]
+
+MAX_BLOCKS = 16384  # the search for bin ends looks at this many block means at most
+
+
+@dataclass(frozen=True, eq=False)
+class Bins:
+    """Means over the bins of one pass; every array has one entry a bin.
+
+    Parameters
+    ----------
+    starts : int array
+        Index of the first reading of each bin.
+    count : array
+        Readings in the bin.
+    time, position, flux, speed : arrays
+        Means, in s, m, V s and m/s.
+    bridge : array
+        ``∫A(1-A) dt`` over the bin, s, with A the share of its readings already taken: what
+        the design's ``w(1 - 1/c²)/6`` is for evenly spaced readings.
+    current : array or None
+        Mean of the supply's current over its nominal value, 1.
+    """
+
+    starts: Ints
+    count: Floats
+    time: Floats
+    position: Floats
+    flux: Floats
+    speed: Floats
+    bridge: Floats
+    current: Floats | None = None
+
+
+def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
+    """First reading of each bin: bins of about `step` of travel, dwells cut into slices.
+
+    Parameters
+    ----------
+    time, position : (n,) arrays
+        s and m, in the order of recording.
+    step : float
+        Travel after which a bin closes, m.
+
+    Returns
+    -------
+    int array
+        Increasing, starting with 0.
+    """
+    n = len(time)
+    block = max(1, n // MAX_BLOCKS)
+    first = np.arange(0, n, block)
+    middle = np.add.reduceat(position, first) / np.diff(np.append(first, n))
+    duration = float(time[-1] - time[0])
+    travel = float(np.abs(np.diff(middle)).sum())
+    pace = 2 * duration * step / travel if travel > 0 else duration
+    slice_time = float(np.clip(pace, duration / 400, duration / 32))
+    starts = [0]
+    opened_at, opened_when = float(middle[0]), float(time[0])
+    for index, where, when in zip(
+        first[1:].tolist(), middle[1:].tolist(), time[first[1:]].tolist(), strict=True
+    ):
+        if abs(where - opened_at) >= step or when - opened_when >= slice_time:
+            starts.append(index)
+            opened_at, opened_when = where, when
+    return np.array(starts, dtype=np.intp)
+
+
+def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bins:
+    """Average a pass in bins.
+
+    Parameters
+    ----------
+    one : Pass
+        The pass.
+    step : float
+        Travel after which a bin closes, m.
+    nominal_current : float, optional
+        A; where the pass recorded the supply's current, readings are referred to this.
+
+    Returns
+    -------
+    Bins
+    """
+    starts = bin_starts(one.time, one.position, step)
+    n = len(one.time)
+    count = np.diff(np.append(starts, n)).astype(float)
+    origin = one.flux[0]  # the constant is unknown anyway; removing it saves digits
+
+    def mean(values: Floats) -> Floats:
+        return np.asarray(np.add.reduceat(values, starts) / count)
+
+    position = mean(one.position)
+    time = mean(one.time)
+    current = None
+    if one.current is not None and nominal_current:
+        current = mean(one.current) / nominal_current
+    return Bins(
+        starts=starts,
+        count=count,
+        time=time,
+        position=position,
+        flux=mean(one.flux - origin),
+        speed=_bin_speed(one, starts),
+        bridge=_bridge(one, starts, count),
+        current=current,
+    )
+
+
+def _bin_speed(one: Pass, starts: Ints) -> Floats:
+    """Mean speed in each bin: distance between its ends over the time between them."""
+    n = len(one.time)
+    low = np.maximum(starts - 1, 0)
+    high = np.minimum(np.append(starts[1:], n), n - 1)
+    duration = one.time[high] - one.time[low]
+    distance = one.position[high] - one.position[low]
+    return np.divide(distance, duration, out=np.zeros(len(starts)), where=duration > 0)
+
+
+def _bridge(one: Pass, starts: Ints, count: Floats) -> Floats:
+    """∫A(1-A)dt with the actual time stamps; the walk's share that a bin mean averages out."""
+    n = len(one.time)
+    bin_of = np.repeat(np.arange(len(starts)), count.astype(int))
+    taken = (np.arange(n) - starts[bin_of] + 1.0) / count[bin_of]
+    gap = np.diff(one.time, append=one.time[-1])  # the last reading of a bin has A = 1
+    share = np.add.reduceat(gap * taken * (1 - taken), starts)
+    if one.record == "voltage":
+        # trapezoids average two neighbouring sums of the samples: a quarter step a reading
+        step = np.add.reduceat(gap, starts) / count
+        share = share + step / (4 * count)
+    return np.asarray(share)
+
+
+def mean_rows(
+    bins: Bins, position: Floats, response: Response, spline: UniformSpline
+) -> tuple[sparse.csr_array, sparse.csr_array, sparse.csr_array]:
+    """Design rows of the bin means.
+
+    Parameters
+    ----------
+    bins : Bins
+        The bins.
+    position : (n,) array
+        Position of every reading, m.
+    response : Response
+        How the probe reads the spline.
+    spline : UniformSpline
+        The knots.
+
+    Returns
+    -------
+    running : (bins, size + 1) sparse array
+        Flux rows on the coefficients of F, V s per (T m); empty for round coils.
+    direct : (bins, size) sparse array
+        Flux rows on the coefficients of B, V s/T.
+    slope : (bins, size) sparse array
+        Rows of dΦ/ds on the coefficients of B, V s/(T m).
+    """
+    shape = (len(bins.starts), spline.size)
+    running = _empty(shape[0], spline.size + 1)
+    direct = _empty(*shape)
+    slope = _empty(*shape)
+    bin_of = np.repeat(np.arange(len(bins.starts)), bins.count.astype(int))
+    cubic = piece_polynomials(DEGREE)
+    rising = cubic[1:] * np.arange(1, DEGREE + 1)[:, None] / spline.spacing
+    for offset, weight in zip(response.offsets, response.weights, strict=True):
+        owner, piece, moments = _moments(position + offset, bin_of, bins.count, spline)
+        scatter = _Scatter(owner, piece)
+        if response.of_integral:
+            quartic = piece_polynomials(DEGREE + 1)
+            running = running + scatter(weight * moments @ quartic, running.shape)
+            slope = slope + scatter(weight * moments[:, :-1] @ cubic, shape)
+        else:
+            direct = direct + scatter(weight * moments[:, :-1] @ cubic, shape)
+            slope = slope + scatter(weight * moments[:, :-2] @ rising, shape)
+    return running, direct, slope
+
+
+def _moments(
+    s: Floats, bin_of: Ints, count: Floats, spline: UniformSpline
+) -> tuple[Ints, Ints, Floats]:
+    """Moments up to the fourth of the readings of each (bin, piece), divided by the bin's count."""
+    piece, x = spline.locate(s)
+    first = np.flatnonzero(
+        np.append(True, (np.diff(piece) != 0) | (np.diff(bin_of) != 0))  # noqa: FBT003 a mask
+    )
+    owner = bin_of[first]
+    moments = np.empty((len(first), DEGREE + 2))
+    moments[:, 0] = np.diff(np.append(first, len(s)))
+    power = x.copy()
+    for k in range(1, DEGREE + 2):
+        moments[:, k] = np.add.reduceat(power, first)
+        if k <= DEGREE:
+            power *= x
+    return owner, piece[first], moments / count[owner][:, None]
+
+
+@dataclass(frozen=True, eq=False)
+class _Scatter:
+    """Adds blocks of neighbouring columns, one block a (bin, piece), into a sparse array."""
+
+    owner: Ints
+    piece: Ints
+
+    def __call__(self, blocks: Floats, shape: tuple[int, int]) -> sparse.csr_array:
+        width = blocks.shape[1]
+        rows = np.repeat(self.owner, width)
+        columns = (self.piece[:, None] + np.arange(width)).ravel()
+        return sparse.csr_array((blocks.ravel(), (rows, columns)), shape=shape)
+
+
+def _empty(rows: int, columns: int) -> sparse.csr_array:
+    return sparse.csr_array((rows, columns))

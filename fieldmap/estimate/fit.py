@@ -1,0 +1,281 @@
+"""The joint estimate of one line: all its passes and references at once."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+import numpy.typing as npt
+
+from fieldmap.estimate.model import (
+    Information,
+    PassModel,
+    State,
+    pass_information,
+    reference_information,
+)
+from fieldmap.estimate.normal import NormalSystem
+from fieldmap.estimate.parameters import Nuisance, nuisances
+from fieldmap.estimate.smoothing import Smoother
+from fieldmap.estimate.variance import Fitted, NoiseLevel, improve_levels, initial_level
+from fieldmap.readings.passes import FlipReference
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from fieldmap.estimate.spline import UniformSpline
+    from fieldmap.readings.passes import Pass, Reference
+    from fieldmap.readings.probe import Stage
+
+__all__ = ["LineFit", "PassFit", "fit_line"]
+
+Floats = npt.NDArray[np.float64]
+Key = tuple[str, str]
+
+REACHM = 0.015
+ADAPT = 3
+ROUNDS = 5  # of relinearising, weighing and noise: the design's three and a margin
+PATIENCE = 25  # rounds at most where noise levels are open
+SHIFT_WORTH_REBINNING = 0.02  # of a knot
+
+
+@dataclass(frozen=True, eq=False)
+class PassFit:
+    """How one pass agrees with the joint solution.
+
+    Parameters
+    ----------
+    one : Pass
+        The pass.
+    position : (n,) array
+        Middle of each pair of neighbouring bins, m.
+    residual : (n,) array
+        Whitened residuals of the bin increments: independent unit normals if all is well.
+    freedom : float
+        Expected sum of their squares: n less what the pass gave to the solution.
+    level : NoiseLevel
+        Noise used.
+    """
+
+    one: Pass
+    position: Floats
+    residual: Floats
+    freedom: float
+    level: NoiseLevel
+
+
+@dataclass(frozen=True, eq=False)
+class LineFit:
+    """The field along one line and all it was estimated with.
+
+    Parameters
+    ----------
+    spline : UniformSpline
+        The knots.
+    unknowns : list of Nuisance
+        What follows the coefficients in `values`.
+    values : (p,) array
+        Coefficients of B (T), then the nuisances (SI).
+    covariance : (p, p) array
+        Covariance of `values`.
+    data : Information
+        What readings, references and nuisance priors say, without the smoothness prior.
+    passes : list of PassFit
+        Residuals of each pass.
+    """
+
+    spline: UniformSpline
+    unknowns: list[Nuisance]
+    values: Floats
+    covariance: Floats
+    data: Information
+    passes: list[PassFit]
+
+
+def fit_line(
+    passes: Sequence[Pass],
+    references: Sequence[Reference],
+    stage: Stage,
+    spline: UniformSpline,
+    nominal_current: float | None = None,
+) -> LineFit:
+    """Estimate the field along one line.
+
+    Parameters
+    ----------
+    passes : sequence of Pass
+        At least one.
+    references : sequence
+        Absolute references of this line.
+    stage : Stage
+        Position uncertainties.
+    spline : UniformSpline
+        The knots.
+    nominal_current : float, optional
+        A; readings that recorded the current are referred to it.
+
+    Returns
+    -------
+    LineFit
+
+    Raises
+    ------
+    numpy.linalg.LinAlgError
+        Something is not determined by readings, references and priors.
+    """
+    probes = [one.probe for one in passes]
+    probes += [r.probe for r in references if isinstance(r, FlipReference)]
+    solver = _Solver(
+        passes=passes,
+        references=references,
+        stage=stage,
+        spline=spline,
+        unknowns=nuisances(passes, probes, stage),
+        nominal_current=nominal_current,
+    )
+    return solver.run()
+
+
+class _Solver:
+    """Rounds of linearise, weigh, solve until nothing moves."""
+
+    def __init__(
+        self,
+        passes: Sequence[Pass],
+        references: Sequence[Reference],
+        stage: Stage,
+        spline: UniformSpline,
+        unknowns: list[Nuisance],
+        nominal_current: float | None,
+    ) -> None:
+        self.references = references
+        self.jitter = stage.u_position
+        self.spline = spline
+        self.nominal_current = nominal_current
+        self.models = [PassModel(one, spline, nominal_current) for one in passes]
+        expected = np.array([unknown.mean for unknown in unknowns])
+        self.state = State(np.zeros(spline.size), expected, unknowns)
+        self.levels = {
+            key: initial_level([m for m in self.models if _key(m.one) == key])
+            for key in {_key(one): None for one in passes}
+        }
+        self.first_levels = dict(self.levels)
+        self.smoother = Smoother(
+            spline.roughness(), spline.size + len(unknowns), max(1, round(REACHM / spline.spacing))
+        )
+        self.covariance = np.zeros((0, 0)); self.adapted=False
+
+    def run(self) -> LineFit:
+        """Iterate, then gather the result."""
+        rounds = PATIENCE if any(level.open for level in self.levels.values()) else ROUNDS
+        self._solve(adapt=0)
+        for done in range(1, rounds):
+            before, levels = self.state.b, dict(self.levels)
+            self._improve_levels()
+            if done == 2:
+                self._rebin()
+            data = self._solve(adapt=(0,ADAPT,2,2,2)[min(done,4)])
+            if done >= ROUNDS - 1 and self._settled(before, levels):
+                break
+        return LineFit(
+            spline=self.spline,
+            unknowns=self.state.unknowns,
+            values=np.concatenate([self.state.b, self.state.eta]),
+            covariance=self.covariance,
+            data=data,
+            passes=self._pass_fits(),
+        )
+
+    def _solve(self, adapt: int) -> Information:
+        """One linear solve at the present state."""
+        data = self._priors() + reference_information(self.references, self.spline, self.state)
+        for model in self.models:
+            data = data + pass_information(model.rows(self.state), self._noise(model))
+        if not self.adapted:
+            self.smoother.choose_weight(data)
+        for i in range(adapt + 1):
+            system = NormalSystem(data.matrix + self.smoother.weight * self.smoother.penalty())
+            solution = system.solve(data.right)
+            self.covariance = system.inverse()
+            if i < adapt:
+                self.smoother.adapt(solution[:self.spline.size], self.covariance); self.adapted=True
+        size = self.spline.size
+        self.state = State(solution[:size], solution[size:], self.state.unknowns)
+        return data
+
+    def _noise(self, model: PassModel):  # noqa: ANN202
+        level = self.levels[_key(model.one)]
+        return model.covariance(self.state, level.walk, level.read, self.jitter)
+
+    def _priors(self) -> Information:
+        """What is known of the nuisances before the scan."""
+        size, unknowns = self.spline.size, self.state.unknowns
+        precision = np.array([0.0 if np.isinf(u.sd) else u.sd**-2 for u in unknowns])
+        mean = np.array([u.mean for u in unknowns])
+        pad = np.zeros(size)
+        return Information(
+            np.diag(np.concatenate([pad, precision])),
+            np.concatenate([pad, precision * mean]),
+            float(precision @ mean**2),
+            0.0,
+            0,
+        )
+
+    def _improve_levels(self) -> None:
+        """Re-estimate the noise levels that the campaign leaves open."""
+        for key, level in self.levels.items():
+            if level.open:
+                fitted = [self._fitted(m) for m in self.models if _key(m.one) == key]
+                self.levels[key] = improve_levels(
+                    level, self.first_levels[key], fitted, self.covariance
+                )
+
+    def _fitted(self, model: PassModel) -> Fitted:
+        rows = model.rows(self.state)
+        values = np.concatenate([self.state.b, self.state.eta])
+        return Fitted(model, rows, self._noise(model), rows.target - rows.design @ values)
+
+    def _rebin(self) -> None:
+        """Move the readings to where they were taken, if that is more than a linear step."""
+        worth = SHIFT_WORTH_REBINNING * self.spline.spacing
+        for i, model in enumerate(self.models):
+            shift = model.reading_shift(self.state)
+            if np.abs(shift).max() > worth:
+                self.models[i] = PassModel(model.one, self.spline, self.nominal_current, shift)
+
+    def _settled(self, before: Floats, levels: dict[Key, NoiseLevel]) -> bool:
+        """Whether field and noise levels stand still against their uncertainties."""
+        size = self.spline.size
+        u = np.sqrt(np.diagonal(self.covariance)[:size])
+        moved = float(np.max(np.abs(self.state.b - before) / u))
+        quiet = all(
+            abs(np.log(level.walk / levels[key].walk)) < 0.01
+            and abs(np.log(level.read / levels[key].read)) < 0.01
+            for key, level in self.levels.items()
+            if level.open
+        )
+        return quiet and moved < 0.05
+
+    def _pass_fits(self) -> list[PassFit]:
+        fits = []
+        for model in self.models:
+            fitted = self._fitted(model)
+            information = pass_information(fitted.rows, fitted.covariance)
+            spent = float(np.vdot(information.matrix, self.covariance))
+            middle = 0.5 * (model.bins.position[1:] + model.bins.position[:-1])
+            fits.append(
+                PassFit(
+                    one=model.one,
+                    position=middle,
+                    residual=fitted.covariance.whiten(fitted.residual),
+                    freedom=len(fitted.residual) - spent,
+                    level=self.levels[_key(model.one)],
+                )
+            )
+        return fits
+
+
+def _key(one: Pass) -> Key:
+    """Passes of one integrator and one kind of record share their noise levels."""
+    return one.integrator.name, one.record
