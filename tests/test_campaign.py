@@ -5,6 +5,9 @@ from dataclasses import asdict
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
+
 from fieldmap.errors import InputError
 from fieldmap.readings import (
     RESULT_UNITS,
@@ -20,8 +23,6 @@ from fieldmap.readings import (
     ZeroReference,
     load,
 )
-from hypothesis import HealthCheck, given, settings
-from hypothesis import strategies as st
 
 TABLE = "time [s],position [mm],flux [uV s]\n0.00,-600,0\n0.01,-599,2\n0.02,-598,3\n"
 

@@ -1,9 +1,10 @@
 """Headings of tables."""
 
 import pytest
-from fieldmap.readings.columns import Heading, parse_heading
 from hypothesis import given
 from hypothesis import strategies as st
+
+from fieldmap.readings.columns import Heading, parse_heading
 
 
 @pytest.mark.parametrize(

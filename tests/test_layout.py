@@ -1,6 +1,7 @@
 """The ``[table]`` section: every key, and keys that contradict each other."""
 
 import pytest
+
 from fieldmap.errors import InputError
 from fieldmap.readings.layout import ColumnSpec, TableLayout, read_layout
 

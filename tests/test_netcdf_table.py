@@ -4,6 +4,7 @@ import h5py
 import numpy as np
 import pytest
 import xarray as xr
+
 from fieldmap.errors import InputError
 from fieldmap.readings.layout import ColumnSpec, TableLayout
 from fieldmap.readings.tables import preview_table, read_table

@@ -3,13 +3,14 @@
 import numpy as np
 import pytest
 import xarray as xr
-from fieldmap.errors import InputError
-from fieldmap.readings import Coil, Integrator, Wire, make_pass
-from fieldmap.readings.records import cumulative_flux, integrate_voltage, undo_droop
 from hypothesis import given, settings
 from hypothesis import strategies as st
 from hypothesis.extra import numpy as hnp
 from scipy.interpolate import CubicSpline
+
+from fieldmap.errors import InputError
+from fieldmap.readings import Coil, Integrator, Wire, make_pass
+from fieldmap.readings.records import cumulative_flux, integrate_voltage, undo_droop
 
 WIRE = Wire("wire", turns=20, active_length=0.05)
 COIL = Coil("coil", "round", effective_area=0.3, window=0.01)

@@ -7,13 +7,14 @@ from dataclasses import dataclass, replace
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+from scipy.integrate import quad
+
 from fieldmap.bench.response import flux
 from fieldmap.bench.sources import EngeMagnet, Loop, Slot, Source, TanhMagnet, Uniform
 from fieldmap.errors import RefusedError
 from fieldmap.readings.probe import Coil, Wire
-from hypothesis import given
-from hypothesis import strategies as st
-from scipy.integrate import quad
 
 WIRE = Wire("wire", turns=20, active_length=0.05)
 BUNDLE = replace(WIRE, width=0.004)

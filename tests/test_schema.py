@@ -3,6 +3,9 @@
 import datetime as dt
 
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
 from fieldmap.errors import InputError
 from fieldmap.readings.schema import (
     Key,
@@ -18,8 +21,6 @@ from fieldmap.readings.schema import (
     text,
     whole,
 )
-from hypothesis import given
-from hypothesis import strategies as st
 
 PLACE = "campaign.toml, [stage], key 'k'"
 READERS = {

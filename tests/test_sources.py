@@ -9,6 +9,9 @@ from dataclasses import FrozenInstanceError, replace
 
 import numpy as np
 import pytest
+from hypothesis import given
+from hypothesis import strategies as st
+
 from fieldmap.bench import sources
 from fieldmap.bench.sources import (
     Block,
@@ -26,8 +29,6 @@ from fieldmap.bench.sources import (
 )
 from fieldmap.bench.sources.quadrature import RunningQuadrature
 from fieldmap.errors import InputError, RefusedError
-from hypothesis import given
-from hypothesis import strategies as st
 
 QUADRUPOLE_SET = (0.296471, 4.533219, -2.270982, 1.068627, -0.036391, 0.022261)
 DIPOLE_SET = (0.478959, 1.911289, -1.185953, 1.630554, -1.082657, 0.318111)

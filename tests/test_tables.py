@@ -7,12 +7,13 @@ import tracemalloc
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
+
 from fieldmap.errors import InputError
 from fieldmap.readings import text_blocks
 from fieldmap.readings.layout import ColumnSpec, TableLayout, read_layout
 from fieldmap.readings.tables import preview_table, read_table
-from hypothesis import HealthCheck, given, settings
-from hypothesis import strategies as st
 
 HEAD = "time [s],position [mm],flux [uV s]\n"
 INFINITE = "an infinite value, expected a finite number"

@@ -4,10 +4,11 @@ import math
 
 import numpy as np
 import pytest
-from fieldmap.errors import InputError
-from fieldmap.units import column_to_si, line_to_si, quoted, scale_to_si, si
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
+from fieldmap.errors import InputError
+from fieldmap.units import column_to_si, line_to_si, quoted, scale_to_si, si
 
 WHERE = "campaign.toml, [magnet], key 'gap'"
 

@@ -138,7 +138,8 @@ def _bin_speed(one: Pass, starts: Ints) -> Floats:
     high = np.minimum(np.append(starts[1:], n), n - 1)
     duration = one.time[high] - one.time[low]
     distance = one.position[high] - one.position[low]
-    return np.divide(distance, duration, out=np.zeros(len(starts)), where=duration > 0)
+    speed: Floats = np.divide(distance, duration, out=np.zeros(len(starts)), where=duration > 0)
+    return speed
 
 
 def _bridge(one: Pass, starts: Ints, count: Floats) -> Floats:

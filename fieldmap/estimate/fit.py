@@ -24,6 +24,7 @@ from fieldmap.readings.passes import FlipReference
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from fieldmap.estimate.noise import Tridiagonal
     from fieldmap.estimate.spline import UniformSpline
     from fieldmap.readings.passes import Pass, Reference
     from fieldmap.readings.probe import Stage
@@ -33,9 +34,8 @@ __all__ = ["LineFit", "PassFit", "fit_line"]
 Floats = npt.NDArray[np.float64]
 Key = tuple[str, str]
 
-REACHM = 0.015
-ADAPT = 3
-ROUNDS = 5  # of relinearising, weighing and noise: the design's three and a margin
+ROUNDS = 5  # relinearise: noise seen through the slope, weights, gains and shifts
+ADAPTATIONS = (0, 8, 2, 2)  # steps of the local smoothness in the first rounds
 PATIENCE = 25  # rounds at most where noise levels are open
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
 
@@ -98,6 +98,7 @@ def fit_line(
     references: Sequence[Reference],
     stage: Stage,
     spline: UniformSpline,
+    grain: float,
     nominal_current: float | None = None,
 ) -> LineFit:
     """Estimate the field along one line.
@@ -112,6 +113,8 @@ def fit_line(
         Position uncertainties.
     spline : UniformSpline
         The knots.
+    grain : float
+        Length over which the field's roughness changes, m: about the gap.
     nominal_current : float, optional
         A; readings that recorded the current are referred to it.
 
@@ -132,6 +135,7 @@ def fit_line(
         stage=stage,
         spline=spline,
         unknowns=nuisances(passes, probes, stage),
+        grain=grain,
         nominal_current=nominal_current,
     )
     return solver.run()
@@ -147,6 +151,7 @@ class _Solver:
         stage: Stage,
         spline: UniformSpline,
         unknowns: list[Nuisance],
+        grain: float,
         nominal_current: float | None,
     ) -> None:
         self.references = references
@@ -162,20 +167,22 @@ class _Solver:
         }
         self.first_levels = dict(self.levels)
         self.smoother = Smoother(
-            spline.roughness(), spline.size + len(unknowns), max(1, round(REACHM / spline.spacing))
+            spline.roughness(),
+            spline.size + len(unknowns),
+            reach=max(1, round(grain / spline.spacing)),
         )
         self.covariance = np.zeros((0, 0)); self.adapted=False
 
     def run(self) -> LineFit:
         """Iterate, then gather the result."""
         rounds = PATIENCE if any(level.open for level in self.levels.values()) else ROUNDS
-        self._solve(adapt=0)
+        data = self._solve(adaptations=0)
         for done in range(1, rounds):
             before, levels = self.state.b, dict(self.levels)
             self._improve_levels()
             if done == 2:
                 self._rebin()
-            data = self._solve(adapt=(0,ADAPT,2,2,2)[min(done,4)])
+            data = self._solve(ADAPTATIONS[min(done, len(ADAPTATIONS) - 1)])
             if done >= ROUNDS - 1 and self._settled(before, levels):
                 break
         return LineFit(
@@ -187,24 +194,26 @@ class _Solver:
             passes=self._pass_fits(),
         )
 
-    def _solve(self, adapt: int) -> Information:
-        """One linear solve at the present state."""
+    def _solve(self, adaptations: int) -> Information:
+        """Linearise at the present state, solve, and adapt the smoothness to the solution."""
         data = self._priors() + reference_information(self.references, self.spline, self.state)
         for model in self.models:
             data = data + pass_information(model.rows(self.state), self._noise(model))
-        if not self.adapted:
-            self.smoother.choose_weight(data)
-        for i in range(adapt + 1):
-            system = NormalSystem(data.matrix + self.smoother.weight * self.smoother.penalty())
-            solution = system.solve(data.right)
-            self.covariance = system.inverse()
-            if i < adapt:
-                self.smoother.adapt(solution[:self.spline.size], self.covariance); self.adapted=True
+        if not self.smoother.adapted:
+            self.smoother.start(data)
         size = self.spline.size
+        for _ in range(adaptations):
+            system = NormalSystem(data.matrix + self.smoother.precision())
+            covariance = system.inverse()
+            self.smoother.adapt(system.solve(data.right)[:size], covariance[:size, :size])
+        system = NormalSystem(data.matrix + self.smoother.precision())
+        solution = system.solve(data.right)
         self.state = State(solution[:size], solution[size:], self.state.unknowns)
+        self.covariance = system.inverse()
         return data
 
-    def _noise(self, model: PassModel):  # noqa: ANN202
+    def _noise(self, model: PassModel) -> Tridiagonal:
+        """Covariance of a pass at the present state and noise levels."""
         level = self.levels[_key(model.one)]
         return model.covariance(self.state, level.walk, level.read, self.jitter)
 

@@ -1,12 +1,13 @@
 """Smoothness of the profile: one weight by restricted likelihood, then locally adapted.
 
-The third differences d of B's coefficients are taken as independent normals of variance
-``1/(weight * w_j)``. A fringe is sharp and the rest flat, and a rectangular coil is blind to
-any ripple whose period divides its window: with one weight for all, an invisible ripple as
-strong as the fringe allows would run through the whole map. So w_j follows the data.
+The third differences d of B's coefficients are taken as independent normals of a variance
+that changes slowly along the line. A fringe is sharp and the rest flat, and a rectangular
+coil is blind to any ripple whose period divides its window: with one variance for all, an
+invisible ripple as strong as the fringe allows would run through the whole map.
 
 Sources: P. H. C. Eilers & B. D. Marx, Stat. Sci. 11, 89 (1996); D. Ruppert & R. J. Carroll,
-Aust. N. Z. J. Stat. 42, 205 (2000); S. N. Wood, J. R. Stat. Soc. B 73, 3 (2011).
+Aust. N. Z. J. Stat. 42, 205 (2000); S. N. Wood, J. R. Stat. Soc. B 73, 3 (2011); the update
+of a variance by its effective degrees of freedom: D. J. C. MacKay, Neural Comput. 4, 415 (1992).
 """
 
 from __future__ import annotations
@@ -29,82 +30,89 @@ __all__ = ["Smoother"]
 
 Floats = npt.NDArray[np.float64]
 
-REACH = 4  # knots to each side over which the local variance is averaged
-PSEUDO = 1.0
-BOOST = 2.0
-FLOOR = 1e-10
+PSEUDO = 1.0  # degrees of freedom within reach below which the data no longer move a variance
+HASTE = 1.0  # unresolved differences answer slowly: there a step is taken up to 1 + HASTE times
+FLOOR = 1e-10  # least variance, relative to the largest: keeps the system well conditioned
 
 
 class Smoother:
-    """The smoothness prior of one line and its weights.
+    """The smoothness prior of one line.
 
     Parameters
     ----------
     roughness : (k, size) sparse array
-        Rows that give the differences d.
+        Rows that give the differences d of the coefficients.
     unknowns : int
         Number of all unknowns, the coefficients of B first.
+    reach : int
+        Knots to each side over which a local variance is estimated.
     """
 
-    def __init__(self, roughness: sparse.csr_array, unknowns: int, reach: int = 4) -> None:
+    def __init__(self, roughness: sparse.csr_array, unknowns: int, reach: int) -> None:
         self.roughness = roughness
         self.unknowns = unknowns
-        self.reach = reach
-        self.local = np.ones(roughness.shape[0])
-        self.weight = 0.0
+        reach = min(reach, roughness.shape[0] - 1)
+        self.kernel = 1 - np.abs(np.arange(-reach, reach + 1)) / (reach + 1)
+        self.variance = np.ones(roughness.shape[0])
+        self.adapted = False
 
-    def penalty(self) -> Floats:
-        """Precision of the prior at weight one, over all unknowns."""
+    def precision(self) -> Floats:
+        """Precision of the prior over all unknowns."""
         size = self.roughness.shape[1]
         full = np.zeros((self.unknowns, self.unknowns))
-        scaled = self.roughness.multiply(self.local[:, None])
+        scaled = self.roughness.multiply(1 / self.variance[:, None])
         full[:size, :size] = (self.roughness.T @ scaled).toarray()
         return full
 
-    def choose_weight(self, data: Information) -> None:
-        """Set the weight to the maximum of the restricted likelihood."""
-        penalty = self.penalty()
+    def start(self, data: Information) -> None:
+        """Set one variance for all to the maximum of the restricted likelihood."""
+        self.variance = np.ones_like(self.variance)
+        unit = self.precision()
         size = self.roughness.shape[1]
-        share = np.trace(data.matrix[:size, :size]) / np.trace(penalty)
 
         def cost(log_weight: float) -> float:
-            weight = float(np.exp(log_weight))
             try:
-                system = NormalSystem(data.matrix + weight * penalty)
+                system = NormalSystem(data.matrix + np.exp(log_weight) * unit)
             except np.linalg.LinAlgError:
                 return np.inf
             fitted = float(data.right @ system.solve(data.right))
-            return system.log_determinant() - len(self.local) * log_weight - fitted
+            return system.log_determinant() - len(self.variance) * log_weight - fitted
 
-        if self.weight:
-            centre, span = np.log(self.weight), 4.0
-        else:
-            centre, span = np.log(share), 28.0
-        self.weight = float(np.exp(_minimise(cost, centre, span)))
+        share = np.trace(data.matrix[:size, :size]) / np.trace(unit)
+        self.variance /= np.exp(_minimise(cost, np.log(share), span=28.0))
 
     def adapt(self, b: Floats, covariance: Floats) -> None:
-        """Set the local weights from the differences found and their variances."""
+        """One step of the local variances towards their restricted likelihood's maximum.
+
+        Within reach of each knot the squares found are compared with the degrees of freedom
+        that the data resolve there; where they resolve next to none, the variance stays.
+
+        Parameters
+        ----------
+        b : (size,) array
+            Coefficients of B.
+        covariance : (size, size) array
+            Their covariance.
+        """
         d = self.roughness @ b
-        size = self.roughness.shape[1]
-        spread = self.roughness @ covariance[:size, :size]
-        variance = np.asarray(self.roughness.multiply(spread).sum(axis=1)).ravel()
-        prior = 1 / (self.weight * self.local)
-        found = self._gather(d**2 / prior)
-        resolved = self._gather(np.clip(1 - variance / prior, 0, 1))
-        power = 1 + BOOST * (1 - resolved / self._gather(np.ones(len(d))))
-        ratio = (found + PSEUDO) / (resolved + PSEUDO)
-        prior = prior * ratio**power
-        self.local = 1 / np.maximum(prior, FLOOR * prior.max())
-        self.weight = 1.0
+        spread = self.roughness @ covariance
+        left = np.asarray(self.roughness.multiply(spread).sum(axis=1)).ravel()
+        resolved = np.clip(1 - left / self.variance, 0, 1)
+        freedom = self._gather(resolved)
+        share = freedom / self._gather(np.ones_like(resolved))
+        ratio = (self._gather(d**2 / self.variance) + PSEUDO) / (freedom + PSEUDO)
+        stepped = self.variance * ratio ** (1 + HASTE * (1 - share))
+        self.variance = np.maximum(stepped, FLOOR * stepped.max())
+        self.adapted = True
 
     def _gather(self, values: Floats) -> Floats:
-        reach = min(self.reach, len(values) - 1)
-        kernel = 1 - np.abs(np.arange(-reach, reach + 1)) / (reach + 1)
-        return np.convolve(values, kernel, mode="full")[reach : reach + len(values)]
+        """Sum over the neighbours within reach, with triangular weights."""
+        reach = len(self.kernel) // 2
+        return np.convolve(values, self.kernel)[reach : reach + len(values)]
 
 
 def _minimise(cost: Callable[[float], float], centre: float, span: float) -> float:
-    """Golden-section search for the minimum of a smooth, one-humped cost."""
+    """Golden-section search for the minimum of a one-humped cost, to 0.1."""
     golden = 0.5 * (np.sqrt(5) - 1)
     low, high = centre - span / 2, centre + span / 2
     inner, outer = high - golden * (high - low), low + golden * (high - low)

@@ -1,0 +1,15 @@
+"""What the magnet is: map to results with uncertainty."""
+
+from fieldmap.magnet.evaluate import evaluate
+from fieldmap.magnet.quantity import LineResults, Quantity, Results
+from fieldmap.magnet.verdict import Verdict, conformity, decide
+
+__all__ = [
+    "LineResults",
+    "Quantity",
+    "Results",
+    "Verdict",
+    "conformity",
+    "decide",
+    "evaluate",
+]

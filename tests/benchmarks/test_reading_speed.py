@@ -6,6 +6,7 @@ import time
 import numpy as np
 import pandas as pd
 import pytest
+
 from fieldmap.readings import read_table
 
 ROWS = 2_000_000

@@ -9,9 +9,10 @@ import math
 
 import numpy as np
 import pytest
-from fieldmap.bench.sources import Block, Loop, Plates, Solenoid, TanhMagnet, loop_field
 from scipy.constants import mu_0
 from scipy.special import ellipe, ellipk, lambertw
+
+from fieldmap.bench.sources import Block, Loop, Plates, Solenoid, TanhMagnet, loop_field
 
 S = np.linspace(-0.9, 0.9, 181)
 SOLENOID = Solenoid(radius=0.1, length=0.4, turns=500, current=10.0)

@@ -11,6 +11,7 @@ import math
 
 import numpy as np
 import pytest
+
 from fieldmap.bench.response import flux
 from fieldmap.bench.sources import Loop, TanhMagnet
 from fieldmap.readings.probe import Coil

@@ -9,9 +9,10 @@ from __future__ import annotations
 
 import numpy as np
 import pytest
+from scipy.integrate import quad
+
 from fieldmap.bench.sources import EngeMagnet, TanhMagnet, TwoTermEnge
 from fieldmap.bench.sources.quadrature import RunningQuadrature
-from scipy.integrate import quad
 
 QUADRUPOLE_SET = (0.296471, 4.533219, -2.270982, 1.068627, -0.036391, 0.022261)
 DIPOLE_SET = (0.478959, 1.911289, -1.185953, 1.630554, -1.082657, 0.318111)

@@ -5,8 +5,9 @@ from __future__ import annotations
 import magpylib
 import numpy as np
 import pytest
-from fieldmap.bench.sources import Block, Loop, Slot, Solenoid, loop_field
 from scipy.constants import mu_0
+
+from fieldmap.bench.sources import Block, Loop, Slot, Solenoid, loop_field
 
 S = np.linspace(-0.6, 0.6, 241)
 # the library may carry another edition of the magnetic constant

@@ -1,0 +1,222 @@
+"""What a fit says about the readings it was made from, in sentences with numbers."""
+
+from __future__ import annotations
+
+from dataclasses import asdict, dataclass
+from typing import TYPE_CHECKING, Any, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from fieldmap.estimate.fit import LineFit, PassFit
+    from fieldmap.readings.passes import Pass
+    from fieldmap.readings.probe import Stage
+
+__all__ = ["Finding", "line_findings", "pass_findings"]
+
+Floats = npt.NDArray[np.float64]
+
+SHARE_WORTH_A_WORD = 0.75  # of the variance of the level
+RARE = 4.0  # standard deviations: about 1 clean pass in 30 000
+
+
+@dataclass(frozen=True)
+class Finding:
+    """One remark on the readings.
+
+    Parameters
+    ----------
+    code : str
+        Stable code.
+    severity : {"refuse", "warn", "note"}
+        How much it matters.
+    where : str
+        Pass, probe or key concerned.
+    text : str
+        One sentence: the number that triggered it, and the remedy.
+    """
+
+    code: str
+    severity: Literal["refuse", "warn", "note"]
+    where: str
+    text: str
+
+    def as_dict(self) -> dict[str, Any]:
+        """The form used in results.json."""
+        return asdict(self)
+
+
+def pass_findings(passes: Sequence[Pass]) -> list[Finding]:
+    """Remarks that need no fit: ranges and settings.
+
+    Parameters
+    ----------
+    passes : sequence of Pass
+        Measured passes.
+
+    Returns
+    -------
+    list of Finding
+    """
+    found = []
+    for one in passes:
+        full_scale = one.integrator.full_scale
+        largest = float(np.abs(one.flux).max())
+        if full_scale is not None and largest >= full_scale:
+            found.append(
+                Finding(
+                    "full-scale-exceeded",
+                    "warn",
+                    one.name,
+                    f"flux reaches {largest:.4g} V s, the integrator holds {full_scale:.4g} V s; "
+                    "readings there are clipped: use a larger range or fewer turns.",
+                )
+            )
+        found += _voltage(one)
+        if one.integrator.leak_time is not None and one.integrator.kind == "digital":
+            found.append(
+                Finding(
+                    "leak-time-ignored",
+                    "note",
+                    one.integrator.name,
+                    "leak_time is stated for a digital integrator, which does not droop; it was "
+                    'not applied: set kind = "analog" if it does.',
+                )
+            )
+    return list(dict.fromkeys(found))
+
+
+def _voltage(one: Pass) -> list[Finding]:
+    """Input voltage above what the integrator takes."""
+    limit = one.integrator.max_voltage
+    step = np.diff(one.time)
+    if limit is None or not np.any(step > 0):
+        return []
+    rates = np.divide(np.diff(one.flux), step, out=np.zeros_like(step), where=step > 0)
+    largest = float(np.abs(rates).max())
+    if largest < limit:
+        return []
+    return [
+        Finding(
+            "voltage-exceeded",
+            "warn",
+            one.name,
+            f"the induced voltage reaches {largest:.4g} V, the integrator takes {limit:.4g} V; "
+            "scan slower or use fewer turns.",
+        )
+    ]
+
+
+def line_findings(fit: LineFit, low: float, high: float, stage: Stage) -> list[Finding]:
+    """Remarks on one fitted line.
+
+    Parameters
+    ----------
+    fit : LineFit
+        The fit.
+    low, high : float
+        Ends of the mapped range, m.
+    stage : Stage
+        Position uncertainties as stated.
+
+    Returns
+    -------
+    list of Finding
+    """
+    found = [finding for one in fit.passes for finding in _noise(one)]
+    found += _drift(fit, low, high)
+    found += _trusted(fit)
+    if fit.passes and stage.u_lag == 0 and stage.u_position == 0:
+        found.append(
+            Finding(
+                "stage-certain",
+                "note",
+                "[stage]",
+                "no lag and no position jitter is stated, so positions are taken as exact; "
+                "state u_position and u_lag if they are not.",
+            )
+        )
+    return found
+
+
+def _noise(one: PassFit) -> list[Finding]:
+    """Residuals against the noise: stated levels are checked, estimated ones must be white."""
+    square = float(one.residual @ one.residual)
+    freedom = max(one.freedom, 1.0)
+    # Wilson-Hilferty: the cube root of a chi-square over its freedom is close to normal
+    excess = (np.cbrt(square / freedom) - (1 - 2 / (9 * freedom))) / np.sqrt(2 / (9 * freedom))
+    stated = one.level.walk_known or one.level.read_known
+    if excess > RARE:
+        cause = "than stated" if stated else "than one noise level for all passes explains"
+        return [
+            Finding(
+                "residuals-too-large",
+                "warn",
+                one.one.name,
+                f"residuals are {np.sqrt(square / freedom):.2f} times larger {cause}; look for "
+                "spikes, jumps, a wrong probe or a pass that disagrees with its neighbours.",
+            )
+        ]
+    if excess < -RARE and stated:
+        return [
+            Finding(
+                "residuals-too-small",
+                "note",
+                one.one.name,
+                f"residuals are only {np.sqrt(square / freedom):.2f} of what the stated noise "
+                "gives; the stated noise levels may be too large, and so the uncertainties.",
+            )
+        ]
+    return []
+
+
+def _drift(fit: LineFit, low: float, high: float) -> list[Finding]:
+    """Whether the mean field rests on drifts that the readings cannot tell."""
+    size = fit.spline.size
+    drifts = [size + i for i, u in enumerate(fit.unknowns) if u.kind == "drift"]
+    if not drifts:
+        return []
+    row = fit.spline.integral_row(low, high)
+    spread = fit.covariance[:size, :size] @ row
+    variance = float(row @ spread)
+    shared = fit.covariance[np.ix_(drifts, range(size))] @ row
+    block = fit.covariance[np.ix_(drifts, drifts)]
+    share = float(shared @ np.linalg.solve(block, shared)) / variance
+    if share < SHARE_WORTH_A_WORD:
+        return []
+    u = np.sqrt(variance) / (high - low)
+    return [
+        Finding(
+            "drift-not-separated",
+            "warn",
+            "",
+            f"{share:.0%} of the variance of the mean field (u = {u:.2g} T) comes from integrator "
+            "drift; a dwell at each end, a pass back or an absolute reference would separate them.",
+        )
+    ]
+
+
+def _trusted(fit: LineFit) -> list[Finding]:
+    """Name what the readings cannot check, so that it rests on the campaign file alone."""
+    size = fit.spline.size
+    sd = np.sqrt(np.diagonal(fit.covariance)[size:])
+    kept = [
+        f"{unknown.name} (u = {unknown.sd:.2g}{'' if unknown.unit == '1' else ' ' + unknown.unit})"
+        for unknown, after in zip(fit.unknowns, sd.tolist(), strict=True)
+        if unknown.kind != "drift" and after > 0.9 * unknown.sd
+    ]
+    if not kept:
+        return []
+    return [
+        Finding(
+            "taken-on-trust",
+            "note",
+            "",
+            f"the readings cannot check {', '.join(kept)}: results rest on the stated "
+            "uncertainties; a second probe or an absolute reference checks a gain, a pass back "
+            "checks a lag, and only another length standard checks scale and offset.",
+        )
+    ]

@@ -1,0 +1,83 @@
+"""Which knots the map gets: fine enough for gap, window and sampling, and no finer."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+from fieldmap.estimate.spline import UniformSpline
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from fieldmap.estimate.coverage import AnyPass
+
+__all__ = ["MOST_KNOTS", "first_spacing", "grain", "knots_for", "sampling"]
+
+KNOTS_PER_GAP = 10  # a fringe bends within about a third of the gap
+LEAST_KNOTS = 60  # even where the whole line is shorter than a gap
+MOST_KNOTS = 3000
+
+
+def grain(gap: float | None, low: float, high: float) -> float:
+    """Length over which the field's roughness changes: the gap, or a twentieth of the line (m)."""
+    return min(gap, high - low) if gap else (high - low) / 20
+
+
+def sampling(passes: Sequence[AnyPass]) -> float:
+    """Distance between readings of the finest pass, m."""
+    finest = np.inf
+    for one in passes:
+        position = getattr(one, "position", None)
+        if position is None:
+            finest = min(finest, one.speed / one.rate)  # type: ignore[union-attr]
+        else:
+            finest = min(finest, float(np.ptp(position)) / (len(position) - 1))
+    return float(finest)
+
+
+def first_spacing(gap: float | None, low: float, high: float, readings_apart: float) -> float:
+    """First choice of the knot spacing, m; `stitch` then checks it by halving.
+
+    Parameters
+    ----------
+    gap : float, optional
+        Full gap or bore diameter, m.
+    low, high : float
+        Ends of the line, m.
+    readings_apart : float
+        Distance between readings, m; knots closer than that learn nothing.
+
+    Returns
+    -------
+    float
+
+    Examples
+    --------
+    >>> round(first_spacing(0.03, -0.6, 0.6, 0.0005), 6)
+    0.003
+    """
+    travel = high - low
+    spacing = max(grain(gap, low, high) / KNOTS_PER_GAP, readings_apart)
+    return float(np.clip(spacing, travel / MOST_KNOTS, travel / LEAST_KNOTS))
+
+
+def knots_for(passes: Sequence[AnyPass], low: float, high: float, spacing: float) -> UniformSpline:
+    """Knots that cover all that any probe saw.
+
+    Parameters
+    ----------
+    passes : sequence of Pass or PlannedPass
+        Passes of the line.
+    low, high : float
+        Ends of the recorded positions, m.
+    spacing : float
+        Knot spacing, m.
+
+    Returns
+    -------
+    UniformSpline
+    """
+    margin = max(one.probe.extent for one in passes) / 2 + spacing
+    return UniformSpline.covering(low - margin, high + margin, spacing)

@@ -1,0 +1,332 @@
+"""The map: an xarray Dataset labelled after CF-1.11 that holds all later results need."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import asdict, dataclass
+from typing import TYPE_CHECKING, Any
+
+import numpy as np
+import numpy.typing as npt
+
+from fieldmap.errors import InputError
+from fieldmap.estimate.fieldline import FieldLine
+from fieldmap.estimate.findings import Finding
+from fieldmap.estimate.spline import UniformSpline
+from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    import xarray as xr
+
+    from fieldmap.estimate.fit import LineFit, PassFit
+
+__all__ = [
+    "FORMAT",
+    "MappedLine",
+    "build_map",
+    "map_axis",
+    "map_findings",
+    "map_limits",
+    "map_lines",
+    "map_magnet",
+    "map_passes",
+]
+
+Floats = npt.NDArray[np.float64]
+
+FORMAT = "fieldmap-map/1"
+
+
+@dataclass(frozen=True, eq=False)
+class MappedLine:
+    """One fitted line with its place and its remarks (m)."""
+
+    x: float
+    y: float
+    low: float
+    high: float
+    fit: LineFit
+    findings: tuple[Finding, ...]
+
+
+def build_map(
+    campaign: Campaign,
+    lines: Sequence[MappedLine],
+    findings: Sequence[Finding],
+    step: float | None = None,
+) -> xr.Dataset:
+    """Label the fitted lines.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        What was measured.
+    lines : sequence of MappedLine
+        At least one.
+    findings : sequence of Finding
+        Remarks on the whole campaign; those of the lines are added.
+    step : float, optional
+        Grid step along the travel, m.
+
+    Returns
+    -------
+    xarray.Dataset
+        Data variables on (y, x, z) and what later integrals need.
+    """
+    import xarray as xr
+
+    z = _grid(lines, step)
+    xs, ys = sorted({line.x for line in lines}), sorted({line.y for line in lines})
+    shape = (len(ys), len(xs))
+    most = max(line.fit.spline.size for line in lines)
+    others = max(len(line.fit.unknowns) for line in lines)
+    field, u_field = np.full((*shape, len(z)), np.nan), np.full((*shape, len(z)), np.nan)
+    count = np.zeros((*shape, len(z)), dtype=np.int32)
+    b, spread = np.full((*shape, most), np.nan), np.full((*shape, most, most), np.nan)
+    eta, eta_spread = np.full((*shape, others), np.nan), np.full((*shape, others, others), np.nan)
+    shared = np.full((*shape, most, others), np.nan)
+    reach = np.full((*shape, 2), np.nan)
+    knots = np.full((*shape, 3), np.nan)
+    for line in lines:
+        at = ys.index(line.y), xs.index(line.x)
+        field[at], u_field[at] = _on_grid(line, z)
+        count[at] = _readings_near(line, z)
+        n, scale = line.fit.spline.size, _nuisance_units(line.fit)
+        m = len(scale)
+        b[at][:n], spread[at][:n, :n] = line.fit.values[:n], line.fit.covariance[:n, :n]
+        eta[at][:m] = line.fit.values[n:] / scale
+        eta_spread[at][:m, :m] = line.fit.covariance[n:, n:] / np.outer(scale, scale)
+        shared[at][:n, :m] = line.fit.covariance[:n, n:] / scale
+        reach[at] = line.low, line.high
+        spline = line.fit.spline
+        knots[at] = spline.start, spline.spacing, spline.size
+    grid = ("y", "x", "z")
+    residual = _residuals(lines)
+    dataset = xr.Dataset(
+        {
+            "B": (grid, field),
+            "B_se": (grid, u_field),
+            "n_readings": (grid, count),
+            "coefficient": (("y", "x", "basis"), b),
+            "coefficient_covariance": (("y", "x", "basis", "basis_2"), spread),
+            "nuisance": (("y", "x", "effect"), eta),
+            "nuisance_covariance": (("y", "x", "effect", "effect_2"), eta_spread),
+            "shared_covariance": (("y", "x", "basis", "effect"), shared),
+            "mapped_range": (("y", "x", "end"), reach),
+            "knots": (("y", "x", "knot_item"), knots),
+            "residual": (("increment",), residual[0]),
+            "residual_position": (("increment",), residual[1]),
+            "residual_pass": (("increment",), residual[2]),
+        },
+        coords={"y": ("y", ys), "x": ("x", xs), "z": ("z", z)},
+    )
+    _describe(dataset, campaign, lines, findings)
+    return dataset
+
+
+def _nuisance_units(fit: LineFit) -> Floats:
+    """Each nuisance is kept in units of its prior uncertainty; in SI where it has none."""
+    return np.array([1.0 if np.isinf(u.sd) else u.sd for u in fit.unknowns])
+
+
+def _grid(lines: Sequence[MappedLine], step: float | None) -> Floats:
+    """Grid points at plain multiples of a plain step, over all lines."""
+    low, high = min(line.low for line in lines), max(line.high for line in lines)
+    if step is None:
+        wanted = min(line.fit.spline.spacing for line in lines) / 2
+        decade = 10.0 ** np.floor(np.log10(wanted))
+        step = float(decade * max(m for m in (1, 2, 5) if m * decade <= wanted * 1.000001))
+    elif not 0 < step <= high - low:
+        raise InputError("step", f"{step:g} m", f"a step above 0 and up to {high - low:g} m")
+    first, last = np.ceil(low / step - 1e-9), np.floor(high / step + 1e-9)
+    return np.asarray(np.arange(first, last + 1) * step)
+
+
+def _on_grid(line: MappedLine, z: Floats) -> tuple[Floats, Floats]:
+    one = field_line(line)
+    outside = (z < line.low - 1e-9) | (z > line.high + 1e-9)
+    inside = np.where(outside, line.low, z)
+    return np.where(outside, np.nan, one.field(inside)), np.where(
+        outside, np.nan, one.u_field(inside)
+    )
+
+
+def field_line(line: MappedLine) -> FieldLine:
+    """The field of a line just fitted."""
+    fit, n = line.fit, line.fit.spline.size
+    return FieldLine(
+        line.x, line.y, line.low, line.high, fit.spline, fit.values[:n], fit.covariance[:n, :n]
+    )
+
+
+def _readings_near(line: MappedLine, z: Floats) -> npt.NDArray[np.int32]:
+    """Number of readings that fall to each grid point."""
+    middles = 0.5 * (z[1:] + z[:-1])
+    total = np.zeros(len(z), dtype=np.int64)
+    for one in line.fit.passes:
+        total += np.bincount(np.searchsorted(middles, one.one.position), minlength=len(z))
+    return total.astype(np.int32)
+
+
+def _residuals(lines: Sequence[MappedLine]) -> tuple[Floats, Floats, npt.NDArray[np.int32]]:
+    """Residuals of all passes end to end, their positions, and which pass each belongs to."""
+    fits = [one for line in lines for one in line.fit.passes]
+    owner = np.repeat(np.arange(len(fits)), [len(one.residual) for one in fits])
+    return (
+        np.concatenate([one.residual for one in fits]),
+        np.concatenate([one.position for one in fits]),
+        owner.astype(np.int32),
+    )
+
+
+def _describe(
+    dataset: xr.Dataset,
+    campaign: Campaign,
+    lines: Sequence[MappedLine],
+    findings: Sequence[Finding],
+) -> None:
+    """Attributes: units and names of the variables, provenance of the whole."""
+    component = campaign.magnet.component
+    along = campaign.axis.travel
+    labels: dict[str, tuple[str, str]] = {
+        "B": ("T", f"flux density, component {component}"),
+        "B_se": ("T", f"standard uncertainty of the flux density, component {component}"),
+        "n_readings": ("1", "number of readings nearest to the grid point"),
+        "coefficient": ("T", "coefficients of the cubic B-spline of the flux density"),
+        "coefficient_covariance": ("T2", "covariance of coefficient"),
+        "nuisance": ("1", "drifts, gains and position errors, each in its unit listed in lines"),
+        "nuisance_covariance": ("1", "covariance of nuisance"),
+        "shared_covariance": ("T", "covariance between coefficient and nuisance"),
+        "mapped_range": ("m", f"lowest and highest recorded position along {along}"),
+        "knots": ("1", "first knot in m, knot spacing in m, number of coefficients of B"),
+        "residual": ("1", "whitened residual of the bin increments"),
+        "residual_position": ("m", f"position along {along} of the residual"),
+        "residual_pass": ("1", "index of the pass in the list of passes"),
+        "x": ("m", "transverse position x of the line"),
+        "y": ("m", "transverse position y of the line"),
+        "z": ("m", f"position along the travel, {along}"),
+    }
+    for name, (units, long_name) in labels.items():
+        dataset[name].attrs = {"units": units, "long_name": long_name}
+    dataset["B"].attrs["ancillary_variables"] = "B_se n_readings"
+    gathered = [*findings, *(remark for line in lines for remark in line.findings)]
+    dataset.attrs = {
+        "Conventions": "CF-1.11",
+        "format": FORMAT,
+        "title": f"Field map: {campaign.name}",
+        "source": "moving-probe scans with a voltage integrator",
+        "campaign": json.dumps(_campaign_facts(campaign)),
+        "lines": json.dumps([_line_facts(line) for line in lines]),
+        "passes": json.dumps([_pass_facts(one) for line in lines for one in line.fit.passes]),
+        "findings": json.dumps([finding.as_dict() for finding in dict.fromkeys(gathered)]),
+    }
+
+
+def _campaign_facts(campaign: Campaign) -> dict[str, Any]:
+    return {
+        "name": campaign.name,
+        "sha256": campaign.sha256,
+        "magnet": asdict(campaign.magnet),
+        "axis": asdict(campaign.axis),
+        "stage": asdict(campaign.stage),
+        "limits": [asdict(limit) for limit in campaign.limits],
+    }
+
+
+def _line_facts(line: MappedLine) -> dict[str, Any]:
+    sd = [None if np.isinf(u.sd) else u.sd for u in line.fit.unknowns]
+    units = _nuisance_units(line.fit).tolist()
+    unknowns = [
+        {**asdict(u), "sd": s, "unit": f"{scale!r} {u.unit}"}
+        for u, s, scale in zip(line.fit.unknowns, sd, units, strict=True)
+    ]
+    return {"x": line.x, "y": line.y, "unknowns": unknowns}
+
+
+def _pass_facts(one: PassFit) -> dict[str, Any]:
+    measured = one.one
+    return {
+        "name": measured.name,
+        "sha256": measured.sha256,
+        "probe": measured.probe.name,
+        "record": measured.record,
+        "x": measured.x,
+        "y": measured.y,
+        "readings": len(measured.time),
+        "walk_noise": one.level.walk,
+        "read_noise": one.level.read,
+        "chi_square": float(one.residual @ one.residual),
+        "freedom": one.freedom,
+    }
+
+
+def _facts(fmap: xr.Dataset, name: str) -> Any:
+    """A JSON attribute of the map."""
+    try:
+        return json.loads(fmap.attrs[name])
+    except (KeyError, TypeError, ValueError) as error:
+        raise InputError(
+            "map",
+            f"no readable attribute '{name}'",
+            "a map written by this package",
+            "reduce the campaign again",
+        ) from error
+
+
+def map_lines(fmap: xr.Dataset) -> list[FieldLine]:
+    """The lines of a map, in the order of (y, x).
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+
+    Returns
+    -------
+    list of FieldLine
+    """
+    found = []
+    for facts in _facts(fmap, "lines"):
+        at = fmap.sel(x=facts["x"], y=facts["y"])
+        start, spacing, size = at["knots"].values.tolist()
+        n = int(size)
+        found.append(
+            FieldLine(
+                x=float(facts["x"]),
+                y=float(facts["y"]),
+                low=float(at["mapped_range"].values[0]),
+                high=float(at["mapped_range"].values[1]),
+                spline=UniformSpline(start, spacing, n),
+                b=at["coefficient"].values[:n],
+                covariance=at["coefficient_covariance"].values[:n, :n],
+            )
+        )
+    return found
+
+
+def map_axis(fmap: xr.Dataset) -> Axis:
+    """Integration limits and flat window that the campaign named."""
+    axis = _facts(fmap, "campaign")["axis"]
+    return Axis(axis["travel"], tuple(axis["integrate"]), tuple(axis["flat"]))
+
+
+def map_limits(fmap: xr.Dataset) -> tuple[Limit, ...]:
+    """Tolerances that the campaign named."""
+    return tuple(Limit(**limit) for limit in _facts(fmap, "campaign")["limits"])
+
+
+def map_magnet(fmap: xr.Dataset) -> Magnet:
+    """What the campaign said of the magnet."""
+    return Magnet(**_facts(fmap, "campaign")["magnet"])
+
+
+def map_findings(fmap: xr.Dataset) -> list[Finding]:
+    """Remarks made while stitching."""
+    return [Finding(**finding) for finding in _facts(fmap, "findings")]
+
+
+def map_passes(fmap: xr.Dataset) -> list[dict[str, Any]]:
+    """What is kept of each pass: name, hash, probe, noise, chi-square, freedom."""
+    return list(_facts(fmap, "passes"))

@@ -1,0 +1,270 @@
+"""From passes to a map: group the lines, check, fit, refine the knots, label the result."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+import numpy as np
+import numpy.typing as npt
+
+from fieldmap.errors import InputError, RefusedError
+from fieldmap.estimate.coverage import check_levels, stretches
+from fieldmap.estimate.findings import Finding, line_findings, pass_findings
+from fieldmap.estimate.fit import LineFit, fit_line
+from fieldmap.estimate.knots import MOST_KNOTS, first_spacing, grain, knots_for, sampling
+from fieldmap.estimate.map import MappedLine, build_map
+from fieldmap.readings.passes import Axis, Campaign, Magnet, Pass, Reference, ZeroReference
+from fieldmap.readings.probe import Stage
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
+    import xarray as xr
+
+__all__ = ["reconstruct", "stitch"]
+
+Floats = npt.NDArray[np.float64]
+
+STILL = 0.1  # halving the knots may move no result by more than this many u
+HALVINGS = 3
+
+
+def stitch(
+    campaign: Campaign, *, knot_spacing: float | None = None, step: float | None = None
+) -> xr.Dataset:
+    """Estimate the field map that explains all passes and references of a campaign at once.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        From `load`, or built from plain arrays.
+    knot_spacing : float, optional
+        m; chosen from gap, window and sampling, and checked by halving, if not given.
+    step : float, optional
+        Distance of the map's grid points along the travel, m; half a knot rounded to a
+        plain number if not given. Results do not depend on it.
+
+    Returns
+    -------
+    xarray.Dataset
+        ``B`` (T), ``B_se`` (T) and ``n_readings`` on (y, x, z), with the spline coefficients,
+        their covariance, residuals and findings.
+
+    Raises
+    ------
+    RefusedError
+        No absolute level, passes that do not meet, or nothing measured.
+    InputError
+        A reference that names no line.
+
+    Examples
+    --------
+    >>> import fieldmap
+    >>> from fieldmap.demo import demo_folder
+    >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "slot" / "campaign.toml"))
+    >>> fmap["B"].dims
+    ('y', 'x', 'z')
+
+    Notes
+    -----
+    Running-integral spline with locally adaptive smoothness; see `fieldmap.estimate.fit`,
+    `fieldmap.estimate.smoothing` and `fieldmap.estimate.bins` for the sources.
+    """
+    if not campaign.passes:
+        raise RefusedError(
+            "nothing-measured",
+            str(campaign.path or campaign.name),
+            "found no measured pass, expected at least one [[passes]] entry with a file; "
+            "name the table that the bench recorded.",
+        )
+    groups = _lines(campaign.passes)
+    lines = [
+        _fit_one(campaign, passes, _references(campaign, key, groups), knot_spacing)
+        for key, passes in groups.items()
+    ]
+    return build_map(campaign, lines, pass_findings(campaign.passes), step)
+
+
+def reconstruct(
+    one: Pass,
+    *,
+    references: Sequence[Reference] = (),
+    gap: float | None = None,
+    stage: Stage | None = None,
+    knot_spacing: float | None = None,
+    step: float | None = None,
+) -> xr.Dataset:
+    """The same estimate for a single pass: the field along it, with its uncertainty.
+
+    Parameters
+    ----------
+    one : Pass
+        From a campaign, or from plain arrays by `make_pass`.
+    references : sequence, optional
+        Absolute references; a coil pass needs one.
+    gap : float, optional
+        Full gap or bore, m; a twentieth of the travel is assumed if not given.
+    stage : Stage, optional
+        Position uncertainties; certain positions if not given.
+    knot_spacing, step : float, optional
+        As for `stitch`.
+
+    Returns
+    -------
+    xarray.Dataset
+        As from `stitch`, with one line.
+
+    Raises
+    ------
+    RefusedError
+        A coil pass without a reference.
+
+    Examples
+    --------
+    >>> import numpy as np
+    >>> from fieldmap.readings import Wire, make_pass
+    >>> z = np.linspace(-0.1, 0.1, 401)
+    >>> flux = 0.05 * np.tanh(z / 0.02)  # one turn of 50 mm in a field of sech² shape
+    >>> profile = reconstruct(make_pass(z, flux, rate=100.0, probe=Wire("w", 1, 0.05)), gap=0.04)
+    >>> round(float(profile["B"].sel(z=0, method="nearest").item()), 2)
+    50.0
+    """
+    low, high = float(one.position.min()), float(one.position.max())
+    third = (high - low) / 3
+    campaign = Campaign(
+        name=one.name,
+        magnet=Magnet("other", "B", gap or (high - low) / 20),
+        axis=Axis("z", (low, high), (low + third, high - third)),
+        stage=stage or Stage(),
+        passes=(one,),
+        references=tuple(references),
+    )
+    return stitch(campaign, knot_spacing=knot_spacing, step=step)
+
+
+def _lines(passes: Sequence[Pass]) -> dict[tuple[float, float], list[Pass]]:
+    """Passes by the line (y, x) they travel."""
+    groups: dict[tuple[float, float], list[Pass]] = {}
+    for one in passes:
+        groups.setdefault((one.y, one.x), []).append(one)
+    return dict(sorted(groups.items()))
+
+
+def _references(
+    campaign: Campaign,
+    key: tuple[float, float],
+    groups: dict[tuple[float, float], list[Pass]],
+) -> list[Reference]:
+    """References that bear on one line."""
+    own: list[Reference] = []
+    for i, reference in enumerate(campaign.references, start=1):
+        if reference.x is None and reference.y is None:
+            if len(groups) > 1 and not isinstance(reference, ZeroReference):
+                raise InputError(
+                    f"[[references]] {i}",
+                    f"no x and y, yet passes on {len(groups)} lines",
+                    "the line that the reference was taken on",
+                    "add x and y",
+                )
+            own.append(reference)
+            continue
+        place = (reference.y or 0.0, reference.x or 0.0)
+        if place not in groups:
+            raise InputError(
+                f"[[references]] {i}",
+                f"x = {place[1]:g} m, y = {place[0]:g} m",
+                "the x and y of a line that some pass travels",
+                "mend x and y, or measure that line",
+            )
+        if place == key:
+            own.append(reference)
+    return own
+
+
+def _fit_one(
+    campaign: Campaign,
+    passes: list[Pass],
+    references: list[Reference],
+    spacing: float | None,
+) -> MappedLine:
+    """Check and fit one line, and halve the knots until the results stand still."""
+    low = min(float(one.position.min()) for one in passes)
+    high = max(float(one.position.max()) for one in passes)
+    _check_travel(passes, low, high)
+    gap = campaign.magnet.gap
+    chosen = spacing or first_spacing(gap, low, high, sampling(passes))
+    check_levels(stretches(passes, slack=2 * chosen), references)
+
+    def fit(width: float) -> LineFit:
+        knots = knots_for(passes, low, high, width)
+        texture = grain(gap, low, high)
+        current = campaign.magnet.current
+        try:
+            return fit_line(passes, references, campaign.stage, knots, texture, current)
+        except np.linalg.LinAlgError as error:
+            raise _undetermined(passes) from error
+
+    best = fit(chosen)
+    remarks: list[Finding] = []
+    if spacing is None:
+        best, remarks = _refine(best, fit, campaign.axis)
+    remarks += line_findings(best, low, high, campaign.stage)
+    return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks))
+
+
+def _check_travel(passes: list[Pass], low: float, high: float) -> None:
+    if high > low:
+        return
+    raise RefusedError(
+        "no-travel",
+        ", ".join(one.name for one in passes),
+        f"found the probe standing at {low * 1e3:.6g} mm throughout, expected a pass that moves; "
+        "check the position column and its unit.",
+    )
+
+
+def _undetermined(passes: list[Pass]) -> RefusedError:
+    return RefusedError(
+        "not-determined",
+        ", ".join(one.name for one in passes),
+        "found readings that do not determine the field, expected readings at distinct positions "
+        "and an absolute level; check that the position and flux columns are the right ones.",
+    )
+
+
+def _refine(
+    best: LineFit, fit: Callable[[float], LineFit], axis: Axis
+) -> tuple[LineFit, list[Finding]]:
+    """Halve the knots until that moves no result by more than STILL times its uncertainty."""
+    moved = 0.0
+    for _ in range(HALVINGS):
+        if best.spline.size > MOST_KNOTS / 2:
+            break
+        finer = fit(best.spline.spacing / 2)
+        moved = _moved(best, finer, axis)
+        if moved <= STILL:
+            return best, []
+        best = finer
+    text = (
+        f"halving the knot spacing to {best.spline.spacing * 1e3:.3g} mm still moved a result by "
+        f"{moved:.2g} of its uncertainty; check the gap in [magnet]: it sets the first spacing."
+    )
+    return best, [Finding("knots-too-coarse", "warn", "[magnet] gap", text)]
+
+
+def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:
+    """Largest change of integrated field, central field and magnetic length, in u."""
+    before, u = _main_results(coarse, axis)
+    after, _ = _main_results(fine, axis)
+    return float(np.max(np.abs(after - before) / u))
+
+
+def _main_results(fit: LineFit, axis: Axis) -> tuple[Floats, Floats]:
+    size = fit.spline.size
+    b, covariance = fit.values[:size], fit.covariance[:size, :size]
+    integral = fit.spline.integral_row(*axis.integrate)
+    centre = fit.spline.integral_row(*axis.flat) / (axis.flat[1] - axis.flat[0])
+    total, level = float(integral @ b), float(centre @ b)
+    rows = np.array([integral, centre, (integral - total / level * centre) / level])
+    u = np.sqrt(np.einsum("ij,jk,ik->i", rows, covariance, rows))
+    return np.array([total, level, total / level]), u

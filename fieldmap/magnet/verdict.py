@@ -1,0 +1,120 @@
+"""Decision of a result against its limits, after JCGM 106:2012."""
+
+from __future__ import annotations
+
+import math
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any, Literal
+
+if TYPE_CHECKING:
+    from fieldmap.magnet.quantity import Quantity
+    from fieldmap.readings.passes import Limit
+
+__all__ = ["Verdict", "conformity", "decide"]
+
+Decision = Literal["accept", "reject", "undecided"]
+
+
+@dataclass(frozen=True)
+class Verdict:
+    """One decision.
+
+    Parameters
+    ----------
+    result : str
+        Key of the result.
+    line : int
+        Index of the line.
+    decision : {"accept", "reject", "undecided"}
+        Accept when the whole expanded interval lies within the limits, reject when it lies
+        outside them, otherwise undecided.
+    probability : float
+        Probability that the true value conforms.
+    """
+
+    result: str
+    line: int
+    decision: Decision
+    probability: float
+
+    def as_dict(self) -> dict[str, Any]:
+        """The form used in results.json."""
+        return {
+            "result": self.result,
+            "line": self.line,
+            "decision": self.decision,
+            "probability": self.probability,
+        }
+
+
+def conformity(value: float, u: float, lower: float | None, upper: float | None) -> float:
+    """Probability that a normally distributed value lies within the limits.
+
+    Parameters
+    ----------
+    value, u : float
+        Estimate and its standard uncertainty.
+    lower, upper : float or None
+        Limits, None for an open side; same unit.
+
+    Returns
+    -------
+    float
+
+    Examples
+    --------
+    >>> round(conformity(-5.47, 0.05, None, -5.40), 3)
+    0.919
+
+    Notes
+    -----
+    Source: JCGM 106:2012, 7.2 to 7.4.
+    """
+
+    return _below(value, u, upper, always=1.0) - _below(value, u, lower, always=0.0)
+
+
+def _below(value: float, u: float, limit: float | None, always: float) -> float:
+    """Probability of lying below a limit; `always` where there is none."""
+    if limit is None:
+        return always
+    if u == 0:
+        return float(value <= limit)
+    return 0.5 * math.erfc((value - limit) / (u * math.sqrt(2)))
+
+
+def decide(limit: Limit, quantity: Quantity, line: int = 0, k: float = 2.0) -> Verdict:
+    """Decide one result against its limit.
+
+    Parameters
+    ----------
+    limit : Limit
+        Lower and upper limit.
+    quantity : Quantity
+        The result.
+    line : int
+        Index of the line, kept in the verdict.
+    k : float
+        Coverage factor of the interval.
+
+    Returns
+    -------
+    Verdict
+
+    Examples
+    --------
+    >>> from fieldmap.magnet.quantity import Quantity
+    >>> from fieldmap.readings.passes import Limit
+    >>> decide(Limit("magnetic_length", 0.3805, 0.3815), Quantity(0.381, 5e-5, "m")).decision
+    'accept'
+    """
+    low, high = quantity.value - k * quantity.u, quantity.value + k * quantity.u
+    lower = -math.inf if limit.lower is None else limit.lower
+    upper = math.inf if limit.upper is None else limit.upper
+    decision: Decision = "undecided"
+    if lower <= low and high <= upper:
+        decision = "accept"
+    elif high < lower or low > upper:
+        decision = "reject"
+    chance = conformity(quantity.value, quantity.u, limit.lower, limit.upper)
+    return Verdict(limit.result, line, decision, chance)
