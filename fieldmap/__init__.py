@@ -1,0 +1,35 @@
+"""Field profiles, integrated field and magnetic length from moving-coil and moving-wire scans.
+
+>>> import fieldmap
+>>> from fieldmap.shipped import demo_folder
+>>> campaign = fieldmap.load(demo_folder() / "slot" / "campaign.toml")
+>>> fmap = fieldmap.stitch(campaign)
+>>> results = fieldmap.evaluate(fmap, campaign)
+"""
+
+from fieldmap.errors import FieldmapError, InputError, RefusedError
+from fieldmap.estimate.stitch import reconstruct, stitch
+from fieldmap.estimate.store import load_map, save_map
+from fieldmap.magnet.evaluate import evaluate
+from fieldmap.magnet.quantity import Quantity, Results
+from fieldmap.magnet.results_file import save_results
+from fieldmap.readings import Campaign, Pass, load, make_pass
+
+__all__ = [
+    "Campaign",
+    "FieldmapError",
+    "InputError",
+    "Pass",
+    "Quantity",
+    "RefusedError",
+    "Results",
+    "evaluate",
+    "load",
+    "load_map",
+    "make_pass",
+    "reconstruct",
+    "save_map",
+    "save_results",
+    "stitch",
+]
+__version__ = "0.1.0"

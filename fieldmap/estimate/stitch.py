@@ -60,7 +60,7 @@ def stitch(
     Examples
     --------
     >>> import fieldmap
-    >>> from fieldmap.demo import demo_folder
+    >>> from fieldmap.shipped import demo_folder
     >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "slot" / "campaign.toml"))
     >>> fmap["B"].dims
     ('y', 'x', 'z')

@@ -52,7 +52,7 @@ def evaluate(
     Examples
     --------
     >>> import fieldmap
-    >>> from fieldmap.demo import demo_folder
+    >>> from fieldmap.shipped import demo_folder
     >>> campaign = fieldmap.load(demo_folder() / "slot" / "campaign.toml")
     >>> results = fieldmap.evaluate(fieldmap.stitch(campaign), campaign)
     >>> results["integrated_field"].unit

@@ -1,0 +1,97 @@
+"""map.nc: the map on disk, whole or not at all, and back to the last digit."""
+
+from __future__ import annotations
+
+import datetime as dt
+import io
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from fieldmap.atomic import replacing
+from fieldmap.errors import InputError
+from fieldmap.estimate.map import FORMAT
+
+if TYPE_CHECKING:
+    import os
+
+    import xarray as xr
+
+__all__ = ["load_map", "save_map"]
+
+
+def save_map(fmap: xr.Dataset, path: str | os.PathLike[str]) -> None:
+    """Write a map as NetCDF-4 with CF-1.11 attributes.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `reconstruct`.
+    path : path
+        The file; an older one is replaced only when the new one is complete.
+
+    Raises
+    ------
+    InputError
+        The file cannot be written.
+    """
+    target = Path(path)
+    out = fmap.copy()
+    stamp = dt.datetime.now(dt.UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
+    earlier = fmap.attrs.get("history", "")
+    out.attrs["history"] = f"{stamp}: written by fieldmap" + (f"\n{earlier}" if earlier else "")
+    encoding = {
+        str(name): {"_FillValue": None if variable.dtype.kind == "i" else float("nan")}
+        for name, variable in out.data_vars.items()
+    }
+    encoding |= {str(name): {"_FillValue": None} for name in out.coords}
+    for name in ("coefficient_covariance", "shared_covariance"):
+        if name in out:
+            encoding[name] |= {"zlib": True, "complevel": 4, "shuffle": True}
+    with replacing(target) as aside:
+        out.to_netcdf(aside, engine="h5netcdf", encoding=encoding)
+
+
+def load_map(path: str | os.PathLike[str]) -> xr.Dataset:
+    """Read a map written by `save_map`.
+
+    Parameters
+    ----------
+    path : path
+        The file.
+
+    Returns
+    -------
+    xarray.Dataset
+        In memory; the file is closed.
+
+    Raises
+    ------
+    InputError
+        Not there, or not such a map.
+    """
+    import xarray as xr
+
+    source = Path(path)
+    try:
+        content = source.read_bytes()
+        with xr.open_dataset(io.BytesIO(content), engine="h5netcdf") as opened:
+            fmap = opened.load()
+    except FileNotFoundError as error:
+        raise InputError(
+            str(source), "no such file", "a map.nc", "give the path of a reduced map"
+        ) from error
+    except Exception as error:  # any damage to the file shows as some error of the reader's
+        raise InputError(
+            str(source),
+            f"a file that cannot be read as a map ({type(error).__name__})",
+            "a map.nc written by this package",
+            "reduce the campaign again",
+        ) from error
+    if fmap.attrs.get("format") != FORMAT:
+        raise InputError(
+            str(source),
+            f"format {fmap.attrs.get('format')!r}",
+            f"format '{FORMAT}'",
+            "give a map.nc written by this package",
+        )
+    return fmap
