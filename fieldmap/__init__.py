@@ -12,7 +12,7 @@ from fieldmap.estimate.stitch import reconstruct, stitch
 from fieldmap.estimate.store import load_map, save_map
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.magnet.quantity import Quantity, Results
-from fieldmap.magnet.results_file import save_results
+from fieldmap.magnet.reduction import save_reduction
 from fieldmap.readings import Campaign, Pass, load, make_pass
 
 __all__ = [
@@ -29,7 +29,7 @@ __all__ = [
     "make_pass",
     "reconstruct",
     "save_map",
-    "save_results",
+    "save_reduction",
     "stitch",
 ]
 __version__ = "0.1.0"

@@ -13,7 +13,7 @@ from fieldmap.errors import InputError
 if TYPE_CHECKING:
     from collections.abc import Iterator
 
-__all__ = ["output_folder", "replacing", "write_bytes"]
+__all__ = ["output_folder", "replacing"]
 
 
 @contextlib.contextmanager
@@ -53,14 +53,8 @@ def replacing(path: Path) -> Iterator[Path]:
         aside.unlink(missing_ok=True)
 
 
-def write_bytes(path: Path, content: bytes) -> None:
-    """Write a file whole or not at all."""
-    with replacing(path) as aside:
-        aside.write_bytes(content)
-
-
 def output_folder(path: str | os.PathLike[str]) -> Path:
-    """The folder, made if it is not there.
+    """Give the folder, made if it is not there.
 
     Raises
     ------

@@ -354,7 +354,7 @@ _REGISTRY_LOCK: Final = threading.RLock()
 @functools.cache
 def _registry() -> pint.UnitRegistry[float]:
     """Build the registry on first use: it takes a fifth of a second."""
-    import pint  # noqa: PLC0415 - `import fieldmap` stays light
+    import pint
 
     registry: pint.UnitRegistry[float] = pint.UnitRegistry()
     # benches write uVs for uV s

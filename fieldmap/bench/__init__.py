@@ -1,0 +1,1 @@
+"""Without the magnet: closed-form fields and a simulated bench."""

@@ -10,14 +10,17 @@ node of the probe's response, in vectorised sums.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
 from scipy import sparse
 
-from fieldmap.estimate.response import Response
 from fieldmap.estimate.spline import DEGREE, UniformSpline, piece_polynomials
-from fieldmap.readings.passes import Pass
+
+if TYPE_CHECKING:
+    from fieldmap.estimate.response import Response
+    from fieldmap.readings.passes import Pass
 
 __all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows"]
 
@@ -206,9 +209,7 @@ def _moments(
 ) -> tuple[Ints, Ints, Floats]:
     """Moments up to the fourth of the readings of each (bin, piece), divided by the bin's count."""
     piece, x = spline.locate(s)
-    first = np.flatnonzero(
-        np.append(True, (np.diff(piece) != 0) | (np.diff(bin_of) != 0))  # noqa: FBT003 a mask
-    )
+    first = np.flatnonzero(np.append(True, (np.diff(piece) != 0) | (np.diff(bin_of) != 0)))
     owner = bin_of[first]
     moments = np.empty((len(first), DEGREE + 2))
     moments[:, 0] = np.diff(np.append(first, len(s)))

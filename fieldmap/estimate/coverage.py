@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
@@ -98,7 +99,7 @@ def check_levels(found: Sequence[Stretch], references: Sequence[Reference]) -> N
                 "tell differences of the field; expected an absolute level there; add a "
                 "[[references]] entry (point, zero or flip) inside that stretch, or a wire pass.",
             )
-    for left, right in zip(found, found[1:], strict=False):
+    for left, right in itertools.pairwise(found):
         raise RefusedError(
             "passes-do-not-meet",
             f"{left.passes[-1].name} and {right.passes[0].name}",

@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.estimate.spline import UniformSpline
+if TYPE_CHECKING:
+    from fieldmap.estimate.spline import UniformSpline
 
 __all__ = ["FieldLine"]
 

@@ -19,6 +19,7 @@ from fieldmap.estimate.normal import NormalSystem
 from fieldmap.estimate.parameters import Nuisance, nuisances
 from fieldmap.estimate.smoothing import Smoother
 from fieldmap.estimate.variance import Fitted, NoiseLevel, improve_levels, initial_level
+from fieldmap.progress import Tell, silent
 from fieldmap.readings.passes import FlipReference
 
 if TYPE_CHECKING:
@@ -100,6 +101,7 @@ def fit_line(
     spline: UniformSpline,
     grain: float,
     nominal_current: float | None = None,
+    tell: Tell = silent,
 ) -> LineFit:
     """Estimate the field along one line.
 
@@ -117,6 +119,8 @@ def fit_line(
         Length over which the field's roughness changes, m: about the gap.
     nominal_current : float, optional
         A; readings that recorded the current are referred to it.
+    tell : callable, optional
+        Told in a few words what is solved next.
 
     Returns
     -------
@@ -138,7 +142,7 @@ def fit_line(
         grain=grain,
         nominal_current=nominal_current,
     )
-    return solver.run()
+    return solver.run(tell)
 
 
 class _Solver:
@@ -171,13 +175,15 @@ class _Solver:
             spline.size + len(unknowns),
             reach=max(1, round(grain / spline.spacing)),
         )
-        self.covariance = np.zeros((0, 0)); self.adapted=False
+        self.covariance = np.zeros((0, 0))
+        self.adapted = False
 
-    def run(self) -> LineFit:
+    def run(self, tell: Tell) -> LineFit:
         """Iterate, then gather the result."""
         rounds = PATIENCE if any(level.open for level in self.levels.values()) else ROUNDS
         data = self._solve(adaptations=0)
         for done in range(1, rounds):
+            tell(f"solving for {self.spline.size} coefficients, round {done + 1}")
             before, levels = self.state.b, dict(self.levels)
             self._improve_levels()
             if done == 2:

@@ -8,12 +8,14 @@ unknown constant, and only neighbours are correlated.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
 from scipy.linalg import lapack
 
-from fieldmap.estimate.bins import Bins
+if TYPE_CHECKING:
+    from fieldmap.estimate.bins import Bins
 
 __all__ = ["Tridiagonal", "allan_deviation", "read_part", "walk_part"]
 

@@ -84,9 +84,11 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
         sd = np.inf if known is None else known
         if sd > 0:
             found.append(Nuisance("drift", one.name, one.integrator.drift, float(sd)))
-    for probe in {probe.name: probe for probe in probes}.values():
-        if probe.u_gain > 0:
-            found.append(Nuisance("gain", probe.name, 0.0, probe.u_gain))
+    found += [
+        Nuisance("gain", probe.name, 0.0, probe.u_gain)
+        for probe in {probe.name: probe for probe in probes}.values()
+        if probe.u_gain > 0
+    ]
     shared: list[tuple[Kind, float]] = [
         ("scale", stage.u_scale),
         ("offset", stage.u_offset),

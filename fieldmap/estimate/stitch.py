@@ -13,6 +13,7 @@ from fieldmap.estimate.findings import Finding, line_findings, pass_findings
 from fieldmap.estimate.fit import LineFit, fit_line
 from fieldmap.estimate.knots import MOST_KNOTS, first_spacing, grain, knots_for, sampling
 from fieldmap.estimate.map import MappedLine, build_map
+from fieldmap.progress import Tell, silent
 from fieldmap.readings.passes import Axis, Campaign, Magnet, Pass, Reference, ZeroReference
 from fieldmap.readings.probe import Stage
 
@@ -30,7 +31,11 @@ HALVINGS = 3
 
 
 def stitch(
-    campaign: Campaign, *, knot_spacing: float | None = None, step: float | None = None
+    campaign: Campaign,
+    *,
+    knot_spacing: float | None = None,
+    step: float | None = None,
+    tell: Tell = silent,
 ) -> xr.Dataset:
     """Estimate the field map that explains all passes and references of a campaign at once.
 
@@ -43,6 +48,8 @@ def stitch(
     step : float, optional
         Distance of the map's grid points along the travel, m; half a knot rounded to a
         plain number if not given. Results do not depend on it.
+    tell : callable, optional
+        Told in a few words what is solved next.
 
     Returns
     -------
@@ -79,7 +86,7 @@ def stitch(
         )
     groups = _lines(campaign.passes)
     lines = [
-        _fit_one(campaign, passes, _references(campaign, key, groups), knot_spacing)
+        _fit_one(campaign, passes, _references(campaign, key, groups), knot_spacing, tell)
         for key, passes in groups.items()
     ]
     return build_map(campaign, lines, pass_findings(campaign.passes), step)
@@ -186,6 +193,7 @@ def _fit_one(
     passes: list[Pass],
     references: list[Reference],
     spacing: float | None,
+    tell: Tell,
 ) -> MappedLine:
     """Check and fit one line, and halve the knots until the results stand still."""
     low = min(float(one.position.min()) for one in passes)
@@ -200,7 +208,7 @@ def _fit_one(
         texture = grain(gap, low, high)
         current = campaign.magnet.current
         try:
-            return fit_line(passes, references, campaign.stage, knots, texture, current)
+            return fit_line(passes, references, campaign.stage, knots, texture, current, tell=tell)
         except np.linalg.LinAlgError as error:
             raise _undetermined(passes) from error
 

@@ -16,7 +16,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-__all__ = ["load_map", "save_map"]
+__all__ = ["load_map", "save_map", "write_map"]
 
 
 def save_map(fmap: xr.Dataset, path: str | os.PathLike[str]) -> None:
@@ -34,7 +34,12 @@ def save_map(fmap: xr.Dataset, path: str | os.PathLike[str]) -> None:
     InputError
         The file cannot be written.
     """
-    target = Path(path)
+    with replacing(Path(path)) as aside:
+        write_map(fmap, aside)
+
+
+def write_map(fmap: xr.Dataset, path: Path) -> None:
+    """Write a map to a path straight away: for callers that take care of replacing."""
     out = fmap.copy()
     stamp = dt.datetime.now(dt.UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
     earlier = fmap.attrs.get("history", "")
@@ -47,8 +52,7 @@ def save_map(fmap: xr.Dataset, path: str | os.PathLike[str]) -> None:
     for name in ("coefficient_covariance", "shared_covariance"):
         if name in out:
             encoding[name] |= {"zlib": True, "complevel": 4, "shuffle": True}
-    with replacing(target) as aside:
-        out.to_netcdf(aside, engine="h5netcdf", encoding=encoding)
+    out.to_netcdf(path, engine="h5netcdf", encoding=encoding)
 
 
 def load_map(path: str | os.PathLike[str]) -> xr.Dataset:

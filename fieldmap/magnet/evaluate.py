@@ -61,9 +61,7 @@ def evaluate(
     axis = axis or (campaign.axis if campaign else map_axis(fmap))
     limits = campaign.limits if campaign else map_limits(fmap)
     lines = tuple(
-        LineResults(
-            line.x, line.y, {**length_results(line, axis), **shape_results(line, axis)}
-        )
+        LineResults(line.x, line.y, {**length_results(line, axis), **shape_results(line, axis)})
         for line in map_lines(fmap)
     )
     facts = json.loads(fmap.attrs["campaign"])

@@ -83,7 +83,7 @@ def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
 
 
 def _ratio(line: FieldLine, above: Floats, below: Floats, offset: float = 0.0) -> Quantity:
-    """offset + (above @ b)/(below @ b) in m, to first order in the covariance."""
+    """Offset + (above @ b)/(below @ b) in m, to first order in the covariance."""
     level = float(below @ line.b)
     value = float(above @ line.b) / level
     return Quantity(offset + value, line.u((above - value * below) / level), "m")

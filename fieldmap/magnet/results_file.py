@@ -6,14 +6,14 @@ import json
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from fieldmap.atomic import write_bytes
+from fieldmap.atomic import replacing
 
 if TYPE_CHECKING:
     import os
 
     from fieldmap.magnet.quantity import Results
 
-__all__ = ["save_results"]
+__all__ = ["save_results", "write_results"]
 
 
 def save_results(results: Results, path: str | os.PathLike[str]) -> None:
@@ -31,5 +31,11 @@ def save_results(results: Results, path: str | os.PathLike[str]) -> None:
     InputError
         The file cannot be written.
     """
+    with replacing(Path(path)) as aside:
+        write_results(results, aside)
+
+
+def write_results(results: Results, path: Path) -> None:
+    """Write to a path straight away: for callers that take care of replacing."""
     text = json.dumps(results.as_dict(), indent=1, ensure_ascii=False, allow_nan=False)
-    write_bytes(Path(path), (text + "\n").encode())
+    path.write_text(text + "\n", encoding="utf-8")

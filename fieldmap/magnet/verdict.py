@@ -70,7 +70,6 @@ def conformity(value: float, u: float, lower: float | None, upper: float | None)
     -----
     Source: JCGM 106:2012, 7.2 to 7.4.
     """
-
     return _below(value, u, upper, always=1.0) - _below(value, u, lower, always=0.0)
 
 

@@ -10,6 +10,7 @@ from pathlib import Path, PureWindowsPath
 from typing import TYPE_CHECKING, Any, Final
 
 from fieldmap.errors import InputError
+from fieldmap.progress import Tell, silent
 from fieldmap.readings import sections
 from fieldmap.readings.checks import FEWEST_READINGS
 from fieldmap.readings.layout import TableLayout, read_layout
@@ -52,13 +53,15 @@ _MOST_READINGS: Final = 1e8  # of a planned pass
 _TOML_PLACE: Final = re.compile(r"(?P<reason>.*?) ?\(at (?P<place>line \d+, column \d+)\)")
 
 
-def load(path: str | Path) -> Campaign:
+def load(path: str | Path, *, tell: Tell = silent) -> Campaign:
     """Read a campaign file and every pass table it names.
 
     Parameters
     ----------
     path : str or Path
         The campaign file, or a folder that holds a ``campaign.toml``.
+    tell : callable, optional
+        Told in a few words what is read next.
 
     Returns
     -------
@@ -87,7 +90,7 @@ def load(path: str | Path) -> Campaign:
     _check_format(raw, path.name)
     top = read_section(raw, sections.TOP, path.name)
     rig = _rig(top, path)
-    passes, planned = _passes(top["passes"], rig)
+    passes, planned = _passes(top["passes"], rig, tell)
     return Campaign(
         name=top["name"],
         magnet=Magnet(**read_section(top["magnet"], sections.MAGNET, f"{path.name}, [magnet]")),
@@ -189,7 +192,9 @@ def _axis(raw: object, place: str) -> Axis:
     return axis
 
 
-def _passes(raw: list[Any], rig: _Rig) -> tuple[tuple[Pass, ...], tuple[PlannedPass, ...]]:
+def _passes(
+    raw: list[Any], rig: _Rig, tell: Tell
+) -> tuple[tuple[Pass, ...], tuple[PlannedPass, ...]]:
     """Read the passes in their order: those measured and those planned."""
     if not raw:
         expected = "at least one entry under [[passes]]"
@@ -202,6 +207,7 @@ def _passes(raw: list[Any], rig: _Rig) -> tuple[tuple[Pass, ...], tuple[PlannedP
         if _is_planned(as_table(entry, place), place):
             planned.append(_planned_pass(entry, rig, f"planned pass {index}", place))
         else:
+            tell(f"reading pass {index} of {len(raw)}")
             measured.append(_measured_pass(entry, rig, place, places))
     return tuple(measured), tuple(planned)
 

@@ -100,7 +100,7 @@ def open_netcdf(data: bytes, file: str) -> NetcdfTable:
     InputError
         If the file is damaged, of a kind that is not read, or refers to other files.
     """
-    import xarray as xr  # noqa: PLC0415 - reading CSV does without
+    import xarray as xr
 
     if not data.startswith((_HDF5, *_CLASSIC)):
         remedy = "write it as NetCDF-4, classic NetCDF or CSV"

@@ -3,13 +3,15 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, field
-from pathlib import Path
-from typing import Literal
+from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 import numpy.typing as npt
 
 from fieldmap.readings.probe import Integrator, Probe, Stage
+
+if TYPE_CHECKING:
+    from pathlib import Path
 
 __all__ = [
     "Axis",

@@ -121,7 +121,7 @@ def integrate_voltage(voltage: Floats, time: Floats, place: RowPlace | None = No
     >>> float(integrate_voltage(4.0 * time**3, time)[-1])
     1.0
     """
-    from scipy.interpolate import CubicSpline  # noqa: PLC0415 - slow to import, rarely needed
+    from scipy.interpolate import CubicSpline
 
     place = place or _element
     check_time(time, place, strictly=True)

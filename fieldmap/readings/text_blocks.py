@@ -82,7 +82,7 @@ def _parse(body: Body, labels: Mapping[int, str], block: tuple[int, int]) -> dic
 
 def _read(body: Body, labels: Mapping[int, str], block: tuple[int, int]) -> dict[int, Floats]:
     """Read one block with the C reader of pandas, or raise ValueError or TypeError."""
-    import pandas as pd  # noqa: PLC0415 - `import fieldmap` stays light
+    import pandas as pd
 
     if block[1] - block[0] > _BLOCK + LONGEST_LINE:
         raise ValueError("a very long line")

@@ -1,0 +1,1 @@
+"""Panels of the notebooks: one class each, on a state that knows no widget."""

@@ -1,0 +1,157 @@
+"""The same verbs from a shell: demo, lab, reduce."""
+
+from __future__ import annotations
+
+import argparse
+import json
+import os
+import shutil
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import fieldmap
+from fieldmap.atomic import output_folder
+from fieldmap.errors import FieldmapError, InputError
+from fieldmap.shipped import demo_folder, notebook_folder
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Sequence
+
+    from fieldmap.magnet.quantity import Results
+
+__all__ = ["main"]
+
+REFUSED = 2
+INTERRUPTED = 130
+SHOWN_DEMO = "gap_dipole"
+
+
+def main(arguments: Sequence[str] | None = None) -> int:
+    """Run one command.
+
+    Parameters
+    ----------
+    arguments : sequence of str, optional
+        Those of the process if not given.
+
+    Returns
+    -------
+    int
+        0: results given, whatever the verdict; 2: refused, one sentence on standard error.
+    """
+    parser = _parser()
+    chosen, rest = parser.parse_known_args(arguments)
+    chosen.options = rest
+    if rest and chosen.run is not _lab:
+        parser.error(f"unknown argument {rest[0]!r}")
+    try:
+        run: Callable[[argparse.Namespace], None] = chosen.run
+        run(chosen)
+    except FieldmapError as error:
+        print(f"fieldmap: {error}", file=sys.stderr)
+        return REFUSED
+    except KeyboardInterrupt:
+        print("fieldmap: stopped; nothing was written.", file=sys.stderr)
+        return INTERRUPTED
+    except BrokenPipeError:
+        os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    return 0
+
+
+def _parser() -> argparse.ArgumentParser:
+    parser = argparse.ArgumentParser(
+        prog="fieldmap",
+        description="Field profile, integrated field and magnetic length, with uncertainties, "
+        "from the partial integrals of moving-coil and moving-wire scans.",
+    )
+    parser.add_argument("--version", action="version", version=f"fieldmap {fieldmap.__version__}")
+    verbs = parser.add_subparsers(metavar="COMMAND", required=True)
+
+    demo = verbs.add_parser("demo", help="copy the demo campaigns and notebooks, reduce one")
+    demo.add_argument("folder", nargs="?", default="fieldmap-demo", metavar="FOLDER")
+    demo.set_defaults(run=_demo)
+
+    lab = verbs.add_parser(
+        "lab", help="open JupyterLab on the notebooks; further options are passed on to it"
+    )
+    lab.add_argument("folder", nargs="?", default="fieldmap-demo", metavar="FOLDER")
+    lab.set_defaults(run=_lab)
+
+    reduce = verbs.add_parser("reduce", help="reduce a campaign to map.nc and results.json")
+    reduce.add_argument("campaign", metavar="CAMPAIGN", help="campaign.toml, or its folder")
+    reduce.add_argument("--out", required=True, metavar="DIR", help="folder for the files")
+    reduce.set_defaults(run=_reduce)
+    return parser
+
+
+def _reduce(chosen: argparse.Namespace) -> None:
+    _reduce_campaign(Path(chosen.campaign), Path(chosen.out), truth=None)
+
+
+def _reduce_campaign(source: Path, out: Path, truth: Path | None) -> None:
+    """Reduce, write, and print what a person wants to read."""
+    from fieldmap.show.cautions import caution_text
+    from fieldmap.show.tables import results_text
+
+    results = _with_progress(source, out)
+    known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
+    print(results_text(results, truth=known))
+    print(f"\nWritten: {out / 'map.nc'}, {out / 'results.json'}\n")
+    print(caution_text())
+
+
+def _with_progress(source: Path, out: Path) -> Results:
+    """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
+    from tqdm import tqdm
+
+    with tqdm(delay=2, leave=False, unit="step", dynamic_ncols=True) as bar:
+
+        def tell(step: str) -> None:
+            bar.set_description(step, refresh=False)
+            bar.update()
+
+        campaign = fieldmap.load(source, tell=tell)
+        fmap = fieldmap.stitch(campaign, tell=tell)
+        results = fieldmap.evaluate(fmap, campaign)
+        fieldmap.save_reduction(fmap, results, out)
+    return results
+
+
+def _demo(chosen: argparse.Namespace) -> None:
+    folder = _copy_demo(Path(chosen.folder))
+    source = folder / "demo_data" / SHOWN_DEMO
+    print(f"Demo campaigns and notebooks: {folder}")
+    print(f"$ fieldmap reduce {source / 'campaign.toml'} --out {source / 'reduced'}\n")
+    _reduce_campaign(source / "campaign.toml", source / "reduced", source / "truth.json")
+
+
+def _copy_demo(folder: Path) -> Path:
+    """Copy what is not there yet: files that exist, perhaps edited, are kept."""
+    for origin in (demo_folder(), notebook_folder()):
+        target = folder / ("demo_data" if origin.name == "demo_data" else "notebooks")
+        for file in sorted(origin.rglob("*")):
+            if file.is_file() and ".ipynb_checkpoints" not in file.parts:
+                _copy(file, target / file.relative_to(origin))
+    return folder
+
+
+def _copy(file: Path, target: Path) -> None:
+    if target.exists():
+        return
+    output_folder(target.parent)
+    try:
+        shutil.copyfile(file, target)
+    except OSError as error:
+        raise InputError(
+            str(target),
+            f"that it cannot be written ({error.strerror or error})",
+            "a folder with room that you may write to",
+            "name another folder",
+        ) from error
+
+
+def _lab(chosen: argparse.Namespace) -> None:
+    folder = _copy_demo(Path(chosen.folder))
+    command = [sys.executable, "-m", "jupyterlab", str(folder / "notebooks"), *chosen.options]
+    os.execv(sys.executable, command)  # noqa: S606 our own interpreter, no shell
