@@ -35,8 +35,10 @@ __all__ = ["LineFit", "PassFit", "fit_line"]
 Floats = npt.NDArray[np.float64]
 Key = tuple[str, str]
 
-ROUNDS = 5  # relinearise: noise seen through the slope, weights, gains and shifts
-ADAPTATIONS = (0, 8, 2, 2)  # steps of the local smoothness in the first rounds
+# Rounds that relinearise (noise seen through the slope, gains, shifts), and how many steps of
+# the local smoothness each takes; with open noise levels more rounds like the last may follow.
+FRESH = (0, 8, 2, 2, 2)
+RESUMED = (2, 2, 2)
 PATIENCE = 25  # rounds at most where noise levels are open
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
 
@@ -82,6 +84,8 @@ class LineFit:
         Covariance of `values`.
     data : Information
         What readings, references and nuisance priors say, without the smoothness prior.
+    roughness : (size - 3,) array
+        Variance of the third differences of B's coefficients that the prior ended with, T^2.
     passes : list of PassFit
         Residuals of each pass.
     """
@@ -91,7 +95,22 @@ class LineFit:
     values: Floats
     covariance: Floats
     data: Information
+    roughness: Floats
     passes: list[PassFit]
+
+    def coefficients_for(self, spline: UniformSpline) -> Floats:
+        """Coefficients on other knots with nearly the same field: B at each one's middle."""
+        middles = spline.start + (np.arange(spline.size) - 1) * spline.spacing
+        inside = np.clip(middles, self.spline.start, self.spline.stop)
+        return np.asarray(self.spline.field_rows(inside) @ self.values[: self.spline.size])
+
+    def roughness_for(self, spline: UniformSpline) -> Floats:
+        """Variance of the differences on other knots; it grows as the fifth power of a spacing."""
+        own, other = (
+            s.start + (np.arange(s.size - 3) + 0.5) * s.spacing for s in (self.spline, spline)
+        )
+        ratio = spline.spacing / self.spline.spacing
+        return np.asarray(np.exp(np.interp(other, own, np.log(self.roughness))) * ratio**5)
 
 
 def fit_line(
@@ -101,6 +120,7 @@ def fit_line(
     spline: UniformSpline,
     grain: float,
     nominal_current: float | None = None,
+    like: LineFit | None = None,
     tell: Tell = silent,
 ) -> LineFit:
     """Estimate the field along one line.
@@ -119,6 +139,8 @@ def fit_line(
         Length over which the field's roughness changes, m: about the gap.
     nominal_current : float, optional
         A; readings that recorded the current are referred to it.
+    like : LineFit, optional
+        A fit of the same passes on other knots to start from.
     tell : callable, optional
         Told in a few words what is solved next.
 
@@ -142,6 +164,8 @@ def fit_line(
         grain=grain,
         nominal_current=nominal_current,
     )
+    if like is not None:
+        solver.resume(like)
     return solver.run(tell)
 
 
@@ -176,20 +200,32 @@ class _Solver:
             reach=max(1, round(grain / spline.spacing)),
         )
         self.covariance = np.zeros((0, 0))
-        self.adapted = False
+        self.schedule = FRESH
+
+    def resume(self, like: LineFit) -> None:
+        """Start from another fit: its field, nuisances, noise levels and smoothness."""
+        b, eta = like.coefficients_for(self.spline), like.values[like.spline.size :]
+        self.state = State(b, eta, self.state.unknowns)
+        self.levels = {_key(one.one): one.level for one in like.passes}
+        self.smoother.variance = like.roughness_for(self.spline)
+        self.schedule = RESUMED
+        self._rebin()
 
     def run(self, tell: Tell) -> LineFit:
         """Iterate, then gather the result."""
-        rounds = PATIENCE if any(level.open for level in self.levels.values()) else ROUNDS
-        data = self._solve(adaptations=0)
+        schedule = self.schedule
+        open_levels = any(level.open for level in self.levels.values())
+        rounds = PATIENCE if open_levels else len(schedule)
+        tell(f"solving for {self.spline.size} coefficients")
+        data = self._solve(schedule[0])
         for done in range(1, rounds):
             tell(f"solving for {self.spline.size} coefficients, round {done + 1}")
             before, levels = self.state.b, dict(self.levels)
             self._improve_levels()
             if done == 2:
                 self._rebin()
-            data = self._solve(ADAPTATIONS[min(done, len(ADAPTATIONS) - 1)])
-            if done >= ROUNDS - 1 and self._settled(before, levels):
+            data = self._solve(schedule[min(done, len(schedule) - 1)])
+            if done >= len(schedule) - 1 and self._settled(before, levels):
                 break
         return LineFit(
             spline=self.spline,
@@ -197,6 +233,7 @@ class _Solver:
             values=np.concatenate([self.state.b, self.state.eta]),
             covariance=self.covariance,
             data=data,
+            roughness=self.smoother.variance,
             passes=self._pass_fits(),
         )
 
@@ -205,7 +242,7 @@ class _Solver:
         data = self._priors() + reference_information(self.references, self.spline, self.state)
         for model in self.models:
             data = data + pass_information(model.rows(self.state), self._noise(model))
-        if not self.smoother.adapted:
+        if adaptations == 0:
             self.smoother.start(data)
         size = self.spline.size
         for _ in range(adaptations):

@@ -54,7 +54,6 @@ class Smoother:
         reach = min(reach, roughness.shape[0] - 1)
         self.kernel = 1 - np.abs(np.arange(-reach, reach + 1)) / (reach + 1)
         self.variance = np.ones(roughness.shape[0])
-        self.adapted = False
 
     def precision(self) -> Floats:
         """Precision of the prior over all unknowns."""
@@ -103,7 +102,6 @@ class Smoother:
         ratio = (self._gather(d**2 / self.variance) + PSEUDO) / (freedom + PSEUDO)
         stepped = self.variance * ratio ** (1 + HASTE * (1 - share))
         self.variance = np.maximum(stepped, FLOOR * stepped.max())
-        self.adapted = True
 
     def _gather(self, values: Floats) -> Floats:
         """Sum over the neighbours within reach, with triangular weights."""

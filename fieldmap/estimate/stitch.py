@@ -203,12 +203,12 @@ def _fit_one(
     chosen = spacing or first_spacing(gap, low, high, sampling(passes))
     check_levels(stretches(passes, slack=2 * chosen), references)
 
-    def fit(width: float) -> LineFit:
+    def fit(width: float, like: LineFit | None = None) -> LineFit:
         knots = knots_for(passes, low, high, width)
         texture = grain(gap, low, high)
         current = campaign.magnet.current
         try:
-            return fit_line(passes, references, campaign.stage, knots, texture, current, tell=tell)
+            return fit_line(passes, references, campaign.stage, knots, texture, current, like, tell)
         except np.linalg.LinAlgError as error:
             raise _undetermined(passes) from error
 
@@ -241,14 +241,14 @@ def _undetermined(passes: list[Pass]) -> RefusedError:
 
 
 def _refine(
-    best: LineFit, fit: Callable[[float], LineFit], axis: Axis
+    best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis
 ) -> tuple[LineFit, list[Finding]]:
     """Halve the knots until that moves no result by more than STILL times its uncertainty."""
     moved = 0.0
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
             break
-        finer = fit(best.spline.spacing / 2)
+        finer = fit(best.spline.spacing / 2, best)
         moved = _moved(best, finer, axis)
         if moved <= STILL:
             return best, []
