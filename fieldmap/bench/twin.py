@@ -371,5 +371,5 @@ def _whole_steps(values: Floats, step: float) -> Floats:
         return values
     inverse = round(1.0 / step)
     if inverse and abs(inverse * step - 1.0) < 1e-14:
-        return np.asarray(np.round(values * inverse) / inverse)
-    return np.asarray(np.round(values / step) * step)
+        return np.asarray(np.round(values * inverse) / inverse + 0.0)  # no negative zero
+    return np.asarray(np.round(values / step) * step + 0.0)

@@ -82,12 +82,14 @@ def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
     travel = float(np.abs(np.diff(middle)).sum())
     pace = 2 * duration * step / travel if travel > 0 else duration
     slice_time = float(np.clip(pace, duration / 400, duration / 32))
+    # a hair less, so that rounding does not decide where readings lie a step apart
+    nearly_step, nearly_slice = step * (1 - 1e-6), slice_time * (1 - 1e-6)
     starts = [0]
     opened_at, opened_when = float(middle[0]), float(time[0])
     for index, where, when in zip(
         first[1:].tolist(), middle[1:].tolist(), time[first[1:]].tolist(), strict=True
     ):
-        if abs(where - opened_at) >= step or when - opened_when >= slice_time:
+        if abs(where - opened_at) >= nearly_step or when - opened_when >= nearly_slice:
             starts.append(index)
             opened_at, opened_when = where, when
     return np.array(starts, dtype=np.intp)

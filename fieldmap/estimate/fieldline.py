@@ -36,7 +36,8 @@ class FieldLine:
     Examples
     --------
     >>> spline = UniformSpline.covering(-0.1, 0.1, 0.02)
-    >>> line = FieldLine(0, 0, -0.1, 0.1, spline, np.ones(13), 1e-6 * np.ones((13, 13)))
+    >>> n = spline.size
+    >>> line = FieldLine(0, 0, -0.1, 0.1, spline, np.ones(n), 1e-6 * np.ones((n, n)))
     >>> value, u = line.integral(-0.05, 0.05)
     >>> round(value, 9), round(u, 9)
     (0.1, 0.0001)

@@ -110,7 +110,7 @@ def _voltage(one: Pass) -> list[Finding]:
     ]
 
 
-def line_findings(fit: LineFit, low: float, high: float, stage: Stage) -> list[Finding]:
+def line_findings(fit: LineFit, low: float, high: float, stage: Stage, gap: float) -> list[Finding]:
     """Remarks on one fitted line.
 
     Parameters
@@ -121,12 +121,15 @@ def line_findings(fit: LineFit, low: float, high: float, stage: Stage) -> list[F
         Ends of the mapped range, m.
     stage : Stage
         Position uncertainties as stated.
+    gap : float
+        Full gap or bore diameter, m.
 
     Returns
     -------
     list of Finding
     """
     found = [finding for one in fit.passes for finding in _noise(one)]
+    found += [finding for one in fit.passes for finding in _sampling(one.one, gap)]
     found += _drift(fit, low, high)
     found += _trusted(fit)
     if fit.passes and stage.u_lag == 0 and stage.u_position == 0:
@@ -171,6 +174,26 @@ def _noise(one: PassFit) -> list[Finding]:
             )
         ]
     return []
+
+
+def _sampling(one: Pass, gap: float) -> list[Finding]:
+    """Readings too far apart for the fringe, and a window too long for it."""
+    found = []
+    apart = float(np.abs(np.diff(one.position)).max())
+    if apart > gap / 3:
+        text = (
+            f"readings lie up to {apart * 1e3:.3g} mm apart, more than a third of the gap "
+            f"({gap * 1e3:.3g} mm): the fringe between them is guessed; scan slower or record "
+            "at a higher rate."
+        )
+        found.append(Finding("sampling-too-coarse", "warn", one.name, text))
+    if one.probe.extent > 1.5 * gap:
+        text = (
+            f"the window of {one.probe.extent * 1e3:.3g} mm is longer than 1.5 gaps "
+            f"({gap * 1e3:.3g} mm): the fringe is smeared; use a shorter coil there."
+        )
+        found.append(Finding("window-too-long", "warn", one.name, text))
+    return found
 
 
 def _drift(fit: LineFit, low: float, high: float) -> list[Finding]:

@@ -35,11 +35,12 @@ __all__ = ["LineFit", "PassFit", "fit_line"]
 Floats = npt.NDArray[np.float64]
 Key = tuple[str, str]
 
-# Rounds that relinearise (noise seen through the slope, gains, shifts), and how many steps of
-# the local smoothness each takes; with open noise levels more rounds like the last may follow.
-FRESH = (0, 8, 2, 2, 2)
+# Rounds that relinearise (noise seen through the slope, gains, shifts), by the steps of the local
+# smoothness that each takes; START takes the smoothness afresh, one weight for all.
+START = -1
+STATED = (START, 8, 2, 2, 2)
+OPEN = (START, START, START, START, 8, 2, 2, 2, *[0] * 12)  # noise levels to be found on the way
 RESUMED = (2, 2, 2)
-PATIENCE = 25  # rounds at most where noise levels are open
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
 
 
@@ -100,8 +101,7 @@ class LineFit:
 
     def coefficients_for(self, spline: UniformSpline) -> Floats:
         """Coefficients on other knots with nearly the same field: B at each one's middle."""
-        middles = spline.start + (np.arange(spline.size) - 1) * spline.spacing
-        inside = np.clip(middles, self.spline.start, self.spline.stop)
+        inside = np.clip(spline.middles(), self.spline.start, self.spline.stop)
         return np.asarray(self.spline.field_rows(inside) @ self.values[: self.spline.size])
 
     def roughness_for(self, spline: UniformSpline) -> Floats:
@@ -200,7 +200,8 @@ class _Solver:
             reach=max(1, round(grain / spline.spacing)),
         )
         self.covariance = np.zeros((0, 0))
-        self.schedule = FRESH
+        stated = not any(level.open for level in self.levels.values())
+        self.schedule: tuple[int, ...] = STATED if stated else OPEN
 
     def resume(self, like: LineFit) -> None:
         """Start from another fit: its field, nuisances, noise levels and smoothness."""
@@ -209,23 +210,19 @@ class _Solver:
         self.levels = {_key(one.one): one.level for one in like.passes}
         self.smoother.variance = like.roughness_for(self.spline)
         self.schedule = RESUMED
-        self._rebin()
 
     def run(self, tell: Tell) -> LineFit:
         """Iterate, then gather the result."""
-        schedule = self.schedule
-        open_levels = any(level.open for level in self.levels.values())
-        rounds = PATIENCE if open_levels else len(schedule)
-        tell(f"solving for {self.spline.size} coefficients")
-        data = self._solve(schedule[0])
-        for done in range(1, rounds):
+        enough = len(self.schedule) - self.schedule.count(0)
+        for done, adaptations in enumerate(self.schedule):
             tell(f"solving for {self.spline.size} coefficients, round {done + 1}")
             before, levels = self.state.b, dict(self.levels)
-            self._improve_levels()
-            if done == 2:
+            if done > 0:
+                self._improve_levels()
+            if done == enough - 3:
                 self._rebin()
-            data = self._solve(schedule[min(done, len(schedule) - 1)])
-            if done >= len(schedule) - 1 and self._settled(before, levels):
+            data = self._solve(adaptations)
+            if done >= enough - 1 and self._settled(before, levels):
                 break
         return LineFit(
             spline=self.spline,
@@ -242,18 +239,39 @@ class _Solver:
         data = self._priors() + reference_information(self.references, self.spline, self.state)
         for model in self.models:
             data = data + pass_information(model.rows(self.state), self._noise(model))
-        if adaptations == 0:
-            self.smoother.start(data)
         size = self.spline.size
+        if adaptations == START:
+            self.smoother.start(data)
+        else:
+            self.smoother.see(self._frame(), self.state.eta)
+        solution = self._solve_weighed(data)
         for _ in range(adaptations):
-            system = NormalSystem(data.matrix + self.smoother.precision())
-            covariance = system.inverse()
-            self.smoother.adapt(system.solve(data.right)[:size], covariance[:size, :size])
-        system = NormalSystem(data.matrix + self.smoother.precision())
-        solution = system.solve(data.right)
+            self.smoother.adapt(solution, self.covariance)
+            solution = self._solve_weighed(data)
         self.state = State(solution[:size], solution[size:], self.state.unknowns)
-        self.covariance = system.inverse()
         return data
+
+    def _solve_weighed(self, data: Information) -> Floats:
+        """Solution and covariance for the smoothness as it is."""
+        system = NormalSystem(data.matrix + self.smoother.precision())
+        self.covariance = system.inverse()
+        return system.solve(
+            data.right + self.smoother.right(),
+            lambda values: data.matrix @ values + self.smoother.times(values),
+        )
+
+    def _frame(self) -> Floats:
+        """How the recorded profile follows gains, offset and scale (several gains: their mean)."""
+        b, middles = self.state.b, self.spline.middles()
+        slope = np.gradient(b, middles)
+        kinds = [unknown.kind for unknown in self.state.unknowns]
+        effect = {
+            "gain": b / max(kinds.count("gain"), 1),
+            "offset": slope,
+            "scale": slope * middles,
+        }
+        columns = [effect.get(kind, np.zeros_like(b)) for kind in kinds]
+        return np.column_stack(columns) if columns else np.zeros((len(b), 0))
 
     def _noise(self, model: PassModel) -> Tridiagonal:
         """Covariance of a pass at the present state and noise levels."""
@@ -263,8 +281,8 @@ class _Solver:
     def _priors(self) -> Information:
         """What is known of the nuisances before the scan."""
         size, unknowns = self.spline.size, self.state.unknowns
-        precision = np.array([0.0 if np.isinf(u.sd) else u.sd**-2 for u in unknowns])
-        mean = np.array([u.mean for u in unknowns])
+        precision = np.array([unknown.sd**-2 for unknown in unknowns])
+        mean = np.array([unknown.mean for unknown in unknowns])
         pad = np.zeros(size)
         return Information(
             np.diag(np.concatenate([pad, precision])),
@@ -301,12 +319,7 @@ class _Solver:
         size = self.spline.size
         u = np.sqrt(np.diagonal(self.covariance)[:size])
         moved = float(np.max(np.abs(self.state.b - before) / u))
-        quiet = all(
-            abs(np.log(level.walk / levels[key].walk)) < 0.01
-            and abs(np.log(level.read / levels[key].read)) < 0.01
-            for key, level in self.levels.items()
-            if level.open
-        )
+        quiet = all(level.close_to(levels[key]) for key, level in self.levels.items())
         return quiet and moved < 0.05
 
     def _pass_fits(self) -> list[PassFit]:

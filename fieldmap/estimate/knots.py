@@ -15,14 +15,15 @@ if TYPE_CHECKING:
 
 __all__ = ["MOST_KNOTS", "first_spacing", "grain", "knots_for", "sampling"]
 
-KNOTS_PER_GAP = 10  # a fringe bends within about a third of the gap
+MOST_PER_GAP = 10  # a fringe bends within about a third of the gap
+LEAST_PER_GAP = 5  # also where readings are sparser: what lies between them is uncertain
 LEAST_KNOTS = 60  # even where the whole line is shorter than a gap
 MOST_KNOTS = 3000
 
 
-def grain(gap: float | None, low: float, high: float) -> float:
-    """Length over which the field's roughness changes: the gap, or a twentieth of the line (m)."""
-    return min(gap, high - low) if gap else (high - low) / 20
+def grain(gap: float, low: float, high: float) -> float:
+    """Length over which the field's roughness changes, m: the gap, on a line longer than that."""
+    return min(gap, high - low)
 
 
 def sampling(passes: Sequence[AnyPass]) -> float:
@@ -37,17 +38,17 @@ def sampling(passes: Sequence[AnyPass]) -> float:
     return float(finest)
 
 
-def first_spacing(gap: float | None, low: float, high: float, readings_apart: float) -> float:
+def first_spacing(gap: float, low: float, high: float, readings_apart: float) -> float:
     """First choice of the knot spacing, m; `stitch` then checks it by halving.
 
     Parameters
     ----------
-    gap : float, optional
+    gap : float
         Full gap or bore diameter, m.
     low, high : float
         Ends of the line, m.
     readings_apart : float
-        Distance between readings, m; knots closer than that learn nothing.
+        Distance between readings, m; knots much closer than that learn nothing.
 
     Returns
     -------
@@ -58,8 +59,8 @@ def first_spacing(gap: float | None, low: float, high: float, readings_apart: fl
     >>> round(first_spacing(0.03, -0.6, 0.6, 0.0005), 6)
     0.003
     """
-    travel = high - low
-    spacing = max(grain(gap, low, high) / KNOTS_PER_GAP, readings_apart)
+    travel, bend = high - low, grain(gap, low, high)
+    spacing = float(np.clip(readings_apart, bend / MOST_PER_GAP, bend / LEAST_PER_GAP))
     return float(np.clip(spacing, travel / MOST_KNOTS, travel / LEAST_KNOTS))
 
 

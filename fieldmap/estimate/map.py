@@ -127,8 +127,8 @@ def build_map(
 
 
 def _nuisance_units(fit: LineFit) -> Floats:
-    """Each nuisance is kept in units of its prior uncertainty; in SI where it has none."""
-    return np.array([1.0 if np.isinf(u.sd) else u.sd for u in fit.unknowns])
+    """Each nuisance is kept in units of its uncertainty before the scan."""
+    return np.array([unknown.sd for unknown in fit.unknowns])
 
 
 def _grid(lines: Sequence[MappedLine], step: float | None) -> Floats:
@@ -236,12 +236,7 @@ def _campaign_facts(campaign: Campaign) -> dict[str, Any]:
 
 
 def _line_facts(line: MappedLine) -> dict[str, Any]:
-    sd = [None if np.isinf(u.sd) else u.sd for u in line.fit.unknowns]
-    units = _nuisance_units(line.fit).tolist()
-    unknowns = [
-        {**asdict(u), "sd": s, "unit": f"{scale!r} {u.unit}"}
-        for u, s, scale in zip(line.fit.unknowns, sd, units, strict=True)
-    ]
+    unknowns = [{**asdict(u), "unit": f"{u.sd!r} {u.unit}"} for u in line.fit.unknowns]
     return {"x": line.x, "y": line.y, "unknowns": unknowns}
 
 

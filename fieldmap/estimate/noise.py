@@ -57,6 +57,8 @@ class Tridiagonal:
 
     def factor(self) -> tuple[Floats, Floats]:
         """Pivots and multipliers of the LDLᵀ factorisation."""
+        if len(self.off) == 0:  # the library takes no empty off-diagonal
+            return self.diagonal, self.off
         pivots, multipliers, info = lapack.dpttrf(self.diagonal, self.off)
         if info:
             raise np.linalg.LinAlgError("the covariance of the readings is not positive definite")
@@ -65,6 +67,8 @@ class Tridiagonal:
     def solve(self, right: Floats) -> Floats:
         """Solution of ``self @ x = right`` in O(n) a column."""
         pivots, multipliers = self.factor()
+        if len(self.off) == 0:
+            return np.asarray(right / (pivots[:, None] if right.ndim > 1 else pivots))
         solution, _ = lapack.dpttrs(pivots, multipliers, right)
         return np.asarray(solution)
 

@@ -2,13 +2,20 @@
 
 from __future__ import annotations
 
+from typing import TYPE_CHECKING
+
 import numpy as np
 import numpy.typing as npt
 from scipy import linalg
 
+if TYPE_CHECKING:
+    from collections.abc import Callable
+
 __all__ = ["NormalSystem"]
 
 Floats = npt.NDArray[np.float64]
+
+REFINEMENTS = 3
 
 
 class NormalSystem:
@@ -46,10 +53,26 @@ class NormalSystem:
         """Natural logarithm of the determinant."""
         return float(2 * (np.log(np.diagonal(self.factor)) - np.log(self.scale)).sum())
 
-    def solve(self, right: Floats) -> Floats:
-        """Solution for one or several right sides, with one step of refinement."""
-        first = self._solve_once(right)
-        return first + self._solve_once(right - self.matrix @ first)
+    def solve(self, right: Floats, product: Callable[[Floats], Floats] | None = None) -> Floats:
+        """Solution, refined by its own residual.
+
+        Parameters
+        ----------
+        right : (n,) or (n, k) array
+            Right sides.
+        product : callable, optional
+            Computes ``matrix @ x`` more accurately than the matrix as it was rounded: where
+            the matrix is a sum of squares, through their factors.
+
+        Returns
+        -------
+        array like `right`
+        """
+        multiply = product or self.matrix.__matmul__
+        solution = self._solve_once(right)
+        for _ in range(REFINEMENTS):
+            solution = solution + self._solve_once(right - multiply(solution))
+        return solution
 
     def _solve_once(self, right: Floats) -> Floats:
         scale = self.scale if right.ndim == 1 else self.scale[:, None]

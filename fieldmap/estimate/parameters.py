@@ -40,7 +40,7 @@ class Nuisance:
     mean : float
         What is expected, SI.
     sd : float
-        Its standard uncertainty before the scan; inf where nothing is known.
+        Its standard uncertainty before the scan.
     """
 
     kind: Kind
@@ -81,9 +81,9 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
     found: list[Nuisance] = []
     for one in passes:
         known = one.integrator.u_drift
-        sd = np.inf if known is None else known
+        sd = _any_drift(one) if known is None else known
         if sd > 0:
-            found.append(Nuisance("drift", one.name, one.integrator.drift, float(sd)))
+            found.append(Nuisance("drift", one.name, one.integrator.drift, sd))
     found += [
         Nuisance("gain", probe.name, 0.0, probe.u_gain)
         for probe in {probe.name: probe for probe in probes}.values()
@@ -97,3 +97,9 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
     ]
     found += [Nuisance(kind, "", 0.0, sd) for kind, sd in shared if sd > 0]
     return found
+
+
+def _any_drift(one: Pass) -> float:
+    """Where no drift is stated: one that could have made all the flux of the pass, V s/s."""
+    duration = float(one.time[-1] - one.time[0])
+    return max(float(np.ptp(one.flux)), 1e-15) / duration

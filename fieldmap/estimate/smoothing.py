@@ -16,13 +16,12 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
+from scipy import sparse
 
 from fieldmap.estimate.normal import NormalSystem
 
 if TYPE_CHECKING:
     from collections.abc import Callable
-
-    from scipy import sparse
 
     from fieldmap.estimate.model import Information
 
@@ -38,6 +37,11 @@ FLOOR = 1e-10  # least variance, relative to the largest: keeps the system well 
 class Smoother:
     """The smoothness prior of one line.
 
+    It judges the profile as the bench recorded it: with the gains and the zero of the stage as
+    they were, not as they should be. A larger, shifted or stretched profile has other
+    differences; judging the true one would pull gains and offsets that no reading can see away
+    from what the campaign states.
+
     Parameters
     ----------
     roughness : (k, size) sparse array
@@ -50,18 +54,41 @@ class Smoother:
 
     def __init__(self, roughness: sparse.csr_array, unknowns: int, reach: int) -> None:
         self.roughness = roughness
-        self.unknowns = unknowns
         reach = min(reach, roughness.shape[0] - 1)
         self.kernel = 1 - np.abs(np.arange(-reach, reach + 1)) / (reach + 1)
         self.variance = np.ones(roughness.shape[0])
+        self.see(np.zeros((roughness.shape[1], unknowns - roughness.shape[1])))
+
+    def see(self, frame: Floats, eta: Floats | None = None) -> None:
+        """Set how the recorded profile follows the nuisances.
+
+        Parameters
+        ----------
+        frame : (size, m) array
+            Change of the recorded coefficients of B with each nuisance.
+        eta : (m,) array, optional
+            Nuisances at which the recorded profile is b itself; zero if not given.
+        """
+        moved = self.roughness @ frame
+        self.rows = sparse.hstack([self.roughness, sparse.csr_array(moved)], format="csr")
+        self.origin = np.zeros(len(moved)) if eta is None else moved @ eta
 
     def precision(self) -> Floats:
         """Precision of the prior over all unknowns."""
-        size = self.roughness.shape[1]
-        full = np.zeros((self.unknowns, self.unknowns))
-        scaled = self.roughness.multiply(1 / self.variance[:, None])
-        full[:size, :size] = (self.roughness.T @ scaled).toarray()
-        return full
+        scaled = self.rows.multiply(1 / self.variance[:, None])
+        return np.asarray((self.rows.T @ scaled).toarray())
+
+    def right(self) -> Floats:
+        """Right side that the prior adds to the normal equations."""
+        return np.asarray(self.rows.T @ (self.origin / self.variance))
+
+    def times(self, values: Floats) -> Floats:
+        """``precision() @ values`` through the differences themselves.
+
+        The differences of a smooth profile are tiny and their weights huge: the product keeps
+        digits that the rounded matrix has lost.
+        """
+        return np.asarray(self.rows.T @ ((self.rows @ values) / self.variance))
 
     def start(self, data: Information) -> None:
         """Set one variance for all to the maximum of the restricted likelihood."""
@@ -80,7 +107,7 @@ class Smoother:
         share = np.trace(data.matrix[:size, :size]) / np.trace(unit)
         self.variance /= np.exp(_minimise(cost, np.log(share), span=28.0))
 
-    def adapt(self, b: Floats, covariance: Floats) -> None:
+    def adapt(self, values: Floats, covariance: Floats) -> None:
         """One step of the local variances towards their restricted likelihood's maximum.
 
         Within reach of each knot the squares found are compared with the degrees of freedom
@@ -88,14 +115,14 @@ class Smoother:
 
         Parameters
         ----------
-        b : (size,) array
-            Coefficients of B.
-        covariance : (size, size) array
+        values : (p,) array
+            All unknowns.
+        covariance : (p, p) array
             Their covariance.
         """
-        d = self.roughness @ b
-        spread = self.roughness @ covariance
-        left = np.asarray(self.roughness.multiply(spread).sum(axis=1)).ravel()
+        d = self.rows @ values - self.origin
+        spread = self.rows @ covariance
+        left = np.asarray(self.rows.multiply(spread).sum(axis=1)).ravel()
         resolved = np.clip(1 - left / self.variance, 0, 1)
         freedom = self._gather(resolved)
         share = freedom / self._gather(np.ones_like(resolved))

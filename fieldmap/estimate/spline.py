@@ -75,7 +75,7 @@ class UniformSpline:
     --------
     >>> spline = UniformSpline.covering(-0.1, 0.1, 0.02)
     >>> ones = np.ones(spline.size)
-    >>> float(spline.field_rows(np.array([0.03]))[0] @ ones)
+    >>> round(float(spline.field_rows(np.array([0.03]))[0] @ ones), 12)
     1.0
     >>> round(float(spline.integral_row(-0.05, 0.05) @ ones), 12)
     0.1
@@ -96,6 +96,10 @@ class UniformSpline:
     def stop(self) -> float:
         """Right end of the domain, m."""
         return self.start + (self.size - DEGREE) * self.spacing
+
+    def middles(self) -> Floats:
+        """Where each basis function of B is centred, m."""
+        return np.asarray(self.start + (np.arange(self.size) - 1) * self.spacing)
 
     def locate(self, s: Floats) -> tuple[Ints, Floats]:
         """Piece index and position within the piece (0 to 1) of each s (m)."""

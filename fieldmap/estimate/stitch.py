@@ -8,6 +8,12 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import InputError, RefusedError
+from fieldmap.estimate.checks import (
+    check_references,
+    check_spacing,
+    check_time_and_travel,
+    prepared,
+)
 from fieldmap.estimate.coverage import check_levels, stretches
 from fieldmap.estimate.findings import Finding, line_findings, pass_findings
 from fieldmap.estimate.fit import LineFit, fit_line
@@ -77,13 +83,7 @@ def stitch(
     Running-integral spline with locally adaptive smoothness; see `fieldmap.estimate.fit`,
     `fieldmap.estimate.smoothing` and `fieldmap.estimate.bins` for the sources.
     """
-    if not campaign.passes:
-        raise RefusedError(
-            "nothing-measured",
-            str(campaign.path or campaign.name),
-            "found no measured pass, expected at least one [[passes]] entry with a file; "
-            "name the table that the bench recorded.",
-        )
+    campaign = prepared(campaign)
     groups = _lines(campaign.passes)
     lines = [
         _fit_one(campaign, passes, _references(campaign, key, groups), knot_spacing, tell)
@@ -129,12 +129,14 @@ def reconstruct(
     Examples
     --------
     >>> import numpy as np
-    >>> from fieldmap.readings import Wire, make_pass
+    >>> from fieldmap.readings import Integrator, Wire, make_pass
     >>> z = np.linspace(-0.1, 0.1, 401)
-    >>> flux = 0.05 * np.tanh(z / 0.02)  # one turn of 50 mm in a field of sech² shape
-    >>> profile = reconstruct(make_pass(z, flux, rate=100.0, probe=Wire("w", 1, 0.05)), gap=0.04)
-    >>> round(float(profile["B"].sel(z=0, method="nearest").item()), 2)
-    50.0
+    >>> flux = 0.05 * 0.02 * np.tanh(z / 0.02)  # a wire of 50 mm in a field of 1 T / cosh²(z/λ)
+    >>> steady = Integrator("main", u_drift=1e-9)
+    >>> one = make_pass(z, flux, rate=100.0, probe=Wire("w", 1, 0.05), integrator=steady)
+    >>> profile = reconstruct(one, gap=0.04)
+    >>> round(float(profile["B"].sel(z=0, method="nearest").item()), 3)
+    1.0
     """
     low, high = float(one.position.min()), float(one.position.max())
     third = (high - low) / 3
@@ -198,7 +200,9 @@ def _fit_one(
     """Check and fit one line, and halve the knots until the results stand still."""
     low = min(float(one.position.min()) for one in passes)
     high = max(float(one.position.max()) for one in passes)
-    _check_travel(passes, low, high)
+    check_time_and_travel(passes, low, high)
+    check_spacing(spacing, low, high)
+    references = check_references(references, low, high)
     gap = campaign.magnet.gap
     chosen = spacing or first_spacing(gap, low, high, sampling(passes))
     check_levels(stretches(passes, slack=2 * chosen), references)
@@ -216,27 +220,16 @@ def _fit_one(
     remarks: list[Finding] = []
     if spacing is None:
         best, remarks = _refine(best, fit, campaign.axis)
-    remarks += line_findings(best, low, high, campaign.stage)
+    remarks += line_findings(best, low, high, campaign.stage, gap)
     return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks))
-
-
-def _check_travel(passes: list[Pass], low: float, high: float) -> None:
-    if high > low:
-        return
-    raise RefusedError(
-        "no-travel",
-        ", ".join(one.name for one in passes),
-        f"found the probe standing at {low * 1e3:.6g} mm throughout, expected a pass that moves; "
-        "check the position column and its unit.",
-    )
 
 
 def _undetermined(passes: list[Pass]) -> RefusedError:
     return RefusedError(
         "not-determined",
         ", ".join(one.name for one in passes),
-        "found readings that do not determine the field, expected readings at distinct positions "
-        "and an absolute level; check that the position and flux columns are the right ones.",
+        "found readings that do not determine the field, expected readings at distinct times and "
+        "positions; check that the time, position and flux columns are the right ones.",
     )
 
 
@@ -244,20 +237,23 @@ def _refine(
     best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis
 ) -> tuple[LineFit, list[Finding]]:
     """Halve the knots until that moves no result by more than STILL times its uncertainty."""
-    moved = 0.0
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
-            break
+            return best, [_unsure(best, "was not tried: it would take too many knots")]
         finer = fit(best.spline.spacing / 2, best)
         moved = _moved(best, finer, axis)
         if moved <= STILL:
             return best, []
         best = finer
+    return best, [_unsure(best, f"still moved a result by {moved:.2g} of its uncertainty")]
+
+
+def _unsure(fit: LineFit, outcome: str) -> Finding:
     text = (
-        f"halving the knot spacing to {best.spline.spacing * 1e3:.3g} mm still moved a result by "
-        f"{moved:.2g} of its uncertainty; check the gap in [magnet]: it sets the first spacing."
+        f"halving the knot spacing to {fit.spline.spacing * 1e3:.3g} mm {outcome}; "
+        "check the gap in [magnet]: it sets the first spacing."
     )
-    return best, [Finding("knots-too-coarse", "warn", "[magnet] gap", text)]
+    return Finding("knots-not-settled", "warn", "[magnet] gap", text)
 
 
 def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:

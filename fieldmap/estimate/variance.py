@@ -6,6 +6,7 @@ Sources: H. D. Patterson & R. Thompson, Biometrika 58, 545 (1971); A. R. Gilmour
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING
 
@@ -51,6 +52,12 @@ class NoiseLevel:
         """Whether anything is left to estimate."""
         return not (self.walk_known and self.read_known)
 
+    def close_to(self, other: NoiseLevel) -> bool:
+        """Whether both levels agree to a hundredth."""
+        return math.isclose(self.walk, other.walk, rel_tol=0.01) and math.isclose(
+            self.read, other.read, rel_tol=0.01
+        )
+
 
 @dataclass(frozen=True, eq=False)
 class Fitted:
@@ -63,7 +70,7 @@ class Fitted:
 
 
 def initial_level(models: Sequence[PassModel]) -> NoiseLevel:
-    """Stated levels, or a first guess from the second differences of the bin means.
+    """Stated levels, or a first guess from the third differences of the bin means.
 
     Parameters
     ----------
@@ -74,24 +81,32 @@ def initial_level(models: Sequence[PassModel]) -> NoiseLevel:
     -------
     NoiseLevel
     """
-    integrator = models[0].one.integrator
-    record = models[0].one.record
-    curvature = [np.diff(model.bins.flux, 3) for model in models]
-    rough = float(np.median(np.abs(np.concatenate(curvature)))) / np.sqrt(20) / 0.6745
-    span = max(float(np.ptp(model.bins.flux)) for model in models)
-    rough = max(rough, 1e-12 * span, np.finfo(float).tiny)
-    pace = float(np.median(np.concatenate([np.diff(m.bins.time) for m in models])))
-    count = float(np.median(np.concatenate([m.bins.count for m in models])))
+    integrator, record = models[0].one.integrator, models[0].one.record
+    rough, quietest = _roughness(models)
+    pace = sum(float(np.ptp(m.bins.time)) for m in models) / sum(len(m.bins.time) for m in models)
+    count = float(np.mean(np.concatenate([m.bins.count for m in models])))
     steps = integrator.resolution / np.sqrt(12)
     walk, read = integrator.walk_noise, integrator.read_noise
     if record == "voltage":
         read = 0.0  # the samples' noise is white voltage: a walk of the integral
     return NoiseLevel(
-        walk=float(walk) if walk is not None else rough / np.sqrt(max(pace, 1e-12)),
-        read=float(np.hypot(read, steps)) if read is not None else rough * np.sqrt(count),
+        walk=rough / np.sqrt(pace) if walk is None else float(walk),
+        read=rough * np.sqrt(count) if read is None else float(np.hypot(read, steps)) + quietest,
         walk_known=walk is not None,
         read_known=read is not None,
     )
+
+
+def _roughness(models: Sequence[PassModel]) -> tuple[float, float]:
+    """Noise of a bin mean by its third differences, and the least noise that can be told (V s).
+
+    Exact readings have digits too: below a part in 1e9 of the flux, rounding is the noise.
+    """
+    span = max(float(np.ptp(model.bins.flux)) for model in models)
+    quietest = max(1e-9 * span, 1e-15)
+    bends = np.concatenate([np.diff(model.bins.flux, 3) for model in models])
+    typical = float(np.median(np.abs(bends))) if len(bends) else 0.0
+    return max(typical / np.sqrt(20) / 0.6745, quietest), quietest
 
 
 def improve_levels(

@@ -62,7 +62,7 @@ def results_html(
     >>> "<td>400.005</td><td>0.017</td>" in results_html(Results("a < b", "", (line,)))
     True
     """
-    note = f'<p class="fm-note">{escape(coverage_words(k))}</p>'
+    note = f'<p class="fm-remark">{escape(coverage_words(k))}</p>'
     several = len(results.lines) > 1
     tables = [_table(results, line, truth, k, several) for line in results.lines]
     return f'<div class="fm-results">{"".join(tables)}{note}</div>'
@@ -83,11 +83,11 @@ def findings_html(findings: Iterable[Finding]) -> str:
     Examples
     --------
     >>> findings_html([])
-    '<p class="fm-note">No findings.</p>'
+    '<p class="fm-remark">No findings.</p>'
     """
     items = [_finding(finding) for finding in worst_first(findings)]
     if not items:
-        return '<p class="fm-note">No findings.</p>'
+        return '<p class="fm-remark">No findings.</p>'
     return f'<ul class="fm-findings">{"".join(items)}</ul>'
 
 
@@ -109,10 +109,10 @@ def verdicts_html(results: Results, limits: Sequence[Limit] = ()) -> str:
     --------
     >>> from fieldmap.magnet.quantity import Results
     >>> verdicts_html(Results("Magnet 3", "", ()))
-    '<p class="fm-note">No limits are set, so nothing was decided.</p>'
+    '<p class="fm-remark">No limits are set, so nothing was decided.</p>'
     """
     if not results.verdicts:
-        return '<p class="fm-note">No limits are set, so nothing was decided.</p>'
+        return '<p class="fm-remark">No limits are set, so nothing was decided.</p>'
     items = []
     for verdict in results.verdicts:
         words = verdict_words(verdict, results, limits)
@@ -134,8 +134,9 @@ def _table(
     columns = len(_HEAD) if truth is not None else 4
     head = "".join(f'<th scope="col">{word}</th>' for word in _HEAD[:columns])
     body = "".join(_row(row, columns) for row in result_rows(line, truth, k))
+    kind = "fm-table" if several else "fm-table fm-single"
     return (
-        f'<table class="fm-table"><caption>{escape(title)}</caption>'
+        f'<table class="{kind}"><caption>{escape(title)}</caption>'
         f"<thead><tr>{head}</tr></thead><tbody>{body}</tbody></table>"
     )
 
@@ -143,7 +144,7 @@ def _table(
 def _row(row: ResultRow, columns: int) -> str:
     cells = (row.value, row.half_width, row.unit, row.truth, row.difference)[: columns - 1]
     return (
-        f'<tr data-key="{escape(row.key)}">'
+        f'<tr data-key="{escape(one_line(row.key))}">'
         f'<th scope="row" title="{escape(meaning(row.key))}">{escape(row.label)}</th>'
         + "".join(f"<td>{escape(cell)}</td>" for cell in cells)
         + "</tr>"

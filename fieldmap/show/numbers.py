@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Final
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-__all__ = ["Scale", "plain", "rounded", "scale_for"]
+__all__ = ["Scale", "like", "plain", "rounded", "scale_for"]
 
 EXACT: Final = 1e-14  # an uncertainty below this share of the value has no digits to show
 DIGITS: Final = 2  # significant digits of an uncertainty
@@ -65,9 +65,7 @@ def scale_for(unit: str, values: Iterable[float]) -> Scale:
     largest = max(finite, default=0.0)
     if largest == 0:
         return Scale(_PREFIXED[unit], 1.0)
-    for least, prefix, factor in _PREFIXES:
-        if largest >= least:
-            break
+    prefix, factor = next((p, f) for least, p, f in _PREFIXES if largest >= least)
     return Scale(f"{prefix}{_PREFIXED[unit]}", factor)
 
 
@@ -122,12 +120,12 @@ def plain(value: float, digits: int = 9) -> str:
 def _last_place(half_width: float) -> int:
     """Power of ten of the last digit to keep; 9.96 becomes 10, not 10.0."""
     place = math.floor(math.log10(half_width)) - DIGITS + 1
-    in_places = decimal.Decimal(repr(half_width)).scaleb(-place)
+    in_places = decimal.Decimal(repr(float(half_width))).scaleb(-place)
     return place + 1 if round(in_places) >= 10**DIGITS else place
 
 
 def _to_place(value: float, place: int) -> str:
     with decimal.localcontext(prec=400):
         quantum = decimal.Decimal(1).scaleb(place)
-        number = decimal.Decimal(repr(value)).quantize(quantum)
+        number = decimal.Decimal(repr(float(value))).quantize(quantum)
     return f"{number.copy_abs() if number.is_zero() else number:f}"

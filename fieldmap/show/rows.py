@@ -85,7 +85,7 @@ def label(key: str) -> str:
     >>> label("boundary_in")
     'Boundary in'
     """
-    return _WORDS[key][0] if key in _WORDS else key.replace("_", " ").capitalize()
+    return _WORDS[key][0] if key in _WORDS else one_line(key).replace("_", " ").capitalize()
 
 
 def meaning(key: str) -> str:
@@ -163,17 +163,17 @@ def _row(
     key: str, one: Quantity, scale: Scale, truth: Mapping[str, Any] | None, k: float
 ) -> ResultRow:
     value, half_width = rounded(one.value * scale.factor, one.expanded(k) * scale.factor)
-    row = ResultRow(key, label(key), value, half_width, scale.unit)
+    unit = one_line(scale.unit)
     if truth is None:
-        return row
+        return ResultRow(key, label(key), value, half_width, unit)
     known = _known(key, truth, one.unit)
     off = (one.value - known) / one.u if one.u > 0 else math.nan
     return ResultRow(
         key,
-        row.label,
+        label(key),
         value,
         half_width,
-        scale.unit,
+        unit,
         like(known * scale.factor, value),
         f"{off:+.1f} u" if math.isfinite(off) else "",
     )

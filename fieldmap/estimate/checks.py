@@ -1,0 +1,149 @@
+"""What a campaign must satisfy before it is fitted, whether it came from a file or from arrays."""
+
+from __future__ import annotations
+
+import math
+from collections import Counter
+from dataclasses import replace
+from typing import TYPE_CHECKING
+
+from fieldmap.errors import InputError, RefusedError
+from fieldmap.readings.passes import (
+    Campaign,
+    FlipReference,
+    Pass,
+    PointReference,
+    Reference,
+    ZeroReference,
+)
+
+if TYPE_CHECKING:
+    from collections.abc import Sequence
+
+    from fieldmap.readings.probe import Probe
+
+__all__ = ["check_references", "check_spacing", "check_time_and_travel", "prepared"]
+
+
+def prepared(campaign: Campaign) -> Campaign:
+    """The campaign with passes told apart by name, checked as a whole.
+
+    Parameters
+    ----------
+    campaign : Campaign
+        As loaded or built.
+
+    Returns
+    -------
+    Campaign
+        The same where all is well; passes of one name get a number.
+
+    Raises
+    ------
+    InputError
+        A gap that is no length, or two different probes under one name.
+    RefusedError
+        Nothing measured.
+    """
+    if not campaign.passes:
+        raise RefusedError(
+            "nothing-measured",
+            str(campaign.path or campaign.name),
+            "found no measured pass, expected at least one [[passes]] entry with a file; "
+            "name the table that the bench recorded.",
+        )
+    gap = campaign.magnet.gap
+    if not (math.isfinite(gap) and gap > 0):
+        raise InputError("[magnet] gap", f"{gap:g} m", "a length above zero")
+    probes: dict[str, Probe] = {}
+    for one in campaign.passes:
+        if probes.setdefault(one.probe.name, one.probe) != one.probe:
+            raise InputError(
+                one.name,
+                f"a second, different probe named '{one.probe.name}'",
+                "one name for each probe",
+                "rename one of them",
+            )
+    return replace(campaign, passes=_told_apart(campaign.passes))
+
+
+def _told_apart(passes: Sequence[Pass]) -> tuple[Pass, ...]:
+    """Number the passes that share a name: a drift belongs to one pass."""
+    total = Counter(one.name for one in passes)
+    seen: Counter[str] = Counter()
+    named = []
+    for one in passes:
+        seen[one.name] += 1
+        many = total[one.name] > 1
+        named.append(replace(one, name=f"{one.name} ({seen[one.name]})") if many else one)
+    return tuple(named)
+
+
+def check_spacing(spacing: float | None, low: float, high: float) -> None:
+    """Refuse knots that are no knots."""
+    if spacing is None or (math.isfinite(spacing) and 0 < spacing <= (high - low) / 4):
+        return
+    expected = f"a length above 0 and up to a quarter of the line, {(high - low) / 4:g} m"
+    raise InputError("knot_spacing", f"{spacing:g} m", expected)
+
+
+def check_time_and_travel(passes: Sequence[Pass], low: float, high: float) -> None:
+    """Refuse a line on which nothing moves, and a pass whose clock stands still."""
+    if high <= low:
+        raise RefusedError(
+            "no-travel",
+            ", ".join(one.name for one in passes),
+            f"found the probe standing at {low * 1e3:.6g} mm throughout, expected a pass that "
+            "moves; check the position column and its unit.",
+        )
+    for one in passes:
+        if one.time[-1] <= one.time[0]:
+            raise InputError(
+                one.name,
+                f"one time stamp, {one.time[0]:g} s, for all readings",
+                "time that goes on",
+                "check the time column and its unit, or give rate instead",
+            )
+
+
+def check_references(references: Sequence[Reference], low: float, high: float) -> list[Reference]:
+    """References of one line, checked; a zero stretch is cut to what was mapped.
+
+    Parameters
+    ----------
+    references : sequence
+        Those that bear on the line.
+    low, high : float
+        Ends of the mapped range, m.
+
+    Returns
+    -------
+    list
+
+    Raises
+    ------
+    InputError
+        A reference outside the mapped range, or with an uncertainty that is none.
+    """
+    return [_checked(one, i, low, high) for i, one in enumerate(references, start=1)]
+
+
+def _checked(one: Reference, number: int, low: float, high: float) -> Reference:
+    where = f"[[references]] {number}"
+    u = one.u_flux_change if isinstance(one, FlipReference) else one.u
+    if not (math.isfinite(u) and u > 0):
+        raise InputError(where, f"a standard uncertainty of {u:g}", "one above zero")
+    mapped = f"the mapped range, {low * 1e3:.6g} to {high * 1e3:.6g} mm"
+    remedy = "mend the position, or scan that far"
+    if isinstance(one, ZeroReference):
+        start, stop = max(one.start, low), min(one.stop, high)
+        if not stop > start:
+            found = f"a stretch from {one.start * 1e3:.6g} to {one.stop * 1e3:.6g} mm"
+            raise InputError(where, found, f"a stretch that overlaps {mapped}", remedy)
+        return replace(one, start=start, stop=stop)
+    if not low <= one.at <= high:
+        raise InputError(where, f"at = {one.at * 1e3:.6g} mm", f"a place within {mapped}", remedy)
+    value = one.field if isinstance(one, PointReference) else one.flux_change
+    if not math.isfinite(value):
+        raise InputError(where, f"the value {value:g}", "a finite number")
+    return one

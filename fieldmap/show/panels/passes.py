@@ -1,0 +1,138 @@
+"""Which passes are used, and how well each agrees with the rest."""
+
+from __future__ import annotations
+
+import functools
+import math
+from html import escape
+from typing import TYPE_CHECKING, Any, Final
+
+from fieldmap.estimate.map import map_findings, map_passes
+from fieldmap.show.look import pass_style, short
+from fieldmap.show.panels.parts import hooked, row
+from fieldmap.show.rows import one_line
+
+if TYPE_CHECKING:
+    from fieldmap.readings.passes import Pass
+    from fieldmap.show.panels.state import Reduction, Topic
+
+__all__ = ["PassesPanel"]
+
+# SVG shapes of the markers, in a box from -4 to 4
+_SHAPES: Final = {
+    "o": '<circle r="3.2"/>',
+    "s": '<rect x="-3" y="-3" width="6" height="6"/>',
+    "^": '<path d="M0-3.6 3.6 3H-3.6z"/>',
+    "D": '<path d="M0-4 4 0 0 4-4 0z"/>',
+    "v": '<path d="M0 3.6 3.6-3H-3.6z"/>',
+    "P": '<path d="M-1.3-4h2.6v2.7H4v2.6H1.3V4h-2.6V1.3H-4v-2.6h2.7z"/>',
+    "X": '<path transform="rotate(45)" d="M-1.3-4h2.6v2.7H4v2.6H1.3V4h-2.6V1.3H-4v-2.6h2.7z"/>',
+    "<": '<path d="M-3.6 0 3-3.6V3.6z"/>',
+}
+
+
+class PassesPanel:
+    """A box to tick for each pass, with its probe, its kind of record and its health.
+
+    Parameters
+    ----------
+    state : Reduction
+        What uses the passes.
+
+    Attributes
+    ----------
+    boxes : tuple of ipywidgets.Checkbox
+        One a pass, in the order of the campaign.
+    notes : tuple of ipywidgets.HTML
+        What is said of each pass.
+    widget : ipywidgets.VBox
+        To show.
+    """
+
+    def __init__(self, state: Reduction) -> None:
+        import ipywidgets
+
+        self.state = state
+        self.boxes: tuple[Any, ...] = ()
+        self.notes: tuple[Any, ...] = ()
+        self._following = False
+        self.widget = hooked(ipywidgets.VBox(), "fm-passes")
+        state.listen(self._on_change)
+
+    def _on_change(self, topic: Topic) -> None:
+        if topic == "campaign":
+            self._rebuild()
+        elif topic == "map":
+            self._refresh()
+
+    def _rebuild(self) -> None:
+        import ipywidgets
+
+        old = self.widget.children
+        passes = self.state.campaign.passes if self.state.campaign else ()
+        self.boxes = tuple(
+            hooked(
+                ipywidgets.Checkbox(value=True, description=short(one.name), indent=False),
+                "fm-pass",
+            )
+            for one in passes
+        )
+        self.notes = tuple(ipywidgets.HTML() for _ in passes)
+        pairs = zip(self.boxes, self.notes, strict=True)
+        self.widget.children = tuple(row(pair, "fm-pass-row") for pair in pairs)
+        for index, box in enumerate(self.boxes):
+            box.observe(functools.partial(self._on_box, index), names="value")
+        for line in old:
+            for part in (*line.children, line):
+                part.close()
+
+    def _on_box(self, index: int, change: dict[str, Any]) -> None:
+        with self.state.lock:
+            if not self._following:
+                self.state.use(index, change["new"])
+
+    def _refresh(self) -> None:
+        """Show which passes are in use, and what the map says of them."""
+        assert self.state.campaign is not None
+        self._following = True
+        health = self._health()
+        for index, one in enumerate(self.state.campaign.passes):
+            self.boxes[index].value = self.state.active[index]
+            self.notes[index].value = _note(index, one, *health.get(index, ("○", "not used")))
+        self._following = False
+
+    def _health(self) -> dict[int, tuple[str, str]]:
+        """Mark and words for each pass in use."""
+        fmap = self.state.fmap
+        if fmap is None:
+            return dict.fromkeys(self.state.marks, ("–", "no map"))
+        warned = {finding.where for finding in map_findings(fmap) if finding.severity == "warn"}
+        found = {}
+        for index, facts in zip(self.state.map_marks, map_passes(fmap), strict=True):
+            size = math.sqrt(facts["chi_square"] / max(facts["freedom"], 1.0))
+            word = "look at it" if facts["name"] in warned else "fits"
+            mark = "▲" if facts["name"] in warned else "●"
+            found[index] = (mark, f"{word}, residuals {size:.2f}")
+        return found
+
+
+def _note(index: int, one: Pass, mark: str, words: str) -> str:
+    state = {"▲": "fm-warn", "●": "fm-accept"}.get(mark, "fm-off")
+    about = f"{one_line(one.probe.name)}, {one.record}"
+    return (
+        f'<span class="fm-pass-note">{_swatch(index)} <span>{escape(about)}</span> '
+        f'<span class="{state}"><b aria-hidden="true">{mark}</b> {escape(words)}</span></span>'
+    )
+
+
+def _swatch(index: int) -> str:
+    """The line and marker that the figures draw this pass with."""
+    style = pass_style(index)
+    dash = (
+        "" if isinstance(style.dash, str) else " ".join(str(1.4 * part) for part in style.dash[1])
+    )
+    return (
+        '<svg class="fm-swatch" width="34" height="10" viewBox="-17 -5 34 10" aria-hidden="true" '
+        f'fill="{style.colour}" stroke="none"><path d="M-17 0H17" stroke="{style.colour}" '
+        f'stroke-width="2" stroke-dasharray="{dash}"/>{_SHAPES[style.marker]}</svg>'
+    )

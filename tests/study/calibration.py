@@ -1,0 +1,144 @@
+"""The calibration study: are the stated uncertainties true, and is the joint estimate worth it?
+
+The whole study, one line a kind of campaign, then the verdict over all:
+
+    python -m tests.study.calibration --each 100
+
+Every campaign is drawn with a seed of its own (magnet, layout, noise, record kinds); the
+estimator is told what stands in the campaign file and nothing else. Errors are counted in the
+uncertainty u that the kit states, so 1 means that u is right; the plain script's errors are
+counted in the same u.
+"""
+
+from __future__ import annotations
+
+import argparse
+import os
+from concurrent.futures import ProcessPoolExecutor
+from dataclasses import dataclass
+from typing import TYPE_CHECKING
+
+import numpy as np
+
+import fieldmap
+from fieldmap.estimate import map_lines
+from tests.study.draw import KINDS, draw_campaign
+from tests.study.plain import plain_results
+
+if TYPE_CHECKING:
+    from fieldmap.bench.sources import Source
+    from fieldmap.readings import Campaign
+
+RESULTS = ("integrated_field", "central_field", "magnetic_length")
+PROFILE_POINTS = 241
+COVERED = 1.959964  # 95 % of a normal distribution
+
+
+@dataclass(frozen=True)
+class Outcome:
+    """Errors of one campaign in units of the stated u: kit, plain script, and the profile."""
+
+    kind: str
+    kit: tuple[float, ...]
+    plain: tuple[float, ...]
+    profile: tuple[float, ...]
+
+
+@dataclass(frozen=True)
+class Figures:
+    """What the study says of a set of campaigns, for each result and the profile."""
+
+    count: int
+    rms: dict[str, float]
+    coverage: dict[str, float]
+    ratio: dict[str, float]
+
+
+def truth(source: Source, campaign: Campaign) -> dict[str, float]:
+    """True results by the closed form."""
+    low, high = campaign.axis.integrate
+    left, right = campaign.axis.flat
+    total = float(source.between(low, high))
+    level = float(source.between(left, right)) / (right - left)
+    return {
+        "integrated_field": total,
+        "central_field": level,
+        "magnetic_length": total / level,
+    }
+
+
+def run_one(job: tuple[str, int]) -> Outcome:
+    """Draw, reduce and compare one campaign."""
+    kind, seed = job
+    campaign, source = draw_campaign(kind, seed)
+    known = truth(source, campaign)
+    fmap = fieldmap.stitch(campaign)
+    results = fieldmap.evaluate(fmap, campaign)
+    plain = plain_results(campaign)
+    (line,) = map_lines(fmap)
+    z = np.linspace(*campaign.axis.integrate, PROFILE_POINTS)
+    profile = (line.field(z) - source.field(z)) / line.u_field(z)
+    return Outcome(
+        kind=kind,
+        kit=tuple((results[key].value - known[key]) / results[key].u for key in RESULTS),
+        plain=tuple((plain[key] - known[key]) / results[key].u for key in RESULTS),
+        profile=tuple(profile.tolist()),
+    )
+
+
+def run(each: int, first_seed: int = 0, workers: int | None = None) -> list[Outcome]:
+    """Run `each` campaigns of every kind on all cores, one thread a process."""
+    os.environ["OMP_NUM_THREADS"] = "1"  # for the workers: they share the cores
+    os.environ["OPENBLAS_NUM_THREADS"] = "1"
+    jobs = [(kind, seed) for seed in range(first_seed, first_seed + each) for kind in KINDS]
+    with ProcessPoolExecutor(max_workers=workers or os.cpu_count()) as pool:
+        return list(pool.map(run_one, jobs))
+
+
+def figures(outcomes: list[Outcome]) -> Figures:
+    """Rms of error/u, coverage of the 95 % interval, and the plain script's errors over ours."""
+    kit = np.array([one.kit for one in outcomes])
+    plain = np.array([one.plain for one in outcomes])
+    profile = np.array([one.profile for one in outcomes])
+    rms = dict(zip(RESULTS, _rms(kit).tolist(), strict=True))
+    covered = dict(zip(RESULTS, (np.abs(kit) < COVERED).mean(axis=0).tolist(), strict=True))
+    rms["profile"] = float(np.sqrt(np.mean(profile**2)))
+    covered["profile"] = float((np.abs(profile) < COVERED).mean())
+    ratio = dict(zip(RESULTS, (_rms(plain) / _rms(kit)).tolist(), strict=True))
+    return Figures(len(outcomes), rms, covered, ratio)
+
+
+def _rms(errors: np.ndarray) -> np.ndarray:
+    return np.sqrt(np.mean(errors**2, axis=0))
+
+
+def table(outcomes: list[Outcome]) -> str:
+    """The figures of every kind and of all, as text."""
+    columns = (*RESULTS, "profile")
+    head = f"{'kind':<30}{'n':>5}  " + "".join(f"{name:>24}" for name in columns)
+    lines = [head, f"{'':<37}" + f"{'rms  covers  plain/kit':>24}" * len(columns)]
+    for kind in (*KINDS, "all"):
+        chosen = [one for one in outcomes if kind in (one.kind, "all")]
+        if not chosen:
+            continue
+        found = figures(chosen)
+        cells = "".join(
+            f"{found.rms[c]:>8.3f}{found.coverage[c]:>8.1%}"
+            + (f"{found.ratio[c]:>8.2f}" if c in found.ratio else f"{'':>8}")
+            for c in columns
+        )
+        lines.append(f"{kind:<30}{found.count:>5}  {cells}")
+    return "\n".join(lines)
+
+
+def main() -> None:
+    """Command line of the study."""
+    parser = argparse.ArgumentParser(description="Calibration study of the whole chain.")
+    parser.add_argument("--each", type=int, default=100, help="campaigns of every kind")
+    parser.add_argument("--seed", type=int, default=0, help="first seed")
+    chosen = parser.parse_args()
+    print(table(run(chosen.each, chosen.seed)))
+
+
+if __name__ == "__main__":
+    main()

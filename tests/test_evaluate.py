@@ -1,0 +1,134 @@
+"""From a map to results, remarks and verdicts."""
+
+from __future__ import annotations
+
+import json
+from dataclasses import replace
+
+import pytest
+
+from fieldmap.errors import FieldmapError, InputError, RefusedError
+from fieldmap.estimate import stitch
+from fieldmap.magnet import evaluate
+from fieldmap.readings import Axis, Limit
+from fieldmap.readings.sections import RESULT_UNITS
+from tests.shop import AXIS, DIPOLE, MAGNET, measured, out_and_back, truth
+
+
+@pytest.fixture(scope="module")
+def campaign():
+    limits = [
+        Limit("magnetic_length", 0.299, 0.301),
+        Limit("central_field", None, 0.4),
+        Limit("integrated_field", 0.15, None),
+    ]
+    return measured(out_and_back(), limits=limits)
+
+
+@pytest.fixture(scope="module")
+def fmap(campaign):
+    return stitch(campaign, knot_spacing=0.004)
+
+
+def test_results_of_the_design(campaign, fmap):
+    results = evaluate(fmap, campaign)
+    (line,) = results.lines
+    for key, quantity in line.results.items():
+        assert quantity.unit == RESULT_UNITS[key], key
+        assert quantity.u >= 0
+    for key, value in truth(DIPOLE, AXIS).items():
+        assert abs(results[key].value - value) < 4 * results[key].u
+    assert {"boundary_in", "boundary_out", "magnetic_centre"} <= set(line.results)
+    assert {"peak_field", "peak_position", "homogeneity"} <= set(line.results)
+    assert (results.campaign, results.sha256) == (campaign.name, campaign.sha256)
+
+
+def test_the_map_alone_gives_the_same(campaign, fmap):
+    assert evaluate(fmap) == evaluate(fmap, campaign)
+
+
+def test_verdicts(campaign, fmap):
+    verdicts = evaluate(fmap, campaign).verdicts
+    assert [(one.result, one.line, one.decision) for one in verdicts] == [
+        ("magnetic_length", 0, "accept"),
+        ("central_field", 0, "reject"),
+        ("integrated_field", 0, "undecided"),
+    ]
+    assert verdicts[0].probability > 0.999
+    assert verdicts[1].probability < 1e-6
+    assert 0.001 < verdicts[2].probability < 0.999
+
+
+def test_coverage_factor_of_the_verdicts(campaign, fmap):
+    u = evaluate(fmap, campaign)["magnetic_length"].u
+    value = evaluate(fmap, campaign)["magnetic_length"].value
+    tight = replace(campaign, limits=(Limit("magnetic_length", value - 2.5 * u, None),))
+    assert evaluate(fmap, tight, k=2.0).verdicts[0].decision == "accept"
+    assert evaluate(fmap, tight, k=3.0).verdicts[0].decision == "undecided"
+
+
+def test_other_limits_of_the_integral(campaign, fmap):
+    inner = Axis("z", (-0.05, 0.05), (-0.02, 0.02))
+    results = evaluate(fmap, campaign, axis=inner)
+    assert results["magnetic_length"].value == pytest.approx(0.1, rel=1e-4)
+    moved = replace(campaign, axis=inner)
+    assert evaluate(fmap, moved) == results
+
+
+def test_refuses_limits_outside_the_map(campaign, fmap):
+    with pytest.raises(RefusedError) as caught:
+        evaluate(fmap, campaign, axis=Axis("z", (-0.5, 0.4), (-0.05, 0.05)))
+    assert caught.value.code == "limits-outside-map"
+
+
+@pytest.mark.parametrize(
+    "axis", [Axis("z", (0.4, -0.4), (-0.05, 0.05)), Axis("z", (-0.4, 0.4), (0.01, 0.01))]
+)
+def test_refuses_limits_that_enclose_nothing(campaign, fmap, axis):
+    with pytest.raises(FieldmapError):
+        evaluate(fmap, campaign, axis=axis)
+
+
+def test_refuses_a_limit_on_what_the_map_does_not_give(campaign, fmap):
+    other = replace(campaign, limits=(Limit("tail_in", None, 1e-6),))
+    with pytest.raises(InputError, match="tail_in"):
+        evaluate(fmap, other)
+
+
+def test_a_length_far_from_iron_plus_gap_is_remarked(campaign, fmap):
+    def codes(iron_length):
+        magnet = replace(MAGNET, iron_length=iron_length)
+        again = stitch(replace(campaign, magnet=magnet), knot_spacing=0.01)
+        return {one.code: one for one in evaluate(again).findings}
+
+    assert "length-implausible" not in codes(0.27)  # one gap more than the iron
+    found = codes(0.35)
+    assert "length-implausible" in found
+    assert found["length-implausible"].severity == "warn"  # never a verdict
+
+
+def test_no_central_field_is_remarked(campaign, fmap):
+    tail = Axis("z", (-0.39, 0.39), (0.35, 0.39))
+    results = evaluate(fmap, replace(campaign, limits=()), axis=tail)
+    assert "magnetic_length" not in results.lines[0].results
+    assert "no-central-field" in {one.code for one in results.findings}
+
+
+def test_results_as_json(campaign, fmap):
+    content = json.loads(json.dumps(evaluate(fmap, campaign).as_dict(), allow_nan=False))
+    assert list(content) == ["format", "campaign", "lines", "findings", "verdicts"]
+    assert content["format"] == "fieldmap-results/1"
+    assert content["campaign"] == {"name": "shop", "sha256": ""}
+    (line,) = content["lines"]
+    assert (line["x"], line["y"]) == (0.0, 0.0)
+    assert set(line["results"]["integrated_field"]) == {"value", "u", "unit"}
+    assert set(content["verdicts"][0]) == {"result", "line", "decision", "probability"}
+    for finding in content["findings"]:
+        assert set(finding) == {"code", "severity", "where", "text"}
+
+
+def test_a_short_cut_to_the_first_line(campaign, fmap):
+    results = evaluate(fmap, campaign)
+    assert results["central_field"] is results.lines[0].results["central_field"]
+    assert results["central_field"].expanded() == 2 * results["central_field"].u
+    assert results["central_field"].expanded(3) == 3 * results["central_field"].u
