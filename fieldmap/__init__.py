@@ -14,6 +14,7 @@ from fieldmap.magnet.evaluate import evaluate
 from fieldmap.magnet.quantity import Quantity, Results
 from fieldmap.magnet.reduction import save_reduction
 from fieldmap.readings import Campaign, Pass, load, make_pass
+from fieldmap.version import __version__
 
 __all__ = [
     "Campaign",
@@ -23,6 +24,7 @@ __all__ = [
     "Quantity",
     "RefusedError",
     "Results",
+    "__version__",
     "evaluate",
     "load",
     "load_map",
@@ -32,4 +34,3 @@ __all__ = [
     "save_reduction",
     "stitch",
 ]
-__version__ = "0.1.0"

@@ -24,6 +24,8 @@ __all__ = ["main"]
 
 REFUSED = 2
 INTERRUPTED = 130
+BAR = "{desc} {bar} {elapsed}"
+STEPS_OF_A_SOLVE = 12  # about: of one line, both knot spacings; the bar stretches
 SHOWN_DEMO = "gap_dipole"
 
 
@@ -105,13 +107,16 @@ def _with_progress(source: Path, out: Path) -> Results:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
 
-    with tqdm(delay=2, leave=False, unit="step", dynamic_ncols=True) as bar:
+    with tqdm(delay=2, leave=False, dynamic_ncols=True, bar_format=BAR) as bar:
 
         def tell(step: str) -> None:
             bar.set_description(step, refresh=False)
+            if bar.total is not None:
+                bar.total = max(bar.total, bar.n + 2)
             bar.update()
 
         campaign = fieldmap.load(source, tell=tell)
+        bar.reset(total=STEPS_OF_A_SOLVE * len({(one.x, one.y) for one in campaign.passes}))
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
         fieldmap.save_reduction(fmap, results, out)

@@ -71,9 +71,11 @@ def test_no_such_folder(tmp_path):
 
 
 def test_a_folder_in_the_place_of_the_file(tmp_path):
+    folder = tmp_path / "folder"
+    folder.mkdir()
     with pytest.raises(InputError, match="cannot be written"):
-        write(tmp_path, b"")
-    assert os.listdir(tmp_path.parent) == [tmp_path.name]
+        write(folder, b"")
+    assert os.listdir(tmp_path) == ["folder"]
 
 
 def test_output_folder_is_made(tmp_path):

@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 import math
+from decimal import Decimal
 
 import pytest
-from hypothesis import given
+from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from fieldmap.bench.decimals import quantity_text, shifted_text
@@ -23,7 +24,7 @@ finite = st.floats(allow_nan=False, allow_infinity=False)
         (1e-6, 6, "1"),
         (3e-9, 6, "0.003"),
         (0.0, 3, "0"),
-        (-0.0, 3, "-0"),
+        (-0.0, 3, "0"),
         (120.0, 0, "120"),
         (1e22, 0, "10000000000000000000000"),
         (1e-300, 3, "1E-297"),
@@ -36,17 +37,17 @@ def test_examples(value, places, text):
 
 @given(finite, st.integers(-12, 12))
 def test_the_point_moves_and_no_digit_is_lost(value, places):
-    back = shifted_text(value, places)
-    assert float(f"{back}e{-places}" if "E" not in back else back) == pytest.approx(
-        value if "E" not in back else value * 10.0**places, rel=1e-15, abs=0.0
-    ) or not math.isfinite(value * 10.0**places)
+    sign, digits, exponent = Decimal(repr(value)).as_tuple()
+    assert Decimal(shifted_text(value, places)) == Decimal((sign, digits, exponent + places))
 
 
+@settings(deadline=None)  # the first look-up builds the table of units
 @given(finite.filter(lambda value: abs(value) < 1e250 and (value == 0 or abs(value) > 1e-250)))
 def test_a_length_reads_back_exactly(value):
     assert si(quantity_text(value, "mm", 3, "m"), "m", "here") == value
 
 
+@settings(deadline=None)
 @given(st.floats(1e-12, 1e3))
 def test_noise_reads_back_exactly(value):
     assert si(quantity_text(value, "nV s s^-0.5", 9, "V s s^-0.5"), "V s s^-0.5", "x") == value

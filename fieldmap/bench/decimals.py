@@ -31,7 +31,7 @@ def shifted_text(value: float, places: int) -> str:
     >>> shifted_text(0.0011, 3), shifted_text(1e-05, 6), shifted_text(-0.5, 0)
     ('1.1', '10', '-0.5')
     """
-    number = Decimal(repr(float(value)))
+    number = Decimal(repr(float(value) + 0.0))  # no negative zero
     sign, digits, exponent = number.as_tuple()
     moved = Decimal((sign, digits, int(exponent) + places))
     if abs(int(exponent) + places) > _PLAIN:

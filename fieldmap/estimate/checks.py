@@ -106,15 +106,19 @@ def check_time_and_travel(passes: Sequence[Pass], low: float, high: float) -> No
             )
 
 
-def check_references(references: Sequence[Reference], low: float, high: float) -> list[Reference]:
+def check_references(
+    numbered: Sequence[tuple[int, Reference]], low: float, high: float, slack: float
+) -> list[Reference]:
     """References of one line, checked; a zero stretch is cut to what was mapped.
 
     Parameters
     ----------
-    references : sequence
-        Those that bear on the line.
+    numbered : sequence of (int, reference)
+        Those that bear on the line, with their numbers in the campaign.
     low, high : float
         Ends of the mapped range, m.
+    slack : float
+        How far outside it a place still counts as its end, m.
 
     Returns
     -------
@@ -125,10 +129,10 @@ def check_references(references: Sequence[Reference], low: float, high: float) -
     InputError
         A reference outside the mapped range, or with an uncertainty that is none.
     """
-    return [_checked(one, i, low, high) for i, one in enumerate(references, start=1)]
+    return [_checked(one, number, low, high, slack) for number, one in numbered]
 
 
-def _checked(one: Reference, number: int, low: float, high: float) -> Reference:
+def _checked(one: Reference, number: int, low: float, high: float, slack: float) -> Reference:
     where = f"[[references]] {number}"
     u = one.u_flux_change if isinstance(one, FlipReference) else one.u
     if not (math.isfinite(u) and u > 0):
@@ -141,7 +145,7 @@ def _checked(one: Reference, number: int, low: float, high: float) -> Reference:
             found = f"a stretch from {one.start * 1e3:.6g} to {one.stop * 1e3:.6g} mm"
             raise InputError(where, found, f"a stretch that overlaps {mapped}", remedy)
         return replace(one, start=start, stop=stop)
-    if not low <= one.at <= high:
+    if not low - slack <= one.at <= high + slack:
         raise InputError(where, f"at = {one.at * 1e3:.6g} mm", f"a place within {mapped}", remedy)
     value = one.field if isinstance(one, PointReference) else one.flux_change
     if not math.isfinite(value):

@@ -40,7 +40,7 @@ Key = tuple[str, str]
 START = -1
 STATED = (START, 8, 2, 2, 2)
 OPEN = (START, START, START, START, 8, 2, 2, 2, *[0] * 12)  # noise levels to be found on the way
-RESUMED = (2, 2, 2)
+RESUMED = (1, 1)
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
 
 
@@ -219,7 +219,7 @@ class _Solver:
             before, levels = self.state.b, dict(self.levels)
             if done > 0:
                 self._improve_levels()
-            if done == enough - 3:
+            if done == max(enough - 3, 0):
                 self._rebin()
             data = self._solve(adaptations)
             if done >= enough - 1 and self._settled(before, levels):
@@ -261,14 +261,17 @@ class _Solver:
         )
 
     def _frame(self) -> Floats:
-        """How the recorded profile follows gains, offset and scale (several gains: their mean)."""
+        """How the recorded profile follows gains (their mean) and what shifts all passes alike."""
         b, middles = self.state.b, self.spline.middles()
         slope = np.gradient(b, middles)
+        speed = np.concatenate([model.bins.speed for model in self.models])
         kinds = [unknown.kind for unknown in self.state.unknowns]
         effect = {
             "gain": b / max(kinds.count("gain"), 1),
             "offset": slope,
             "scale": slope * middles,
+            "lag": slope * speed.mean(),
+            "backlash": slope * np.sign(speed).mean() / 2,
         }
         columns = [effect.get(kind, np.zeros_like(b)) for kind in kinds]
         return np.column_stack(columns) if columns else np.zeros((len(b), 0))

@@ -14,6 +14,7 @@ from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.spline import UniformSpline
 from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
+from fieldmap.version import __version__
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -26,12 +27,14 @@ __all__ = [
     "FORMAT",
     "MappedLine",
     "build_map",
+    "check_map",
     "map_axis",
     "map_findings",
     "map_limits",
     "map_lines",
     "map_magnet",
     "map_passes",
+    "map_title",
 ]
 
 Floats = npt.NDArray[np.float64]
@@ -215,6 +218,7 @@ def _describe(
     dataset.attrs = {
         "Conventions": "CF-1.11",
         "format": FORMAT,
+        "fieldmap_version": __version__,
         "title": f"Field map: {campaign.name}",
         "source": "moving-probe scans with a voltage integrator",
         "campaign": json.dumps(_campaign_facts(campaign)),
@@ -259,15 +263,48 @@ def _pass_facts(one: PassFit) -> dict[str, Any]:
 
 def _facts(fmap: xr.Dataset, name: str) -> Any:
     """A JSON attribute of the map."""
+    return json.loads(fmap.attrs[name])
+
+
+def check_map(fmap: xr.Dataset, where: str) -> None:
+    """Refuse a dataset that is not a whole map.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        To be looked at.
+    where : str
+        Its file, for the error.
+
+    Raises
+    ------
+    InputError
+        Something that every map has is missing or of another shape.
+    """
     try:
-        return json.loads(fmap.attrs[name])
-    except (KeyError, TypeError, ValueError) as error:
-        raise InputError(
-            "map",
-            f"no readable attribute '{name}'",
-            "a map written by this package",
-            "reduce the campaign again",
-        ) from error
+        lines = map_lines(fmap)
+        whole = bool(lines) and all(
+            np.isfinite(line.b).all() and np.isfinite(line.covariance).all() for line in lines
+        )
+        readers = (map_title, map_axis, map_limits, map_magnet, map_findings, map_passes)
+        for read in readers:
+            read(fmap)
+    except (KeyError, TypeError, ValueError, IndexError, AttributeError) as error:
+        raise _no_map(where, f"a part that is missing or damaged ({error})") from error
+    if not whole:
+        raise _no_map(where, "coefficients that are not all numbers")
+
+
+def _no_map(where: str, found: str) -> InputError:
+    return InputError(
+        where, found, "a whole map written by this package", "reduce the campaign again"
+    )
+
+
+def map_title(fmap: xr.Dataset) -> tuple[str, str]:
+    """Name and hash of the campaign."""
+    facts = _facts(fmap, "campaign")
+    return str(facts["name"]), str(facts["sha256"])
 
 
 def map_lines(fmap: xr.Dataset) -> list[FieldLine]:

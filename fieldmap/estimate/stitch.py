@@ -140,9 +140,10 @@ def reconstruct(
     """
     low, high = float(one.position.min()), float(one.position.max())
     third = (high - low) / 3
+    some_length = (high - low) / 20 or 1.0  # a probe that stands is refused in its own words
     campaign = Campaign(
         name=one.name,
-        magnet=Magnet("other", "B", gap or (high - low) / 20),
+        magnet=Magnet("other", "B", gap or some_length),
         axis=Axis("z", (low, high), (low + third, high - third)),
         stage=stage or Stage(),
         passes=(one,),
@@ -163,9 +164,9 @@ def _references(
     campaign: Campaign,
     key: tuple[float, float],
     groups: dict[tuple[float, float], list[Pass]],
-) -> list[Reference]:
-    """References that bear on one line."""
-    own: list[Reference] = []
+) -> list[tuple[int, Reference]]:
+    """References that bear on one line, with their numbers in the campaign."""
+    own: list[tuple[int, Reference]] = []
     for i, reference in enumerate(campaign.references, start=1):
         if reference.x is None and reference.y is None:
             if len(groups) > 1 and not isinstance(reference, ZeroReference):
@@ -175,7 +176,7 @@ def _references(
                     "the line that the reference was taken on",
                     "add x and y",
                 )
-            own.append(reference)
+            own.append((i, reference))
             continue
         place = (reference.y or 0.0, reference.x or 0.0)
         if place not in groups:
@@ -186,14 +187,14 @@ def _references(
                 "mend x and y, or measure that line",
             )
         if place == key:
-            own.append(reference)
+            own.append((i, reference))
     return own
 
 
 def _fit_one(
     campaign: Campaign,
     passes: list[Pass],
-    references: list[Reference],
+    numbered: list[tuple[int, Reference]],
     spacing: float | None,
     tell: Tell,
 ) -> MappedLine:
@@ -202,9 +203,9 @@ def _fit_one(
     high = max(float(one.position.max()) for one in passes)
     check_time_and_travel(passes, low, high)
     check_spacing(spacing, low, high)
-    references = check_references(references, low, high)
     gap = campaign.magnet.gap
     chosen = spacing or first_spacing(gap, low, high, sampling(passes))
+    references = check_references(numbered, low, high, slack=chosen / 2)
     check_levels(stretches(passes, slack=2 * chosen), references)
 
     def fit(width: float, like: LineFit | None = None) -> LineFit:

@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING
 
 from fieldmap.atomic import replacing
 from fieldmap.errors import InputError
-from fieldmap.estimate.map import FORMAT
+from fieldmap.estimate.map import FORMAT, check_map
 
 if TYPE_CHECKING:
     import os
@@ -98,4 +98,5 @@ def load_map(path: str | os.PathLike[str]) -> xr.Dataset:
             f"format '{FORMAT}'",
             "give a map.nc written by this package",
         )
+    check_map(fmap, str(source))
     return fmap

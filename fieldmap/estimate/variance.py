@@ -40,12 +40,15 @@ class NoiseLevel:
         V s.
     walk_known, read_known : bool
         Whether the campaign file states it.
+    quietest : float
+        Least read noise that rounding lets one tell, V s.
     """
 
     walk: float
     read: float
     walk_known: bool
     read_known: bool
+    quietest: float = 0.0
 
     @property
     def open(self) -> bool:
@@ -91,19 +94,20 @@ def initial_level(models: Sequence[PassModel]) -> NoiseLevel:
         read = 0.0  # the samples' noise is white voltage: a walk of the integral
     return NoiseLevel(
         walk=rough / np.sqrt(pace) if walk is None else float(walk),
-        read=rough * np.sqrt(count) if read is None else float(np.hypot(read, steps)) + quietest,
+        read=rough * np.sqrt(count) if read is None else math.hypot(read, steps, quietest / 10),
         walk_known=walk is not None,
         read_known=read is not None,
+        quietest=quietest,
     )
 
 
 def _roughness(models: Sequence[PassModel]) -> tuple[float, float]:
     """Noise of a bin mean by its third differences, and the least noise that can be told (V s).
 
-    Exact readings have digits too: below a part in 1e9 of the flux, rounding is the noise.
+    Exact readings have digits too: below a part in 1e8 of the flux, a fit sees rounding.
     """
     span = max(float(np.ptp(model.bins.flux)) for model in models)
-    quietest = max(1e-9 * span, 1e-15)
+    quietest = max(1e-8 * span, 1e-15)
     bends = np.concatenate([np.diff(model.bins.flux, 3) for model in models])
     typical = float(np.median(np.abs(bends))) if len(bends) else 0.0
     return max(typical / np.sqrt(20) / 0.6745, quietest), quietest
@@ -142,6 +146,9 @@ def improve_levels(
         name: max(getattr(level, name) * np.exp(d / 2), QUIETEST * getattr(start, name))
         for name, d in zip(names, step.tolist(), strict=True)
     }
+    changed["read"] = max(changed.get("read", level.read), level.quietest / 10)
+    if not level.read_known:
+        changed["read"] = max(changed["read"], level.quietest)
     return replace(level, **changed)
 
 

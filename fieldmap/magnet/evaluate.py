@@ -2,12 +2,18 @@
 
 from __future__ import annotations
 
-import json
 from typing import TYPE_CHECKING
 
 from fieldmap.errors import InputError
 from fieldmap.estimate.findings import Finding
-from fieldmap.estimate.map import map_axis, map_findings, map_limits, map_lines, map_magnet
+from fieldmap.estimate.map import (
+    map_axis,
+    map_findings,
+    map_limits,
+    map_lines,
+    map_magnet,
+    map_title,
+)
 from fieldmap.magnet.length import length_results
 from fieldmap.magnet.quantity import LineResults, Results
 from fieldmap.magnet.shape import shape_results
@@ -64,10 +70,10 @@ def evaluate(
         LineResults(line.x, line.y, {**length_results(line, axis), **shape_results(line, axis)})
         for line in map_lines(fmap)
     )
-    facts = json.loads(fmap.attrs["campaign"])
+    name, sha256 = map_title(fmap)
     return Results(
-        campaign=facts["name"],
-        sha256=facts["sha256"],
+        campaign=name,
+        sha256=sha256,
         lines=lines,
         findings=(*map_findings(fmap), *_remarks(lines, map_magnet(fmap))),
         verdicts=tuple(

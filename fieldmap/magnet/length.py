@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.errors import RefusedError
+from fieldmap.errors import InputError, RefusedError
 from fieldmap.magnet.quantity import Quantity
 
 if TYPE_CHECKING:
@@ -47,6 +47,8 @@ def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
     ------
     RefusedError
         ``limits-outside-map``.
+    InputError
+        Limits that are no numbers, or the upper one first.
 
     Examples
     --------
@@ -90,6 +92,9 @@ def _ratio(line: FieldLine, above: Floats, below: Floats, offset: float = 0.0) -
 
 
 def _check_window(line: FieldLine, low: float, high: float, key: str) -> None:
+    if not low < high:
+        found = f"{low * 1e3:.6g} to {high * 1e3:.6g} mm"
+        raise InputError(f"[axis] {key}", found, "the lower end first", "turn the two round")
     if line.covers(low, high):
         return
     raise RefusedError(

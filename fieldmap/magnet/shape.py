@@ -56,7 +56,7 @@ def shape_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
     """
     s = _points(line, *axis.integrate)
     b = line.field(s)
-    near = np.abs(b) >= np.abs(b).max() - IN_REACH * line.u_field(s).max()
+    near = _candidates(b, line.u_field(s))
     found = _peak(s[near], b[near], _draws(line, s[near]))
     flat = _points(line, *axis.flat)
     level = float(line.field(flat).mean())
@@ -66,6 +66,13 @@ def shape_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
         spread = _homogeneity(line.field(flat) + drawn)
         found["homogeneity"] = Quantity(float(value), _rms(spread - value), "1")
     return found
+
+
+def _candidates(b: Floats, u: Floats) -> npt.NDArray[np.intp]:
+    """Indices of points that could be the highest, with two neighbours to each side."""
+    high = np.flatnonzero(np.abs(b) >= np.abs(b).max() - IN_REACH * u.max())
+    around = (high[:, None] + np.arange(-2, 3)).ravel()
+    return np.unique(np.clip(around, 0, len(b) - 1))
 
 
 def _points(line: FieldLine, low: float, high: float) -> Floats:

@@ -70,6 +70,9 @@ def conformity(value: float, u: float, lower: float | None, upper: float | None)
     -----
     Source: JCGM 106:2012, 7.2 to 7.4.
     """
+    if u == 0:
+        low, high = -math.inf if lower is None else lower, math.inf if upper is None else upper
+        return float(low <= value <= high)
     return _below(value, u, upper, always=1.0) - _below(value, u, lower, always=0.0)
 
 
@@ -77,8 +80,6 @@ def _below(value: float, u: float, limit: float | None, always: float) -> float:
     """Probability of lying below a limit; `always` where there is none."""
     if limit is None:
         return always
-    if u == 0:
-        return float(value <= limit)
     return 0.5 * math.erfc((value - limit) / (u * math.sqrt(2)))
 
 
