@@ -19,6 +19,7 @@ if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
     from fieldmap.magnet.quantity import Results
+    from fieldmap.readings import Limit
 
 __all__ = ["main"]
 
@@ -94,16 +95,16 @@ def _reduce(chosen: argparse.Namespace) -> None:
 def _reduce_campaign(source: Path, out: Path, truth: Path | None) -> None:
     """Reduce, write, and print what a person wants to read."""
     from fieldmap.show.cautions import caution_text
-    from fieldmap.show.tables import results_text
+    from fieldmap.show.tables import summary_text
 
-    results = _with_progress(source, out)
+    results, limits = _with_progress(source, out)
     known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
-    print(results_text(results, truth=known))
+    print(summary_text(results, limits, truth=known))
     print(f"\nWritten: {out / 'map.nc'}, {out / 'results.json'}\n")
     print(caution_text())
 
 
-def _with_progress(source: Path, out: Path) -> Results:
+def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...]]:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
 
@@ -120,7 +121,7 @@ def _with_progress(source: Path, out: Path) -> Results:
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
         fieldmap.save_reduction(fmap, results, out)
-    return results
+    return results, campaign.limits
 
 
 def _demo(chosen: argparse.Namespace) -> None:

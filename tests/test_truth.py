@@ -32,7 +32,7 @@ def test_solenoid_by_its_formula():
 
 
 def test_boundaries_follow_a_shift_and_an_uneven_window():
-    magnet = TanhMagnet(-0.5, 0.4, 0.01).shifted(0.03)
+    magnet = TanhMagnet(-0.5, 0.4, 0.004).shifted(0.03)
     results = true_results(magnet, Axis("z", (-0.5, 0.5), (-0.05, 0.15)))
     assert results["boundary_in"] == pytest.approx(-0.17, abs=1e-12)
     assert results["boundary_out"] == pytest.approx(0.23, abs=1e-12)
