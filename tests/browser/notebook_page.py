@@ -12,11 +12,14 @@ READY = """async () => {
   await notebook.context.sessionContext.ready;
 }"""
 RUN = "() => window.jupyterapp.commands.execute('notebook:run-all-cells')"
+# a failing cell keeps those after it from running
 DONE = """() => {
   const notebook = window.jupyterapp.shell.currentWidget;
   const kernel = notebook.context.sessionContext.session.kernel;
-  return kernel.status === 'idle' && [...notebook.content.widgets]
-    .every(cell => cell.model.type !== 'code' || cell.model.executionCount);
+  const code = [...notebook.content.widgets].filter(cell => cell.model.type === 'code');
+  const failed = code.some(cell => (cell.model.sharedModel.outputs ?? [])
+    .some(output => output.output_type === 'error'));
+  return kernel.status === 'idle' && (failed || code.every(cell => cell.model.executionCount));
 }"""
 ERRORS = """() => [...window.jupyterapp.shell.currentWidget.content.widgets]
   .flatMap(cell => cell.model.sharedModel.outputs ?? [])
@@ -41,7 +44,8 @@ COLOUR = """([selector, colour]) => {
   return {total: counts.reduce((a, b) => a + b, 0),
     columns: counts.flatMap((n, x) => n > 0.25 * h ? [x / w] : [])};
 }"""
-SIDEWAYS = """() => [...document.querySelectorAll('.jp-Notebook, .jp-WindowedPanel-outer, .fm-panel')]
+SIDEWAYS = """() => ['.jp-Notebook', '.jp-WindowedPanel-outer', '.fm-panel']
+  .flatMap(selector => [...document.querySelectorAll(selector)])
   .filter(e => e.scrollWidth > e.clientWidth + 1)
   .map(e => `${e.className}: ${e.scrollWidth} > ${e.clientWidth}`)"""
 

@@ -159,6 +159,7 @@ def test_fringe_map(lab, page, shoot, fmap):
     page.keyboard.press("Enter")
     reading = page.locator(".fm-reading b")
     eventually(page, reading.inner_text, field_words(*field_at(fmap, 0.23)))
+    eventually(page, lambda: "By at 230 mm" in image.get_attribute("alt"), expected=True)
     shoot("map_fringe_field-decay")
     low, high = fmap["mapped_range"].values[0, 0] * 1e3
     page.locator(".fm-cursor-bar .noUi-handle").focus()

@@ -6,8 +6,8 @@ The whole study, one line a kind of campaign, then the verdict over all:
 
 Every campaign is drawn with a seed of its own (magnet, layout, noise, record kinds); the
 estimator is told what stands in the campaign file and nothing else. Errors are counted in the
-uncertainty u that the kit states, so 1 means that u is right; the plain script's errors are
-counted in the same u.
+uncertainty u that the kit states, so 1 means that u is right; the errors of the plain and of the
+careful script (`tests/study/plain.py`) are counted in the same u and stand as ratios to the kit's.
 """
 
 from __future__ import annotations
@@ -36,11 +36,12 @@ COVERED = 1.959964  # 95 % of a normal distribution
 
 @dataclass(frozen=True)
 class Outcome:
-    """Errors of one campaign in units of the stated u: kit, plain script, and the profile."""
+    """Errors of one campaign in units of the stated u: kit, both scripts, and the profile."""
 
     kind: str
     kit: tuple[float, ...]
     plain: tuple[float, ...]
+    careful: tuple[float, ...]
     profile: tuple[float, ...]
 
 
@@ -51,7 +52,8 @@ class Figures:
     count: int
     rms: dict[str, float]
     coverage: dict[str, float]
-    ratio: dict[str, float]
+    plain: dict[str, float]
+    careful: dict[str, float]
 
 
 def truth(source: Source, campaign: Campaign) -> dict[str, float]:
@@ -74,16 +76,15 @@ def run_one(job: tuple[str, int]) -> Outcome:
     known = truth(source, campaign)
     fmap = fieldmap.stitch(campaign)
     results = fieldmap.evaluate(fmap, campaign)
-    plain = plain_results(campaign)
+    scripts = [plain_results(campaign, careful=careful) for careful in (False, True)]
     (line,) = map_lines(fmap)
     z = np.linspace(*campaign.axis.integrate, PROFILE_POINTS)
     profile = (line.field(z) - source.field(z)) / line.u_field(z)
-    return Outcome(
-        kind=kind,
-        kit=tuple((results[key].value - known[key]) / results[key].u for key in RESULTS),
-        plain=tuple((plain[key] - known[key]) / results[key].u for key in RESULTS),
-        profile=tuple(profile.tolist()),
+    kit, plain, careful = (
+        tuple((found[key] - known[key]) / results[key].u for key in RESULTS)
+        for found in ({key: results[key].value for key in RESULTS}, *scripts)
     )
+    return Outcome(kind, kit, plain, careful, tuple(profile.tolist()))
 
 
 def run(each: int, first_seed: int = 0, workers: int | None = None) -> list[Outcome]:
@@ -96,16 +97,18 @@ def run(each: int, first_seed: int = 0, workers: int | None = None) -> list[Outc
 
 
 def figures(outcomes: list[Outcome]) -> Figures:
-    """Rms of error/u, coverage of the 95 % interval, and the plain script's errors over ours."""
+    """Rms of error/u, coverage of the 95 % interval, and the scripts' errors over ours."""
     kit = np.array([one.kit for one in outcomes])
-    plain = np.array([one.plain for one in outcomes])
     profile = np.array([one.profile for one in outcomes])
     rms = dict(zip(RESULTS, _rms(kit).tolist(), strict=True))
     covered = dict(zip(RESULTS, (np.abs(kit) < COVERED).mean(axis=0).tolist(), strict=True))
     rms["profile"] = float(np.sqrt(np.mean(profile**2)))
     covered["profile"] = float((np.abs(profile) < COVERED).mean())
-    ratio = dict(zip(RESULTS, (_rms(plain) / _rms(kit)).tolist(), strict=True))
-    return Figures(len(outcomes), rms, covered, ratio)
+    plain, careful = (
+        dict(zip(RESULTS, (_rms(np.array(errors)) / _rms(kit)).tolist(), strict=True))
+        for errors in ([one.plain for one in outcomes], [one.careful for one in outcomes])
+    )
+    return Figures(len(outcomes), rms, covered, plain, careful)
 
 
 def _rms(errors: np.ndarray) -> np.ndarray:
@@ -113,22 +116,29 @@ def _rms(errors: np.ndarray) -> np.ndarray:
 
 
 def table(outcomes: list[Outcome]) -> str:
-    """The figures of every kind and of all, as text."""
+    """The figures of every kind, of coils, of mixed passes and of all, as a Markdown table."""
     columns = (*RESULTS, "profile")
-    head = f"{'kind':<30}{'n':>5}  " + "".join(f"{name:>24}" for name in columns)
-    lines = [head, f"{'':<37}" + f"{'rms  covers  plain/kit':>24}" * len(columns)]
-    for kind in (*KINDS, "all"):
-        chosen = [one for one in outcomes if kind in (one.kind, "all")]
-        if not chosen:
-            continue
-        found = figures(chosen)
-        cells = "".join(
-            f"{found.rms[c]:>8.3f}{found.coverage[c]:>8.1%}"
-            + (f"{found.ratio[c]:>8.2f}" if c in found.ratio else f"{'':>8}")
-            for c in columns
-        )
-        lines.append(f"{kind:<30}{found.count:>5}  {cells}")
+    lines = [
+        "| kind | n | " + " | ".join(name.replace("_", " ") for name in columns) + " |",
+        "|---|---|" + "---|" * len(columns),
+    ]
+    groups = {kind: (kind,) for kind in KINDS}
+    groups |= {"all coils": ("rectangular", "round"), "all mixed": ("mixed",), "all": ("",)}
+    for name, starts in groups.items():
+        chosen = [one for one in outcomes if one.kind.startswith(starts)]
+        exact = [one for one in chosen if one.kind == name] or chosen
+        found = figures(exact)
+        cells = [_cell(found, column) for column in columns]
+        lines.append(f"| {name} | {found.count} | " + " | ".join(cells) + " |")
     return "\n".join(lines)
+
+
+def _cell(found: Figures, column: str) -> str:
+    """Rms of error/u, coverage, and the plain and careful scripts' errors over the kit's."""
+    text = f"{found.rms[column]:.3f}, {found.coverage[column]:.1%}"
+    if column in found.plain:
+        text += f"; {found.plain[column]:.3g}, {found.careful[column]:.3g}"
+    return text
 
 
 def main() -> None:

@@ -1,8 +1,11 @@
-"""What a careful user would write with numpy alone: the competitor of the joint estimate.
+"""What a user would write with numpy alone: the competitors of the joint estimate.
 
-Drift is read off the dwells and subtracted, coil passes are shifted until they agree where
-they overlap, wire passes are differentiated, all are averaged on one grid, the reference sets
-the level, and the trapezoidal rule gives the integral. Nothing is weighted or smoothed.
+Drift is read off the dwells and subtracted, wire passes are differentiated, coil passes divided
+by their area, all are averaged on one grid, the reference sets the level, and the trapezoidal
+rule gives the integral. Nothing is weighted or smoothed.
+
+The plain script takes the outermost reading of every coil pass as field zero; the careful one
+shifts coil passes by least squares until all passes agree where they overlap.
 """
 
 from __future__ import annotations
@@ -30,11 +33,13 @@ class Profile:
     has_level: bool
 
 
-def plain_results(campaign: Campaign) -> dict[str, float]:
+def plain_results(campaign: Campaign, *, careful: bool) -> dict[str, float]:
     """Integrated field (T m), central field (T) and magnetic length (m) of a campaign."""
     grid = _grid(campaign)
     profiles = [_profile(one, campaign, grid) for one in campaign.passes]
-    field = _averaged(_levelled(profiles))
+    middle = sum(campaign.axis.flat) / 2
+    levelled = _levelled(profiles) if careful else _zeroed(profiles, np.abs(grid - middle))
+    field = _averaged(levelled)
     field = _referred(field, grid, campaign)
     low, high = campaign.axis.integrate
     left, right = campaign.axis.flat
@@ -106,6 +111,15 @@ def _binned(position: Floats, flux: Floats, grid: Floats) -> tuple[Floats, Float
     order, where, count = np.unique(cell, return_inverse=True, return_counts=True)
     del order
     return np.bincount(where, position) / count, np.bincount(where, flux) / count
+
+
+def _zeroed(profiles: list[Profile], away: Floats) -> list[Floats]:
+    """Take what a coil read farthest from the middle of the magnet as zero field."""
+    fields = []
+    for one in profiles:
+        outermost = np.argmax(np.where(np.isfinite(one.field), away, -1.0))
+        fields.append(one.field - (0.0 if one.has_level else one.field[outermost]))
+    return fields
 
 
 def _levelled(profiles: list[Profile]) -> list[Floats]:
