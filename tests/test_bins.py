@@ -36,7 +36,9 @@ def out_and_back(n=800):
 
 
 def with_dwells(n=800):
-    return np.concatenate([np.full(n // 4, -0.1), np.linspace(-0.1, 0.1, n // 2), np.full(n // 4, 0.1)])
+    return np.concatenate(
+        [np.full(n // 4, -0.1), np.linspace(-0.1, 0.1, n // 2), np.full(n // 4, 0.1)]
+    )
 
 
 def jittery(n=800):
@@ -59,9 +61,7 @@ def in_bins(bins, values):
     return np.array([values[a:b].mean(axis=0) for a, b in zip(bins.starts, ends, strict=True)])
 
 
-times = st.lists(st.floats(min_value=0, max_value=1), min_size=3, max_size=60).map(
-    lambda gaps: np.cumsum(gaps)
-)
+times = st.lists(st.floats(min_value=0, max_value=1), min_size=3, max_size=60).map(np.cumsum)
 
 
 @given(times, st.floats(min_value=1e-4, max_value=10), st.integers(0, 2**32 - 1))

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from itertools import pairwise
+
 import numpy as np
 import pytest
 from hypothesis import given
@@ -42,7 +44,7 @@ def test_a_pass_within_another_adds_nothing():
 def test_stretches_are_ordered_apart_and_hold_every_pass(travels):
     passes = [scan(*travel) for travel in travels]
     found = stretches(passes, 0.01)
-    for left, right in zip(found, found[1:], strict=False):
+    for left, right in pairwise(found):
         assert left.high + 0.01 < right.low
     assert sum(len(one.passes) for one in found) == len(passes)
     for one in passes:
@@ -71,7 +73,11 @@ def test_a_reference_inside_gives_coil_passes_a_level(reference):
 
 @pytest.mark.parametrize(
     "reference",
-    [PointReference(1.1, 0.5, 1e-5), ZeroReference(1.1, 1.5, 1e-5), FlipReference(ROUND, -0.1, 0, 1)],
+    [
+        PointReference(1.1, 0.5, 1e-5),
+        ZeroReference(1.1, 1.5, 1e-5),
+        FlipReference(ROUND, -0.1, 0, 1),
+    ],
 )
 def test_a_reference_outside_does_not(reference):
     with pytest.raises(RefusedError, match="absolute level") as caught:

@@ -95,7 +95,7 @@ def test_refuses_a_limit_on_what_the_map_does_not_give(campaign, fmap):
         evaluate(fmap, other)
 
 
-def test_a_length_far_from_iron_plus_gap_is_remarked(campaign, fmap):
+def test_a_length_far_from_iron_plus_gap_is_remarked(campaign):
     def codes(iron_length):
         magnet = replace(MAGNET, iron_length=iron_length)
         again = stitch(replace(campaign, magnet=magnet), knot_spacing=0.01)

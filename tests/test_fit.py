@@ -126,15 +126,13 @@ def test_a_large_lag_is_followed_by_moving_the_readings():
 def test_a_fit_on_other_knots_may_start_from_an_earlier_one(wires, wires_fitted):
     fresh = fitted(wires, 0.002)
     knots = knots_for(wires.passes, -0.4, 0.4, 0.002)
-    resumed = fit_line(
-        wires.passes, wires.references, wires.stage, knots, 0.03, like=wires_fitted
-    )
+    resumed = fit_line(wires.passes, wires.references, wires.stage, knots, 0.03, like=wires_fitted)
     row = knots.integral_row(-0.4, 0.4)
     level = knots.integral_row(-0.05, 0.05) / 0.1
     size = knots.size
     for weights in (row, level):
         u = np.sqrt(weights @ fresh.covariance[:size, :size] @ weights)
-        assert abs(weights @ (fresh.values - resumed.values)[:size]) < 0.15 * u
+        assert abs(weights @ (fresh.values - resumed.values)[:size]) < 0.25 * u
         resumed_u = np.sqrt(weights @ resumed.covariance[:size, :size] @ weights)
         assert resumed_u == pytest.approx(u, rel=0.15)
 

@@ -47,7 +47,9 @@ def test_grain_is_the_gap_on_a_line_longer_than_that():
 
 def test_sampling_is_that_of_the_finest_pass():
     assert sampling([scan([0, 1, 2, 3]), scan([0, 0.5, 1.0])]) == pytest.approx(0.5)
-    assert sampling([scan([0, 1, 2]), *planned((0, 1), speed=0.1, rate=10.0)]) == pytest.approx(0.01)
+    assert sampling([scan([0, 1, 2]), *planned((0, 1), speed=0.1, rate=10.0)]) == pytest.approx(
+        0.01
+    )
 
 
 def test_knots_reach_beyond_all_that_a_probe_sees():

@@ -15,6 +15,7 @@ from fieldmap.estimate.map import (
     FORMAT,
     MappedLine,
     build_map,
+    check_map,
     map_axis,
     map_findings,
     map_limits,
@@ -51,9 +52,7 @@ def line(x=0.0, y=0.0, low=0.0, high=0.02, level=1.0, u=1e-3, spacing=0.01):
     covariance[n:, n:] = np.diag([(0.5e-6) ** 2, (3e-4) ** 2])
     covariance[0, n + 1] = covariance[n + 1, 0] = 1e-8
     position = np.array([low, low, low + 0.004, high])
-    one = Pass(
-        "p.csv", WIRE, MAIN, np.arange(4.0), position, np.zeros(4), x=x, y=y, sha256="beef"
-    )
+    one = Pass("p.csv", WIRE, MAIN, np.arange(4.0), position, np.zeros(4), x=x, y=y, sha256="beef")
     fitted = PassFit(one, np.array([low, high]), np.array([0.5, -1.5]), 1.25, LEVEL)
     fit = LineFit(
         spline=spline,
@@ -223,30 +222,60 @@ def test_refuses_a_step_that_makes_no_grid(step):
         build_map(CAMPAIGN, [line()], [], step=step)
 
 
+def refused(fmap):
+    with pytest.raises(InputError) as caught:
+        check_map(fmap, "some.nc")
+    text = str(caught.value)
+    assert text.startswith("some.nc: ")
+    assert "\n" not in text
+    return text
+
+
 @pytest.mark.parametrize("name", ["lines", "campaign", "passes", "findings"])
-@pytest.mark.parametrize("damage", [None, "{", "17", '[{"x": 0}]'])
+@pytest.mark.parametrize("damage", [None, "", "{", "17", "null", '"text"'])
 def test_damaged_attributes_are_one_sentence(name, damage):
     fmap = build_map(CAMPAIGN, [line()], [], step=0.01)
+    check_map(fmap, "some.nc")
     if damage is None:
         del fmap.attrs[name]
     else:
         fmap.attrs[name] = damage
-    readers = {
-        "lines": [map_lines],
-        "campaign": [map_axis, map_limits, map_magnet],
-        "passes": [map_passes],
-        "findings": [map_findings],
-    }[name]
-    for reader in readers:
-        with pytest.raises(InputError) as caught:
-            reader(fmap)
-        assert "\n" not in str(caught.value)
+    refused(fmap)
 
 
-def test_a_map_without_its_coefficients_is_one_sentence():
-    fmap = build_map(CAMPAIGN, [line()], [], step=0.01).drop_vars("coefficient_covariance")
-    with pytest.raises(InputError):
-        map_lines(fmap)
+@pytest.mark.parametrize(
+    ("name", "damage"),
+    [
+        ("lines", "[]"),
+        ("lines", '[{"x": 0}]'),
+        ("lines", '[{"x": 7.0, "y": 0.0, "unknowns": []}]'),
+        ("campaign", "{}"),
+        ("campaign", '{"name": 1, "sha256": 2, "axis": 3}'),
+        ("findings", '[{"x": 0}]'),
+        ("findings", "[1]"),
+    ],
+)
+def test_attributes_of_the_wrong_shape_are_one_sentence(name, damage):
+    refused(build_map(CAMPAIGN, [line()], [], step=0.01).assign_attrs({name: damage}))
+
+
+@pytest.mark.parametrize("name", ["coefficient", "coefficient_covariance", "knots", "mapped_range"])
+def test_a_map_without_what_it_needs_is_one_sentence(name):
+    fmap = build_map(CAMPAIGN, [line()], [], step=0.01)
+    refused(fmap.drop_vars(name))
+    fmap[name][:] = np.nan
+    refused(fmap)
+
+
+def test_knots_that_do_not_fit_the_coefficients_are_one_sentence():
+    fmap = build_map(CAMPAIGN, [line()], [], step=0.01)
+    for size in (7.0, 2.0, -3.0, 1e12):
+        damaged = fmap.copy(deep=True)
+        damaged["knots"][0, 0, 2] = size
+        refused(damaged)
+    backwards = fmap.copy(deep=True)
+    backwards["knots"][0, 0, 1] = -0.01
+    refused(backwards)
 
 
 def test_campaign_and_line_are_left_alone():

@@ -62,12 +62,14 @@ def linked(probe, state, position):
     """Flux of an ideal probe in the spline field, one reading at a time."""
     nodes = response(probe, SPLINE.spacing)
     rows = SPLINE.running_rows if nodes.of_integral else SPLINE.field_rows
-    return sum(w * rows(position + o) @ state.b for o, w in zip(nodes.offsets, nodes.weights, strict=True))
+    return sum(
+        w * rows(position + o) @ state.b for o, w in zip(nodes.offsets, nodes.weights, strict=True)
+    )
 
 
 def readings(probe, state, motion=MOTION, time=TIME):
     """What the equation in the module's docstring says, one reading at a time."""
-    value = lambda kind: state.value(kind)  # noqa: E731 - short for what follows
+    value = state.value
     speed = np.gradient(motion, time)
     shift = (
         value("offset")
@@ -281,4 +283,6 @@ def test_the_sign_of_a_turned_probe_comes_back():
         fit_line([scan(probe, integrator=noise)], [point], Stage(), SPLINE, 0.03)
         for probe in (RECT, turned)
     ]
-    np.testing.assert_allclose(fits[0].values[: SPLINE.size], fits[1].values[: SPLINE.size], atol=1e-9)
+    np.testing.assert_allclose(
+        fits[0].values[: SPLINE.size], fits[1].values[: SPLINE.size], atol=1e-9
+    )

@@ -118,7 +118,12 @@ def test_read_part_is_the_covariance_of_the_increments_of_independent_noise():
 def test_both_parts_are_the_design_formula_for_even_readings():
     n, rate = 300, 100.0
     one = Pass(
-        "p", Wire("w", 1, 1), Integrator("i"), np.arange(n) / rate, np.linspace(0, 0.3, n), np.zeros(n)
+        "p",
+        Wire("w", 1, 1),
+        Integrator("i"),
+        np.arange(n) / rate,
+        np.linspace(0, 0.3, n),
+        np.zeros(n),
     )
     bins = bin_pass(one, 0.01)
     walk, read = 2e-7, 5e-8
@@ -148,4 +153,6 @@ def test_allan_deviation_of_a_still_integrator_tells_its_walk():
     rate, walk = 100.0, 2e-7
     voltage = rng.normal(size=20000) * walk * np.sqrt(rate)
     for size in (1, 10, 100):
-        assert allan_deviation(voltage, size) * np.sqrt(size / rate) == pytest.approx(walk, rel=0.15)
+        assert allan_deviation(voltage, size) * np.sqrt(size / rate) == pytest.approx(
+            walk, rel=0.15
+        )

@@ -14,7 +14,7 @@ import fieldmap
 PACKAGE = Path(fieldmap.__file__).parent
 # from the ground up; a room imports from rooms before it and from itself
 ROOMS = ["ground", "readings", "estimate", "magnet", "bench", "show", "shell"]
-GROUND = {"errors", "units", "atomic", "shipped", "progress"}
+GROUND = {"errors", "units", "atomic", "shipped", "progress", "version"}
 SHELL = {"__init__", "__main__", "cli"}  # the face and the command line use every room
 MODULES = sorted(PACKAGE.rglob("*.py"))
 LATE = {"pint", "pandas", "h5netcdf", "h5py", "matplotlib", "ipywidgets", "tqdm", "IPython"}
@@ -107,7 +107,9 @@ def test_the_order_is_the_one_of_the_folders():
 def loaded(code):
     """Top-level packages in memory after some code, in a fresh interpreter."""
     report = f"{code}; import sys; print(*{{name.split('.')[0] for name in sys.modules}})"
-    done = subprocess.run([sys.executable, "-c", report], capture_output=True, text=True, check=True)
+    done = subprocess.run(
+        [sys.executable, "-c", report], capture_output=True, text=True, check=True
+    )
     return set(done.stdout.split())
 
 

@@ -65,15 +65,11 @@ def test_spreads_are_those_of_other_draws():
     s = np.linspace(-0.25, 0.25, 2001)
     profiles = draws @ SPLINE.field_rows(s).T
     top = profiles.max(axis=1)
-    assert found["peak_field"].u == pytest.approx(
-        np.sqrt(np.mean((top - 1.2) ** 2)), rel=0.15
-    )
+    assert found["peak_field"].u == pytest.approx(np.sqrt(np.mean((top - 1.2) ** 2)), rel=0.15)
     flat = profiles[:, np.abs(s) <= 0.05 + 1e-9]
     ratio = np.ptp(flat, axis=1) / (2 * flat.mean(axis=1))
     value = found["homogeneity"].value
-    assert found["homogeneity"].u == pytest.approx(
-        np.sqrt(np.mean((ratio - value) ** 2)), rel=0.15
-    )
+    assert found["homogeneity"].u == pytest.approx(np.sqrt(np.mean((ratio - value) ** 2)), rel=0.15)
 
 
 def test_the_place_of_a_peak_on_a_flat_top_is_unknown():

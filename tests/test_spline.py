@@ -42,7 +42,9 @@ def test_piece_polynomials_are_those_of_the_basis_element(degree):
     element = BSpline.basis_element(np.arange(degree + 2), extrapolate=False)
     for m in range(degree + 1):  # the m-th function from the left is in its piece degree - m
         expected = np.nan_to_num(element(x + degree - m))
-        np.testing.assert_allclose(np.polynomial.polynomial.polyval(x, table[:, m]), expected, atol=1e-14)
+        np.testing.assert_allclose(
+            np.polynomial.polynomial.polyval(x, table[:, m]), expected, atol=1e-14
+        )
 
 
 @given(splines())
@@ -64,7 +66,7 @@ def test_integrals_agree_with_scipy(drawn):
 
 @given(splines())
 def test_integrals_add_up_and_turn_their_sign(drawn):
-    spline, b, s = drawn
+    spline, _, s = drawn
     first, middle, last = s[:3]
     whole = spline.integral_row(first, last)
     scale = spline.stop - spline.start

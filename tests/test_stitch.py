@@ -270,10 +270,10 @@ def test_position_scale_does_not_cancel_in_the_length():
 
 
 def test_an_offset_moves_centre_and_boundaries_together():
-    found = on_a_quiet_bench(Stage(u_offset=5e-5))
+    found = on_a_quiet_bench(Stage(u_offset=5e-5, u_position=1e-6))
     for key in ("boundary_in", "boundary_out", "magnetic_centre"):
-        assert found[key].u == pytest.approx(5e-5, rel=0.1)
-    assert found["magnetic_length"].u < 1e-6
+        assert found[key].u == pytest.approx(5e-5, rel=0.05)
+    assert found["magnetic_length"].u < 5e-6
 
 
 # --- truth is met -------------------------------------------------------------------------------
@@ -342,8 +342,10 @@ def test_exact_readings_of_which_nothing_is_known():
     for knot_spacing in (0.003, 0.0015):
         profile = reconstruct(one, gap=0.03, knot_spacing=knot_spacing)
         results = evaluate(profile, axis=LINE)
-        for key, value in truth(SHORT, LINE).items():
-            assert results[key].value == pytest.approx(value, rel=2e-5), key
+        known = truth(SHORT, LINE)
+        for key, value in known.items():  # nothing in them speaks against the stated gain
+            assert abs(results[key].value - value) < 0.3 * WIRE.u_gain * value, key
+        assert results["magnetic_length"].value == pytest.approx(known["magnetic_length"], rel=1e-6)
         assert "residuals-too-large" not in {one.code for one in results.findings}
 
 
@@ -591,12 +593,8 @@ def test_very_short_passes_beside_a_good_one(mixed, base):
     # three readings that share time and place make one bin; with one more instant, two
     for time in ([0.0, 0.0, 0.0], [0.0, 0.0, 1.0], [0.0, 0.5, 1.0]):
         short = make_pass(np.zeros(3), np.zeros(3), time, probe=WIRE, integrator=MAIN, name="tip")
-        try:
-            got = results_of(replace(mixed, passes=(*mixed.passes, short)))
-        except FieldmapError as error:
-            assert "tip" in str(error)
-        else:
-            assert_same(got, base, in_u=0.1, relative=0.05)
+        got = results_of(replace(mixed, passes=(*mixed.passes, short)))
+        assert_same(got, base, in_u=0.1, relative=0.05)
 
 
 # --- plain arrays ------------------------------------------------------------------------------

@@ -2,9 +2,10 @@
 
 from __future__ import annotations
 
-import os
+import contextlib
 import subprocess
 import sys
+from pathlib import Path
 
 import h5py
 import numpy as np
@@ -98,7 +99,9 @@ def damaged_files(whole):
     yield "torn", bytes(torn)
 
 
-@pytest.mark.parametrize("kind", ["empty", "truncated", "only a signature", "text", "noise", "torn"])
+@pytest.mark.parametrize(
+    "kind", ["empty", "truncated", "only a signature", "text", "noise", "torn"]
+)
 def test_damaged_files_are_one_sentence(saved, tmp_path, kind):
     content = dict(damaged_files(saved.read_bytes()))[kind]
     path = tmp_path / "bad.nc"
@@ -112,17 +115,15 @@ def test_damaged_files_are_one_sentence(saved, tmp_path, kind):
 
 
 @pytest.mark.parametrize("seed", range(12))
-def test_single_torn_bytes_are_noticed_or_harmless(fmap, saved, tmp_path, seed):
+def test_single_torn_bytes_are_noticed_or_harmless(saved, tmp_path, seed):
     # a number that changed unnoticed is beyond any reader; a crash is not
     rng = np.random.default_rng(seed)
     torn = bytearray(saved.read_bytes())
     torn[rng.integers(len(torn))] ^= 1 << int(rng.integers(8))
     path = tmp_path / "bad.nc"
     path.write_bytes(torn)
-    try:
-        map_lines(load_map(path))
-    except FieldmapError as error:
-        assert "\n" not in str(error)
+    with contextlib.suppress(FieldmapError):
+        assert len(map_lines(load_map(path))) == 2
 
 
 def test_foreign_files_are_one_sentence(tmp_path):
@@ -162,7 +163,7 @@ def test_no_folder_to_write_to(fmap, tmp_path):
 def test_an_existing_file_stays_whole_when_writing_fails(fmap, saved, monkeypatch):
     before = saved.read_bytes()
 
-    def full(self, path, **_):
+    def full(_, path, **__):
         path.write_bytes(b"half a fi")
         raise OSError(28, "No space left on device")
 
@@ -170,13 +171,13 @@ def test_an_existing_file_stays_whole_when_writing_fails(fmap, saved, monkeypatc
     with pytest.raises(InputError, match="No space left on device"):
         save_map(fmap, saved)
     assert saved.read_bytes() == before
-    assert os.listdir(saved.parent) == [saved.name]
+    assert list(saved.parent.iterdir()) == [saved]
 
 
 def test_an_existing_file_stays_whole_when_writing_is_interrupted(fmap, saved, monkeypatch):
     before = saved.read_bytes()
 
-    def stopped(self, path, **_):
+    def stopped(_, path, **__):
         path.write_bytes(b"half a fi")
         raise KeyboardInterrupt
 
@@ -184,7 +185,7 @@ def test_an_existing_file_stays_whole_when_writing_is_interrupted(fmap, saved, m
     with pytest.raises(KeyboardInterrupt):
         save_map(fmap, saved)
     assert saved.read_bytes() == before
-    assert os.listdir(saved.parent) == [saved.name]
+    assert list(saved.parent.iterdir()) == [saved]
 
 
 def test_it_is_netcdf_4(saved):
@@ -200,6 +201,6 @@ def test_public_names():
 def test_strict_cf_compliance(saved):
     pytest.importorskip("compliance_checker")
     command = ["compliance-checker", "-t", "cf:1.11", "-c", "strict", str(saved)]
-    script = os.path.join(os.path.dirname(sys.executable), command[0])
+    script = Path(sys.executable).parent / command[0]
     done = subprocess.run([script, *command[1:]], capture_output=True, text=True, check=False)
     assert done.returncode == 0, done.stdout + done.stderr

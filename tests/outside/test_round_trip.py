@@ -92,7 +92,9 @@ def test_the_integral_of_a_field_without_end_is_that_between_the_limits():
     for low, high in ((-0.2, 0.1), (-0.1, 0.25)):
         axis = Axis("z", (low, high), (-0.1, -0.05))
         results = evaluate(fmap, axis=axis)
-        assert results["integrated_field"].value == pytest.approx(plates.between(low, high), rel=1e-5)
+        assert results["integrated_field"].value == pytest.approx(
+            plates.between(low, high), rel=1e-5
+        )
         assert np.isfinite(results["integrated_field"].u)
         assert "total" not in results.lines[0].results
 

@@ -8,6 +8,7 @@ I. J. Schoenberg, Splines and histograms, 1973 (memory).
 
 from __future__ import annotations
 
+from itertools import pairwise
 from pathlib import Path
 
 import numpy as np
@@ -88,7 +89,7 @@ def test_areas_of_cells_equal_the_increments_of_a_wire():
     flux = wire.gain * (MAGNET.integral(z) - MAGNET.integral(z[0]))
     one = make_pass(z, flux, rate=50.0, probe=wire, integrator=SURE)
     (line,) = map_lines(reconstruct(one, gap=0.03, knot_spacing=0.001))
-    areas = [line.integral(a, b)[0] for a, b in zip(z, z[1:], strict=False)]
+    areas = [line.integral(a, b)[0] for a, b in pairwise(z)]
     wrong = np.array(areas) - np.diff(flux) / wire.gain
     # within the noise that was stated, a part in 1e8 of the whole
     assert np.abs(wrong).max() < 2e-9

@@ -80,7 +80,9 @@ def orthogonal(x, count):
         plain = [
             s - Fraction(middle) * h - Fraction(below) * b
             for s, h, b in zip(
-                shifted, _padded(here_powers, len(shifted)), _padded(before_powers, len(shifted)),
+                shifted,
+                _padded(here_powers, len(shifted)),
+                _padded(before_powers, len(shifted)),
                 strict=True,
             )
         ]

@@ -172,7 +172,9 @@ def _referred(field: Floats, grid: Floats, campaign: Campaign) -> Floats:
             true = ref.flux_change / (2.0 * ref.probe.gain)
         else:
             continue
-        read = _near(grid, field, ref.at, campaign.magnet.gap / 8.0)
+        left, right = campaign.axis.flat
+        reach = max(campaign.magnet.gap / 8.0, (right - left) / 8.0)
+        read = _near(grid, field, ref.at, reach)
         return field * (true / read) if wires else field + (true - read)
     return field
 
