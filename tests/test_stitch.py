@@ -589,12 +589,17 @@ def test_refuses_a_gap_that_is_none(mixed, gap):
         stitch(replace(mixed, magnet=replace(MAGNET, gap=gap)))
 
 
-def test_very_short_passes_beside_a_good_one(mixed, base):
-    # three readings that share time and place make one bin; with one more instant, two
-    for time in ([0.0, 0.0, 0.0], [0.0, 0.0, 1.0], [0.0, 0.5, 1.0]):
-        short = make_pass(np.zeros(3), np.zeros(3), time, probe=WIRE, integrator=MAIN, name="tip")
-        got = results_of(replace(mixed, passes=(*mixed.passes, short)))
-        assert_same(got, base, in_u=0.1, relative=0.05)
+@pytest.mark.parametrize("time", [[0.0, 0.0, 1.0], [0.0, 0.5, 1.0]], ids=["2 bins", "3 bins"])
+def test_a_very_short_pass_beside_a_good_one(mixed, base, time):
+    short = make_pass(np.zeros(3), np.zeros(3), time, probe=WIRE, integrator=MAIN, name="tip")
+    got = results_of(replace(mixed, passes=(*mixed.passes, short)))
+    assert_same(got, base, in_u=0.1, relative=0.05)
+
+
+def test_refuses_a_pass_of_one_instant_by_its_name(mixed):
+    short = make_pass(np.zeros(3), np.zeros(3), np.zeros(3), probe=WIRE, name="tip")
+    with pytest.raises(FieldmapError, match="tip.*time"):
+        stitch(replace(mixed, passes=(*mixed.passes, short)), knot_spacing=KNOTS)
 
 
 # --- plain arrays ------------------------------------------------------------------------------

@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.frame import common_frame
 from fieldmap.estimate.model import (
     Information,
     PassModel,
@@ -83,8 +84,6 @@ class LineFit:
         Coefficients of B (T), then the nuisances (SI).
     covariance : (p, p) array
         Covariance of `values`.
-    data : Information
-        What readings, references and nuisance priors say, without the smoothness prior.
     roughness : (size - 3,) array
         Variance of the third differences of B's coefficients that the prior ended with, T^2.
     passes : list of PassFit
@@ -95,7 +94,6 @@ class LineFit:
     unknowns: list[Nuisance]
     values: Floats
     covariance: Floats
-    data: Information
     roughness: Floats
     passes: list[PassFit]
 
@@ -187,6 +185,7 @@ class _Solver:
         self.spline = spline
         self.nominal_current = nominal_current
         self.models = [PassModel(one, spline, nominal_current) for one in passes]
+        self.frame = common_frame([model.bins for model in self.models])
         expected = np.array([unknown.mean for unknown in unknowns])
         self.state = State(np.zeros(spline.size), expected, unknowns)
         self.levels = {
@@ -221,35 +220,45 @@ class _Solver:
                 self._improve_levels()
             if done == max(enough - 3, 0):
                 self._rebin()
-            data = self._solve(adaptations)
+            self._solve(adaptations)
             if done >= enough - 1 and self._settled(before, levels):
                 break
+        values, covariance = self._at_true_positions()
         return LineFit(
             spline=self.spline,
             unknowns=self.state.unknowns,
-            values=np.concatenate([self.state.b, self.state.eta]),
-            covariance=self.covariance,
-            data=data,
+            values=values,
+            covariance=covariance,
             roughness=self.smoother.variance,
             passes=self._pass_fits(),
         )
 
-    def _solve(self, adaptations: int) -> Information:
+    def _at_true_positions(self) -> tuple[Floats, Floats]:
+        """Values and covariance with the profile moved from recorded to true positions."""
+        size, b, eta = self.spline.size, self.state.b, self.state.eta
+        moves = self.frame.to_true(self.spline, b, self.state.unknowns)
+        jacobian = np.eye(size + len(eta))
+        jacobian[:size, size:] = moves
+        values = np.concatenate([b + moves @ eta, eta])
+        return values, jacobian @ self.covariance @ jacobian.T
+
+    def _solve(self, adaptations: int) -> None:
         """Linearise at the present state, solve, and adapt the smoothness to the solution."""
-        data = self._priors() + reference_information(self.references, self.spline, self.state)
+        data = self._priors() + reference_information(
+            self.references, self.spline, self.state, self.frame
+        )
         for model in self.models:
-            data = data + pass_information(model.rows(self.state), self._noise(model))
+            data = data + pass_information(model.rows(self.state, self.frame), self._noise(model))
         size = self.spline.size
         if adaptations == START:
             self.smoother.start(data)
         else:
-            self.smoother.see(self._frame(), self.state.eta)
+            self.smoother.see(self._amplitude(), self.state.eta)
         solution = self._solve_weighed(data)
         for _ in range(adaptations):
             self.smoother.adapt(solution, self.covariance)
             solution = self._solve_weighed(data)
         self.state = State(solution[:size], solution[size:], self.state.unknowns)
-        return data
 
     def _solve_weighed(self, data: Information) -> Floats:
         """Solution and covariance for the smoothness as it is."""
@@ -260,21 +269,18 @@ class _Solver:
             lambda values: data.matrix @ values + self.smoother.times(values),
         )
 
-    def _frame(self) -> Floats:
-        """How the recorded profile follows gains (their mean) and what shifts all passes alike."""
-        b, middles = self.state.b, self.spline.middles()
-        slope = np.gradient(b, middles)
-        speed = np.concatenate([model.bins.speed for model in self.models])
-        kinds = [unknown.kind for unknown in self.state.unknowns]
-        effect = {
-            "gain": b / max(kinds.count("gain"), 1),
-            "offset": slope,
-            "scale": slope * middles,
-            "lag": slope * speed.mean(),
-            "backlash": slope * np.sign(speed).mean() / 2,
-        }
-        columns = [effect.get(kind, np.zeros_like(b)) for kind in kinds]
-        return np.column_stack(columns) if columns else np.zeros((len(b), 0))
+    def _amplitude(self) -> Floats:
+        """Change of the profile as recorded with each nuisance: a gain enlarges it.
+
+        Several gains count by their mean; what tells them apart the readings see.
+        """
+        gains = [("gain", name) for name in {model.one.probe.name for model in self.models}]
+        known = [self.state.index("gain", name) for _, name in gains]
+        columns = np.zeros((self.spline.size, len(self.state.eta)))
+        for index in known:
+            if index is not None:
+                columns[:, index] = self.state.b / len(gains)
+        return columns
 
     def _noise(self, model: PassModel) -> Tridiagonal:
         """Covariance of a pass at the present state and noise levels."""
@@ -305,7 +311,7 @@ class _Solver:
                 )
 
     def _fitted(self, model: PassModel) -> Fitted:
-        rows = model.rows(self.state)
+        rows = model.rows(self.state, self.frame)
         values = np.concatenate([self.state.b, self.state.eta])
         return Fitted(model, rows, self._noise(model), rows.target - rows.design @ values)
 
@@ -313,7 +319,7 @@ class _Solver:
         """Move the readings to where they were taken, if that is more than a linear step."""
         worth = SHIFT_WORTH_REBINNING * self.spline.spacing
         for i, model in enumerate(self.models):
-            shift = model.reading_shift(self.state)
+            shift = model.reading_shift(self.state, self.frame)
             if np.abs(shift).max() > worth:
                 self.models[i] = PassModel(model.one, self.spline, self.nominal_current, shift)
 

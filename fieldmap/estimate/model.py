@@ -4,8 +4,9 @@ A pass reads, up to a constant and noise,
 
     Φ = (1 + gain) * (X + shift * S) b + drift * t
 
-with X the flux rows, S the slope rows dΦ/ds, b the coefficients of B, and
-``shift = offset + scale * s + lag * v + backlash * sign(v) / 2`` the position error. Gain and
+with X the flux rows, S the slope rows dΦ/ds and b the coefficients of B, both in the recorded
+frame, so that ``shift = lag * (v - v̄) + backlash * (sign(v) - mean sign) / 2`` is what tells
+this pass from the others. In that frame a wire cuts ``1 + scale`` times the true field. Gain and
 shift meet b in a product, so each solve linearises at the state before it (Gauss-Newton).
 """
 
@@ -19,9 +20,10 @@ import numpy.typing as npt
 from scipy import sparse
 
 from fieldmap.estimate.bins import Bins, bin_pass, mean_rows
+from fieldmap.estimate.frame import Frame
 from fieldmap.estimate.noise import Tridiagonal, read_part, walk_part
 from fieldmap.estimate.response import response
-from fieldmap.readings.passes import FlipReference, PointReference, ZeroReference
+from fieldmap.readings.passes import FlipReference, PointReference
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -157,48 +159,50 @@ class PassModel:
             else np.add.reduceat(self.shift, starts) / count
         )
 
-    def shift_at(self, state: State) -> Floats:
-        """Position error of each bin at a state, m."""
-        bins = self.bins
-        return np.asarray(
-            state.value("offset")
-            + state.value("scale") * bins.position
-            + state.value("lag") * bins.speed
-            + state.value("backlash") * np.sign(bins.speed) / 2
-        )
+    def own_effects(self, frame: Frame) -> dict[Kind, Floats]:
+        """Shift of each bin against the recorded frame for one unit of each nuisance, m."""
+        speed = self.bins.speed
+        return {"lag": speed - frame.speed, "backlash": (np.sign(speed) - frame.sense) / 2}
 
-    def reading_shift(self, state: State) -> Floats:
-        """Position error of every reading at a state, m."""
-        one = self.one
-        late = np.interp(one.time + state.value("lag"), one.time, one.position)
+    def shift_at(self, state: State, frame: Frame) -> Floats:
+        """Shift of each bin against the recorded frame at a state, m."""
+        effects = self.own_effects(frame)
+        return np.asarray(sum(state.value(kind) * effect for kind, effect in effects.items()))
+
+    def reading_shift(self, state: State, frame: Frame) -> Floats:
+        """Shift of every reading against the recorded frame at a state, m."""
+        one, lag = self.one, state.value("lag")
+        late = np.interp(one.time + lag, one.time, one.position)
         bin_of = np.repeat(np.arange(len(self.bins.starts)), self.bins.count.astype(int))
-        half = state.value("backlash") * np.sign(self.bins.speed) / 2
-        scale = state.value("scale") * one.position
-        return np.asarray(late - one.position + scale + state.value("offset") + half[bin_of])
+        half = state.value("backlash") * self.own_effects(frame)["backlash"]
+        return np.asarray(late - one.position - lag * frame.speed + half[bin_of])
+
+    def gain(self, state: State) -> float:
+        """Gain over its stated value; in the recorded frame a wire's contains the scale."""
+        stretched = state.value("scale") if self.one.probe.senses_level else 0.0
+        return 1 + state.value("gain", self.one.probe.name) + stretched
 
     def covariance(self, state: State, walk: float, read: float, jitter: float) -> Tridiagonal:
         """Covariance of the increments for given noise levels (V s/√s, V s, m)."""
-        swing = self.slope @ state.b * (1 + state.value("gain", self.one.probe.name))
+        swing = self.slope @ state.b * self.gain(state)
         return walk**2 * self.walk + read_part(self.bins, read**2 + (swing * jitter) ** 2)
 
-    def rows(self, state: State) -> Rows:
+    def rows(self, state: State, frame: Frame) -> Rows:
         """Linearise at a state."""
-        bins, gain = self.bins, 1 + state.value("gain", self.one.probe.name)
-        extra = sparse.diags_array(self.shift_at(state) - self.applied) @ self.slope
+        bins, gain = self.bins, self.gain(state)
+        extra = sparse.diags_array(self.shift_at(state, frame) - self.applied) @ self.slope
         field_steps = self.flux_steps + (extra[1:] - extra[:-1])
         swing = gain * (self.slope @ state.b)
         columns = np.zeros((len(bins.time) - 1, len(state.eta)))
-        slopes: list[tuple[Kind, Floats]] = [
-            ("offset", swing),
-            ("scale", swing * bins.position),
-            ("lag", swing * bins.speed),
-            ("backlash", swing * np.sign(bins.speed) / 2),
-        ]
-        for kind, column in slopes:
+        for kind, effect in self.own_effects(frame).items():
             if (index := state.index(kind)) is not None:
-                columns[:, index] = np.diff(column)
-        if (index := state.index("gain", self.one.probe.name)) is not None:
-            columns[:, index] = field_steps @ state.b
+                columns[:, index] = np.diff(swing * effect)
+        gains: list[tuple[Kind, str]] = [("gain", self.one.probe.name)]
+        if self.one.probe.senses_level:
+            gains.append(("scale", ""))
+        for kind, where in gains:
+            if (index := state.index(kind, where)) is not None:
+                columns[:, index] = field_steps @ state.b
         target = np.diff(bins.flux) + columns @ state.eta
         if (index := state.index("drift", self.one.name)) is not None:
             columns[:, index] = np.diff(bins.time)
@@ -229,7 +233,7 @@ def pass_information(rows: Rows, covariance: Tridiagonal) -> Information:
 
 
 def reference_information(
-    references: Sequence[Reference], spline: UniformSpline, state: State
+    references: Sequence[Reference], spline: UniformSpline, state: State, frame: Frame
 ) -> Information:
     """Normal equations of the absolute references.
 
@@ -238,9 +242,11 @@ def reference_information(
     references : sequence
         Point, zero and flip references of the line.
     spline : UniformSpline
-        The knots.
+        The knots, in the recorded frame.
     state : State
         Where to linearise.
+    frame : Frame
+        How recorded and true positions differ.
 
     Returns
     -------
@@ -250,7 +256,9 @@ def reference_information(
     design = np.zeros((len(references), size))
     target, sd = np.zeros(len(references)), np.ones(len(references))
     for i, reference in enumerate(references):
-        design[i], target[i], sd[i] = _reference_row(reference, spline, state)
+        row, target[i], sd[i] = _reference_row(reference, spline, state, frame)
+        design[i] = row
+        target[i] += float(row[spline.size :] @ state.eta)
     white, goal = design / sd[:, None], target / sd
     return Information(
         white.T @ white,
@@ -262,26 +270,41 @@ def reference_information(
 
 
 def _reference_row(
-    reference: Reference, spline: UniformSpline, state: State
+    reference: Reference, spline: UniformSpline, state: State, frame: Frame
 ) -> tuple[Floats, float, float]:
-    """Row over (b, eta), value and standard uncertainty of one reference."""
+    """Row over (b, eta) at the state, value and standard uncertainty of one reference."""
+    if isinstance(reference, FlipReference):
+        return _flip_row(reference, spline, state, frame)
     row = np.zeros(spline.size + len(state.eta))
     if isinstance(reference, PointReference):
-        row[: spline.size] = spline.field_rows(np.array([reference.at]))[0]
+        # the field at a true position is the recorded profile at that position less the shift
+        at = reference.at - _shift(state, frame, reference.at)
+        row[: spline.size] = spline.field_rows(np.array([at]))[0]
+        slope = float(spline.field_rows(np.array([at]), 1)[0] @ state.b)
+        for kind, effect in frame.effects(np.array([reference.at])).items():
+            if (index := state.index(kind)) is not None:
+                row[spline.size + index] = -slope * float(effect[0])
         return row, reference.field, reference.u
-    if isinstance(reference, ZeroReference):
-        width = reference.stop - reference.start
-        row[: spline.size] = spline.integral_row(reference.start, reference.stop) / width
-        return row, 0.0, reference.u
-    return _flip_row(row, reference, spline, state)
+    # a field that vanishes on a stretch has no slope worth a shift
+    width = reference.stop - reference.start
+    row[: spline.size] = spline.integral_row(reference.start, reference.stop) / width
+    return row, 0.0, reference.u
+
+
+def _shift(state: State, frame: Frame, at: float) -> float:
+    """True less recorded position, m."""
+    effects = frame.effects(np.array([at]))
+    return float(sum(state.value(kind) * effect[0] for kind, effect in effects.items()))
 
 
 def _flip_row(
-    row: Floats, flip: FlipReference, spline: UniformSpline, state: State
+    flip: FlipReference, spline: UniformSpline, state: State, frame: Frame
 ) -> tuple[Floats, float, float]:
-    """A coil turned over sees twice what it links, at its recorded place."""
+    """A coil turned over sees twice what it links; it stands, so it has no lag."""
+    row = np.zeros(spline.size + len(state.eta))
     nodes = response(flip.probe, spline.spacing)
-    at = flip.at + state.value("offset") + state.value("scale") * flip.at
+    standing = Frame(0.0, 0.0)
+    at = flip.at + _shift(state, standing, flip.at) - _shift(state, frame, flip.at)
     places = at + nodes.offsets
     if nodes.of_integral:
         links = nodes.weights @ spline.running_rows(places)
@@ -291,14 +314,13 @@ def _flip_row(
         slope = nodes.weights @ spline.field_rows(places, 1)
     gain = 1 + state.value("gain", flip.probe.name)
     row[: spline.size] = 2 * gain * links
+    swing = float(2 * gain * slope @ state.b)
     steps: list[tuple[Kind, str, float]] = [
         ("gain", flip.probe.name, float(2 * links @ state.b)),
-        ("offset", "", float(2 * gain * slope @ state.b)),
-        ("scale", "", float(2 * gain * slope @ state.b) * flip.at),
+        ("lag", "", -swing * frame.speed),
+        ("backlash", "", -swing * frame.sense / 2),
     ]
-    target = flip.flux_change
     for kind, where, step in steps:
         if (index := state.index(kind, where)) is not None:
             row[spline.size + index] = step
-            target += step * state.eta[index]
-    return row, target, flip.u_flux_change
+    return row, flip.flux_change, flip.u_flux_change

@@ -92,7 +92,7 @@ def eventually(page, ask, expected, seconds=30):
         if answer == expected:
             return
         page.wait_for_timeout(100)
-    assert answer == expected
+    raise AssertionError(f"it stays {answer!r}, expected {expected!r}")
 
 
 def results_shown(page):
