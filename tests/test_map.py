@@ -23,7 +23,6 @@ from fieldmap.estimate.map import (
     map_magnet,
     map_passes,
 )
-from fieldmap.estimate.model import Information
 from fieldmap.estimate.parameters import Nuisance
 from fieldmap.estimate.spline import UniformSpline
 from fieldmap.estimate.variance import NoiseLevel
@@ -59,7 +58,6 @@ def line(x=0.0, y=0.0, low=0.0, high=0.02, level=1.0, u=1e-3, spacing=0.01):
         unknowns=UNKNOWNS,
         values=np.concatenate([np.full(n, level), [2e-6, 1e-4]]),
         covariance=covariance,
-        data=Information(np.zeros((1, 1)), np.zeros(1), 0.0, 0.0, 0),
         roughness=np.ones(n - 3),
         passes=[fitted],
     )

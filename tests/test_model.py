@@ -8,6 +8,7 @@ import numpy as np
 import pytest
 
 from fieldmap.estimate.fit import fit_line
+from fieldmap.estimate.frame import Frame
 from fieldmap.estimate.model import (
     PassModel,
     State,
@@ -46,6 +47,7 @@ UNKNOWNS = [
     *(Nuisance(kind, "", 0.0, 1e-3) for kind in KINDS),
 ]
 ZERO = State(B, np.zeros(len(UNKNOWNS)), UNKNOWNS)
+FRAME = Frame(speed=0.002, sense=0.25)  # as of some more passes
 every_probe = pytest.mark.parametrize("probe", PROBES, ids=lambda p: p.name)
 
 
@@ -68,16 +70,12 @@ def linked(probe, state, position):
 
 
 def readings(probe, state, motion=MOTION, time=TIME):
-    """What the equation in the module's docstring says, one reading at a time."""
+    """What the equation in the module's docstring says, one reading at a time: recorded frame."""
     value = state.value
     speed = np.gradient(motion, time)
-    shift = (
-        value("offset")
-        + value("scale") * motion
-        + value("lag") * speed
-        + value("backlash") * np.sign(speed) / 2
-    )
-    gain = 1 + state.value("gain", probe.name)
+    shift = value("lag") * (speed - FRAME.speed)
+    shift = shift + value("backlash") * (np.sign(speed) - FRAME.sense) / 2
+    gain = 1 + value("gain", probe.name) + (value("scale") if probe.senses_level else 0.0)
     return gain * linked(probe, state, motion + shift) + state.value("drift", "p") * time
 
 
@@ -94,7 +92,7 @@ def steps(model, values):
 @every_probe
 def test_columns_of_the_coefficients(probe):
     model = PassModel(scan(probe), SPLINE)
-    design = model.rows(ZERO).design.toarray()
+    design = model.rows(ZERO, FRAME).design.toarray()
     for k in (0, 12, 33, SPLINE.size - 1):
         unit = np.eye(SPLINE.size)[k]
         expected = steps(model, linked(probe, State(unit, ZERO.eta, UNKNOWNS), MOTION))
@@ -107,9 +105,9 @@ def test_columns_of_the_coefficients(probe):
     [
         ("drift_p", 1e-6, 1e-6),
         ("gain", 1e-6, 1e-6),
-        ("offset", 1e-6, 1e-6),
-        ("scale", 1e-6, 2e-3),  # position and slope are averaged apart
-        ("lag", 1e-5, 2e-2),  # and so are speed and slope
+        ("offset", 1e-6, 1e-6),  # no pass tells an offset
+        ("scale", 1e-6, 1e-6),  # a wire's gain, and nothing to a coil
+        ("lag", 1e-5, 2e-2),  # speed and slope are averaged apart
         ("backlash", 1e-6, 1e-2),
     ],
 )
@@ -119,13 +117,15 @@ def test_columns_of_the_nuisances(probe, name, step, tolerance):
     up, down = readings(probe, at(**{key: step})), readings(probe, at(**{key: -step}))
     expected = steps(model, (up - down) / (2 * step))
     state = at(**{key: 1.0})
-    column = model.rows(ZERO).design.toarray()[:, SPLINE.size + int(np.argmax(state.eta))]
+    column = model.rows(ZERO, FRAME).design.toarray()[:, SPLINE.size + int(np.argmax(state.eta))]
     np.testing.assert_allclose(column, expected, rtol=0, atol=tolerance * np.abs(expected).max())
+    told = name != "offset" and (name != "scale" or probe is WIRE)
+    assert bool(column.any()) == told
 
 
 @every_probe
 def test_other_probes_gains_have_no_column(probe):
-    design = PassModel(scan(probe), SPLINE).rows(ZERO).design.toarray()
+    design = PassModel(scan(probe), SPLINE).rows(ZERO, FRAME).design.toarray()
     for other in PROBES:
         column = design[:, SPLINE.size + ZERO.index("gain", other.name)]
         assert column.any() == (other is probe)
@@ -133,43 +133,43 @@ def test_other_probes_gains_have_no_column(probe):
 
 @every_probe
 def test_linearised_away_from_zero_the_readings_are_met_to_second_order(probe):
-    near = at(offset=2e-5, lag=1e-3, drift_p=1e-6, **{f"gain_{probe.name}": 2e-4})
-    there = at(offset=3e-5, lag=1.5e-3, drift_p=3e-6, **{f"gain_{probe.name}": 5e-4})
+    near = at(scale=2e-5, lag=1e-3, drift_p=1e-6, **{f"gain_{probe.name}": 2e-4})
+    there = at(scale=3e-5, lag=1.5e-3, drift_p=3e-6, **{f"gain_{probe.name}": 5e-4})
     model = PassModel(scan(probe, there), SPLINE)
-    rows = model.rows(near)
+    rows = model.rows(near, FRAME)
     rest = rows.target - rows.design @ np.concatenate([B, there.eta])
-    linear = PassModel(scan(probe, there), SPLINE).rows(ZERO)
+    linear = PassModel(scan(probe, there), SPLINE).rows(ZERO, FRAME)
     first_order = linear.target - linear.design @ np.concatenate([B, ZERO.eta])
     assert np.abs(rest).max() < 2e-2 * np.abs(first_order).max()
 
 
 @every_probe
 def test_readings_moved_to_where_they_were_taken_are_met_better_still(probe):
-    there = at(offset=3e-4, lag=5e-3)
+    there = at(backlash=8e-4)
     plain = PassModel(scan(probe, there), SPLINE)
-    moved = PassModel(scan(probe, there), SPLINE, shift=plain.reading_shift(there))
+    moved = PassModel(scan(probe, there), SPLINE, shift=plain.reading_shift(there, FRAME))
 
     def misfit(model):
-        rows = model.rows(there)
+        rows = model.rows(there, FRAME)
         return np.abs(rows.target - rows.design @ np.concatenate([B, there.eta])).max()
 
     assert misfit(moved) < 0.1 * misfit(plain)
 
 
 def test_shift_of_every_reading():
-    state = at(offset=1e-3, scale=1e-2, backlash=4e-3, lag=0.05)
+    state = at(offset=1e-3, scale=1e-2, backlash=4e-3, lag=0.05)  # the first two shift the frame
     motion = np.linspace(-0.1, 0.1, len(TIME))
-    shift = PassModel(scan(WIRE, motion=motion), SPLINE).reading_shift(state)
+    shift = PassModel(scan(WIRE, motion=motion), SPLINE).reading_shift(state, FRAME)
     speed = 0.2 / TIME[-1]
-    expected = 1e-3 + 1e-2 * motion + 2e-3 + 0.05 * speed
-    np.testing.assert_allclose(shift[:-10], expected[:-10], rtol=0, atol=1e-9)
+    expected = 2e-3 * (1 - FRAME.sense) + 0.05 * (speed - FRAME.speed)
+    np.testing.assert_allclose(shift[:-10], expected, rtol=0, atol=1e-9)
 
 
 def test_expected_drift_is_taken_off_where_it_is_certain():
     certain = Integrator("i", drift=3e-6, u_drift=0.0)
     without = State(B, ZERO.eta[1:], UNKNOWNS[1:])
     one = scan(WIRE, at(drift_p=3e-6), certain)
-    rows = PassModel(one, SPLINE).rows(without)
+    rows = PassModel(one, SPLINE).rows(without, FRAME)
     rest = rows.target - rows.design @ np.concatenate([B, without.eta])
     assert np.abs(rest).max() < 1e-12
 
@@ -181,7 +181,7 @@ def test_current_scales_what_was_read(probe):
     starts, count = model.bins.starts, model.bins.count
     factor = np.add.reduceat(current / 85, starts) / count
     means = np.add.reduceat(linked(probe, ZERO, MOTION), starts) / count
-    got = model.rows(ZERO).design[:, : SPLINE.size] @ B
+    got = model.rows(ZERO, FRAME).design[:, : SPLINE.size] @ B
     np.testing.assert_allclose(got, np.diff(factor * means), rtol=0, atol=1e-12)
 
 
@@ -197,7 +197,7 @@ def test_jitter_is_seen_through_the_slope():
 
 def test_information_of_a_pass_is_that_of_dense_least_squares():
     model = PassModel(scan(WIRE), SPLINE)
-    rows, noise = model.rows(ZERO), model.covariance(ZERO, 2e-7, 5e-8, 5e-6)
+    rows, noise = model.rows(ZERO, FRAME), model.covariance(ZERO, 2e-7, 5e-8, 5e-6)
     found = pass_information(rows, noise)
     C = np.diag(noise.diagonal) + np.diag(noise.off, 1) + np.diag(noise.off, -1)
     A, weight = rows.design.toarray(), np.linalg.inv(C)
@@ -212,7 +212,7 @@ def test_information_of_a_pass_is_that_of_dense_least_squares():
 
 def test_information_adds_up():
     model = PassModel(scan(WIRE), SPLINE)
-    one = pass_information(model.rows(ZERO), model.covariance(ZERO, 2e-7, 5e-8, 0.0))
+    one = pass_information(model.rows(ZERO, FRAME), model.covariance(ZERO, 2e-7, 5e-8, 0.0))
     both = one + one
     np.testing.assert_array_equal(both.matrix, 2 * one.matrix)
     np.testing.assert_array_equal(both.right, 2 * one.right)
@@ -225,7 +225,7 @@ def test_information_adds_up():
 
 def one_row(reference, state=ZERO):
     """Row, target and u of one reference, from its information."""
-    found = reference_information([reference], SPLINE, state)
+    found = reference_information([reference], SPLINE, state, FRAME)
     u = np.exp(found.log_noise / 2)
     target = np.sqrt(found.square) * u
     return found.right * u**2 / target, target, u
@@ -233,14 +233,17 @@ def one_row(reference, state=ZERO):
 
 def test_row_of_a_point_reference():
     row, target, u = one_row(PointReference(0.013, 0.25, 1e-5))
-    expected = np.zeros(len(row))
-    expected[: SPLINE.size] = SPLINE.field_rows(np.array([0.013]))[0]
-    np.testing.assert_allclose(row, expected, rtol=0, atol=1e-12)
     assert (target, u) == pytest.approx((0.25, 1e-5))
+    place = np.array([0.013])
+    np.testing.assert_allclose(row[: SPLINE.size], SPLINE.field_rows(place)[0], rtol=0, atol=1e-12)
+    slope = float(SPLINE.field_rows(place, 1)[0] @ B)
+    shifts = {"offset": 1.0, "scale": 0.013, "lag": FRAME.speed, "backlash": FRAME.sense / 2}
+    for kind, shift in shifts.items():
+        assert row[SPLINE.size + ZERO.index(kind, "")] == pytest.approx(-slope * shift, rel=1e-9)
 
 
 def test_row_of_a_zero_reference_is_the_mean_over_its_stretch():
-    found = reference_information([ZeroReference(0.09, 0.12, 5e-6)], SPLINE, ZERO)
+    found = reference_information([ZeroReference(0.09, 0.12, 5e-6)], SPLINE, ZERO, FRAME)
     row = np.zeros(len(found.right))
     row[: SPLINE.size] = SPLINE.integral_row(0.09, 0.12) / 0.03
     np.testing.assert_allclose(found.matrix, np.outer(row, row) / 5e-6**2, rtol=1e-9, atol=1e-3)
@@ -250,17 +253,18 @@ def test_row_of_a_zero_reference_is_the_mean_over_its_stretch():
 @pytest.mark.parametrize("probe", [RECT, ROUND], ids=lambda p: p.name)
 def test_row_of_a_flip_reference(probe):
     def change(state):
-        place = np.array([0.02 + state.value("offset") + 0.02 * state.value("scale")])
+        moving = state.value("lag") * FRAME.speed + state.value("backlash") * FRAME.sense / 2
+        place = np.array([0.02 - moving])  # the coil stands: what shifts the frame, not the coil
         return 2 * (1 + state.value("gain", probe.name)) * float(linked(probe, state, place)[0])
 
-    state = at(offset=1e-4, **{f"gain_{probe.name}": 1e-3})
+    state = at(lag=1e-2, **{f"gain_{probe.name}": 1e-3})
     row, _, u = one_row(FlipReference(probe, 0.02, 0.3, 2e-6), state)
     assert u == pytest.approx(2e-6)
-    for kind in ("offset", "scale", f"gain_{probe.name}"):
+    for kind in ("offset", "scale", "lag", "backlash", f"gain_{probe.name}"):
         index = int(np.argmax(at(**{kind: 1.0}).eta))
         step = np.eye(len(UNKNOWNS))[index] * 1e-6
         up, down = (change(State(B, state.eta + s, UNKNOWNS)) for s in (step, -step))
-        assert row[SPLINE.size + index] == pytest.approx((up - down) / 2e-6, rel=1e-5)
+        assert row[SPLINE.size + index] == pytest.approx((up - down) / 2e-6, rel=1e-5, abs=1e-9)
     assert row[: SPLINE.size] @ B == pytest.approx(change(state), rel=1e-12)
 
 

@@ -68,7 +68,7 @@ def solves(monkeypatch, known):
             known[asked[-1]] = STITCH(campaign, knot_spacing=knot_spacing, **more)
         return known[asked[-1]]
 
-    monkeypatch.setattr(fieldmap, "stitch", stitch)
+    monkeypatch.setattr("fieldmap.show.panels.state.stitch", stitch)
     return asked
 
 
@@ -80,7 +80,7 @@ def evaluations(monkeypatch):
         asked.append(more.get("axis"))
         return evaluate(*args, **more)
 
-    monkeypatch.setattr(fieldmap, "evaluate", counted)
+    monkeypatch.setattr("fieldmap.show.panels.state.evaluate", counted)
     return asked
 
 
@@ -249,14 +249,14 @@ def test_what_cannot_be_solved_is_said_as_it_is(panel, monkeypatch):
     def refuse(*_, **__):
         raise RefusedError("code", "pass_02.csv", "found <nothing> & more.")
 
-    monkeypatch.setattr(fieldmap, "stitch", refuse)
+    monkeypatch.setattr("fieldmap.show.panels.state.stitch", refuse)
     panel.passes.boxes[0].value = False
     assert panel.state.error == "pass_02.csv: found <nothing> & more."
     assert "pass_02.csv: found &lt;nothing&gt; &amp; more." in panel.status.widget.value
 
 
 def test_a_failure_of_the_kit_is_shown_and_logged(panel, monkeypatch, caplog):
-    monkeypatch.setattr(fieldmap, "evaluate", lambda *_, **__: 1 / 0)
+    monkeypatch.setattr("fieldmap.show.panels.state.evaluate", lambda *_, **__: 1 / 0)
     panel.limits.integrate.low.value = -300.0
     assert "ZeroDivisionError: division by zero" in panel.status.widget.value
     assert "alert" in panel.status.widget.value

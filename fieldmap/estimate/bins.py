@@ -27,6 +27,7 @@ __all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows"]
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.intp]
 
+SLOWEST = 0.1  # of the fastest bin: what is slower stands, and only jitters
 MAX_BLOCKS = 16384  # the search for bin ends looks at this many block means at most
 
 
@@ -42,6 +43,9 @@ class Bins:
         Readings in the bin.
     time, position, flux, speed : arrays
         Means, in s, m, V s and m/s.
+    sense : array
+        Direction of travel, +1 or -1; in a dwell that of the travel before it, since the play
+        of the stage stays taken up.
     bridge : array
         ``∫A(1-A) dt`` over the bin, s, with A the share of its readings already taken: what
         the design's ``w(1 - 1/c²)/6`` is for evenly spaced readings.
@@ -55,6 +59,7 @@ class Bins:
     position: Floats
     flux: Floats
     speed: Floats
+    sense: Floats
     bridge: Floats
     current: Floats | None = None
 
@@ -119,18 +124,18 @@ def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bi
     def mean(values: Floats) -> Floats:
         return np.asarray(np.add.reduceat(values, starts) / count)
 
-    position = mean(one.position)
-    time = mean(one.time)
+    speed = _bin_speed(one, starts)
     current = None
     if one.current is not None and nominal_current:
         current = mean(one.current) / nominal_current
     return Bins(
         starts=starts,
         count=count,
-        time=time,
-        position=position,
+        time=mean(one.time),
+        position=mean(one.position),
         flux=mean(one.flux - origin),
-        speed=_bin_speed(one, starts),
+        speed=speed,
+        sense=_sense(speed),
         bridge=_bridge(one, starts, count),
         current=current,
     )
@@ -143,8 +148,18 @@ def _bin_speed(one: Pass, starts: Ints) -> Floats:
     high = np.minimum(np.append(starts[1:], n), n - 1)
     duration = one.time[high] - one.time[low]
     distance = one.position[high] - one.position[low]
-    speed: Floats = np.divide(distance, duration, out=np.zeros(len(starts)), where=duration > 0)
+    some = duration > 1e-12 * (one.time[-1] - one.time[0])
+    speed: Floats = np.divide(distance, duration, out=np.zeros(len(starts)), where=some)
     return speed
+
+
+def _sense(speed: Floats) -> Floats:
+    """Direction of travel of each bin, carried on through dwells."""
+    moving = np.flatnonzero(np.abs(speed) > SLOWEST * np.abs(speed).max(initial=0.0))
+    if not len(moving):
+        return np.zeros(len(speed))
+    last = np.searchsorted(moving, np.arange(len(speed)), side="right") - 1
+    return np.asarray(np.sign(speed[moving[np.maximum(last, 0)]]))
 
 
 def _bridge(one: Pass, starts: Ints, count: Floats) -> Floats:

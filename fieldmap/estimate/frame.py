@@ -92,12 +92,13 @@ def common_frame(bins: Sequence[Bins]) -> Frame:
     Frame
     """
     speed = np.concatenate([one.speed for one in bins])
+    sense = np.concatenate([one.sense for one in bins])
     lasting = np.concatenate([_durations(one.time) for one in bins])
     distance = np.abs(speed) * lasting
     total = float(distance.sum())
     if total == 0:
         return Frame(0.0, 0.0)
-    return Frame(float(distance @ speed) / total, float(distance @ np.sign(speed)) / total)
+    return Frame(float(distance @ speed) / total, float(distance @ sense) / total)
 
 
 def _durations(time: Floats) -> Floats:

@@ -12,7 +12,7 @@ import numpy.typing as npt
 from fieldmap.errors import InputError
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.findings import Finding
-from fieldmap.estimate.spline import UniformSpline
+from fieldmap.estimate.spline import DEGREE, UniformSpline
 from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
 from fieldmap.version import __version__
 
@@ -283,9 +283,7 @@ def check_map(fmap: xr.Dataset, where: str) -> None:
     """
     try:
         lines = map_lines(fmap)
-        whole = bool(lines) and all(
-            np.isfinite(line.b).all() and np.isfinite(line.covariance).all() for line in lines
-        )
+        whole = bool(lines) and all(_is_whole(line) for line in lines)
         readers = (map_title, map_axis, map_limits, map_magnet, map_findings, map_passes)
         for read in readers:
             read(fmap)
@@ -293,6 +291,18 @@ def check_map(fmap: xr.Dataset, where: str) -> None:
         raise _no_map(where, f"a part that is missing or damaged ({error})") from error
     if not whole:
         raise _no_map(where, "coefficients that are not all numbers")
+
+
+def _is_whole(line: FieldLine) -> bool:
+    """Whether a line's numbers are finite and fit together."""
+    spline = line.spline
+    numbers = (line.b, line.covariance, [line.low, line.high, spline.start, spline.spacing])
+    return (
+        all(bool(np.isfinite(one).all()) for one in numbers)
+        and spline.spacing > 0
+        and spline.size == len(line.b) > DEGREE
+        and line.covariance.shape == (spline.size, spline.size)
+    )
 
 
 def _no_map(where: str, found: str) -> InputError:
@@ -361,4 +371,4 @@ def map_findings(fmap: xr.Dataset) -> list[Finding]:
 
 def map_passes(fmap: xr.Dataset) -> list[dict[str, Any]]:
     """What is kept of each pass: name, hash, probe, noise, chi-square, freedom."""
-    return list(_facts(fmap, "passes"))
+    return [dict(one) for one in _facts(fmap, "passes")]

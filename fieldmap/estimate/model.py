@@ -5,7 +5,7 @@ A pass reads, up to a constant and noise,
     Φ = (1 + gain) * (X + shift * S) b + drift * t
 
 with X the flux rows, S the slope rows dΦ/ds and b the coefficients of B, both in the recorded
-frame, so that ``shift = lag * (v - v̄) + backlash * (sign(v) - mean sign) / 2`` is what tells
+frame, so that ``shift = lag * (v - v̄) + backlash * (sense - mean sense) / 2`` is what tells
 this pass from the others. In that frame a wire cuts ``1 + scale`` times the true field. Gain and
 shift meet b in a product, so each solve linearises at the state before it (Gauss-Newton).
 """
@@ -162,7 +162,7 @@ class PassModel:
     def own_effects(self, frame: Frame) -> dict[Kind, Floats]:
         """Shift of each bin against the recorded frame for one unit of each nuisance, m."""
         speed = self.bins.speed
-        return {"lag": speed - frame.speed, "backlash": (np.sign(speed) - frame.sense) / 2}
+        return {"lag": speed - frame.speed, "backlash": (self.bins.sense - frame.sense) / 2}
 
     def shift_at(self, state: State, frame: Frame) -> Floats:
         """Shift of each bin against the recorded frame at a state, m."""

@@ -34,6 +34,7 @@ Floats = npt.NDArray[np.float64]
 
 STILL = 0.1  # halving the knots may move no result by more than this many u
 HALVINGS = 3
+PROFILE_POINTS = 200
 
 
 def stitch(
@@ -258,10 +259,24 @@ def _unsure(fit: LineFit, outcome: str) -> Finding:
 
 
 def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:
-    """Largest change of integrated field, central field and magnetic length, in u."""
+    """Largest change of integrated field, central field and magnetic length, in u.
+
+    The profile counts by the rms of its change, a third as strictly: it is no single number.
+    """
     before, u = _main_results(coarse, axis)
     after, _ = _main_results(fine, axis)
-    return float(np.max(np.abs(after - before) / u))
+    results = float(np.max(np.abs(after - before) / u))
+    s = np.linspace(*axis.integrate, PROFILE_POINTS)
+    field, u_field = _profile(coarse, s)
+    profile = float(np.sqrt(np.mean(((_profile(fine, s)[0] - field) / u_field) ** 2)))
+    return max(results, profile / 3)
+
+
+def _profile(fit: LineFit, s: Floats) -> tuple[Floats, Floats]:
+    size = fit.spline.size
+    rows = fit.spline.field_rows(s)
+    spread = np.einsum("ij,ij->i", rows @ fit.covariance[:size, :size], rows)
+    return rows @ fit.values[:size], np.sqrt(spread)
 
 
 def _main_results(fit: LineFit, axis: Axis) -> tuple[Floats, Floats]:

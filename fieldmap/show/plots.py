@@ -154,7 +154,6 @@ def draw_residuals(
             marker=style.marker,
             markersize=3,
             markeredgewidth=0,
-            alpha=0.75,
             label=names[i],
         )
         drawn.append(line)

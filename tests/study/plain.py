@@ -172,9 +172,7 @@ def _referred(field: Floats, grid: Floats, campaign: Campaign) -> Floats:
             true = ref.flux_change / (2.0 * ref.probe.gain)
         else:
             continue
-        left, right = campaign.axis.flat
-        reach = max(campaign.magnet.gap / 8.0, (right - left) / 8.0)
-        read = _near(grid, field, ref.at, reach)
+        read = _near(grid, field, ref.at, campaign.magnet.gap / 8.0)
         return field * (true / read) if wires else field + (true - read)
     return field
 

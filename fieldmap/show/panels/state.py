@@ -16,9 +16,12 @@ from dataclasses import asdict, replace
 from pathlib import Path
 from typing import TYPE_CHECKING, Final, Literal
 
-import fieldmap
 from fieldmap.errors import FieldmapError, InputError
 from fieldmap.estimate.findings import Finding
+from fieldmap.estimate.stitch import stitch
+from fieldmap.magnet.evaluate import evaluate
+from fieldmap.magnet.reduction import save_reduction
+from fieldmap.readings.campaign import load
 from fieldmap.shipped import demo_folder
 
 if TYPE_CHECKING:
@@ -221,7 +224,7 @@ class Reduction:
         if isinstance(source, fieldmap.Campaign):
             self.campaign = source
         else:
-            self.campaign = fieldmap.load(Path(source).expanduser(), tell=self._work)
+            self.campaign = load(Path(source).expanduser(), tell=self._work)
         self.axis = self.campaign.axis
         self.active = (True,) * len(self.campaign.passes)
 
@@ -229,7 +232,7 @@ class Reduction:
         place = _writable(folder)
         if self.fmap is None or self.results is None:
             raise InputError("save", "no results", "a map with results", "mend the campaign first")
-        self.saved = fieldmap.save_reduction(self._marked(self.fmap), self.results, place)
+        self.saved = save_reduction(self._marked(self.fmap), self.results, place)
 
     def _solve(self) -> None:
         self.fmap = self.results = None
@@ -251,7 +254,7 @@ class Reduction:
         assert self.campaign is not None
         chosen = replace(self.campaign, passes=self.passes)
         spacing = None if all(self.active) else self._spacing
-        fmap = fieldmap.stitch(chosen, knot_spacing=spacing, tell=self._work)
+        fmap = stitch(chosen, knot_spacing=spacing, tell=self._work)
         if spacing is None:
             self._spacing = float(fmap["knots"].values[..., 1].min())
         return fmap
@@ -268,7 +271,7 @@ class Reduction:
         assert self.axis is not None
         _check_order(self.axis)
         marked = self._marked(self.fmap)
-        self.results = fieldmap.evaluate(marked, self.campaign, axis=self.axis)
+        self.results = evaluate(marked, self.campaign, axis=self.axis)
 
     def _marked(self, fmap: xr.Dataset) -> xr.Dataset:
         """The map with the limits in use and a note of every departure from the campaign file."""
