@@ -6,7 +6,7 @@ from pathlib import Path
 
 from fieldmap.errors import FieldmapError
 
-__all__ = ["demo_folder", "notebook_folder"]
+__all__ = ["PACKAGE", "demo_folder", "notebook_folder"]
 
 PACKAGE = Path(__file__).resolve().parent
 

@@ -598,7 +598,7 @@ def test_a_very_short_pass_beside_a_good_one(mixed, base, time):
 
 def test_refuses_a_pass_of_one_instant_by_its_name(mixed):
     short = make_pass(np.zeros(3), np.zeros(3), np.zeros(3), probe=WIRE, name="tip")
-    with pytest.raises(FieldmapError, match="tip.*time"):
+    with pytest.raises(FieldmapError, match=r"tip.*time"):
         stitch(replace(mixed, passes=(*mixed.passes, short)), knot_spacing=KNOTS)
 
 

@@ -40,7 +40,7 @@ def test_ratio_to_plain_readers(big_table):
     ours = best_of(lambda: read_table(big_table))
     readers = {"pandas": lambda: pd.read_csv(big_table, skiprows=1)}
     if importlib.util.find_spec("polars"):
-        import polars as pl  # noqa: PLC0415 - only where it is installed
+        import polars as pl
 
         readers["polars"] = lambda: pl.read_csv(big_table, skip_rows=1)
     print(f"\n{ROWS} rows: {ours:.3f} s with hash, units and checks")

@@ -22,7 +22,8 @@ from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.magnet.reduction import save_reduction
 from fieldmap.readings.campaign import load
-from fieldmap.shipped import demo_folder
+from fieldmap.readings.passes import Campaign
+from fieldmap.shipped import PACKAGE, demo_folder
 
 if TYPE_CHECKING:
     import os
@@ -30,7 +31,7 @@ if TYPE_CHECKING:
     import xarray as xr
 
     from fieldmap.magnet.quantity import LineResults, Results
-    from fieldmap.readings.passes import Axis, Campaign, Pass
+    from fieldmap.readings.passes import Axis, Pass
 
 __all__ = ["Listener", "Reduction", "Topic"]
 
@@ -221,7 +222,7 @@ class Reduction:
             return what not in self._errors
 
     def _read(self, source: str | os.PathLike[str] | Campaign) -> None:
-        if isinstance(source, fieldmap.Campaign):
+        if isinstance(source, Campaign):
             self.campaign = source
         else:
             self.campaign = load(Path(source).expanduser(), tell=self._work)
@@ -347,7 +348,7 @@ def _writable(folder: str | os.PathLike[str]) -> Path:
         raise InputError("folder for the files", "nothing", "the name of a folder", "name one")
     place = Path(text).expanduser()
     whole = place.resolve()
-    for own in (demo_folder().resolve(), Path(fieldmap.__file__).resolve().parent):
+    for own in (demo_folder().resolve(), PACKAGE):
         if whole.is_relative_to(own):
             raise InputError(
                 str(place),
