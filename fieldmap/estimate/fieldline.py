@@ -35,6 +35,7 @@ class FieldLine:
 
     Examples
     --------
+    >>> from fieldmap.estimate.spline import UniformSpline
     >>> spline = UniformSpline.covering(-0.1, 0.1, 0.02)
     >>> n = spline.size
     >>> line = FieldLine(0, 0, -0.1, 0.1, spline, np.ones(n), 1e-6 * np.ones((n, n)))
