@@ -23,10 +23,7 @@ def field_readings(b, sigma, rng, count=90, extra=0):
     s = rng.uniform(SPLINE.start, SPLINE.stop, count)
     X = np.pad(SPLINE.field_rows(s), ((0, 0), (0, extra)))
     y = X[:, : SPLINE.size] @ b + rng.normal(size=count) * sigma
-    information = Information(
-        X.T @ X / sigma**2, X.T @ y / sigma**2, y @ y / sigma**2, count * np.log(sigma**2), count
-    )
-    return X, y, information
+    return X, y, Information(X.T @ X / sigma**2, X.T @ y / sigma**2)
 
 
 def test_precision_is_the_weighted_square_of_the_differences():

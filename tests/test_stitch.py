@@ -61,7 +61,7 @@ def results_of(campaign, knot_spacing=KNOTS, **more):
     return {key: line.results[key] for key in KEYS}
 
 
-def assert_same(got, expected, in_u=1e-4, relative=1e-7):
+def assert_same(got, expected, in_u=1e-5, relative=1e-8):
     """Values to a small part of their uncertainty, uncertainties to many digits."""
     for key in KEYS:
         assert abs(got[key].value - expected[key].value) < in_u * expected[key].u, key
@@ -86,7 +86,7 @@ def test_order_of_passes(mixed, base):
 def test_origin_of_time(mixed, base, origin):
     # a clock that counts seconds since 1970 keeps microseconds only
     moved = remade(mixed, lambda one: replace(one, time=one.time + origin))
-    assert_same(results_of(moved), base, in_u=1e-2 if origin > 1e6 else 1e-4, relative=1e-4)
+    assert_same(results_of(moved), base, in_u=1e-2 if origin > 1e6 else 1e-5, relative=1e-4)
 
 
 @pytest.mark.parametrize("constant", [1e-3, 10.0])
@@ -270,10 +270,10 @@ def test_position_scale_does_not_cancel_in_the_length():
 
 
 def test_an_offset_moves_centre_and_boundaries_together():
-    found = on_a_quiet_bench(Stage(u_offset=5e-5, u_position=1e-6))
+    found = on_a_quiet_bench(Stage(u_offset=5e-5))
     for key in ("boundary_in", "boundary_out", "magnetic_centre"):
-        assert found[key].u == pytest.approx(5e-5, rel=0.05)
-    assert found["magnetic_length"].u < 5e-6
+        assert found[key].u == pytest.approx(5e-5, rel=0.02)
+    assert found["magnetic_length"].u < 1e-6
 
 
 # --- truth is met -------------------------------------------------------------------------------

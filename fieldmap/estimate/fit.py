@@ -296,9 +296,6 @@ class _Solver:
         return Information(
             np.diag(np.concatenate([pad, precision])),
             np.concatenate([pad, precision * mean]),
-            float(precision @ mean**2),
-            0.0,
-            0,
         )
 
     def _improve_levels(self) -> None:

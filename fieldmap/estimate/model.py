@@ -72,7 +72,7 @@ class State:
 
 @dataclass(frozen=True, eq=False)
 class Information:
-    """Normal equations of some readings: matrix, right side, and the readings' own square.
+    """Normal equations of some readings: matrix and right side.
 
     Parameters
     ----------
@@ -80,28 +80,13 @@ class Information:
         AᵀC⁻¹A over the coefficients of B and the nuisances.
     right : (p,) array
         AᵀC⁻¹y.
-    square : float
-        yᵀC⁻¹y.
-    log_noise : float
-        log det C.
-    count : int
-        Number of readings (increments).
     """
 
     matrix: Floats
     right: Floats
-    square: float
-    log_noise: float
-    count: int
 
     def __add__(self, other: Information) -> Information:
-        return Information(
-            self.matrix + other.matrix,
-            self.right + other.right,
-            self.square + other.square,
-            self.log_noise + other.log_noise,
-            self.count + other.count,
-        )
+        return Information(self.matrix + other.matrix, self.right + other.right)
 
 
 @dataclass(frozen=True, eq=False)
@@ -223,13 +208,7 @@ def pass_information(rows: Rows, covariance: Tridiagonal) -> Information:
     block = product[:, :-1]
     matrix[np.ix_(used, used)] = 0.5 * (block + block.T)
     right[used] = product[:, -1]
-    return Information(
-        matrix,
-        right,
-        float(rows.target @ solved[:, -1]),
-        covariance.log_determinant(),
-        len(rows.target),
-    )
+    return Information(matrix, right)
 
 
 def reference_information(
@@ -260,13 +239,7 @@ def reference_information(
         design[i] = row
         target[i] += float(row[spline.size :] @ state.eta)
     white, goal = design / sd[:, None], target / sd
-    return Information(
-        white.T @ white,
-        white.T @ goal,
-        float(goal @ goal),
-        float(2 * np.log(sd).sum()),
-        len(references),
-    )
+    return Information(white.T @ white, white.T @ goal)
 
 
 def _reference_row(

@@ -31,6 +31,7 @@ if TYPE_CHECKING:
 
 RESULTS = ("integrated_field", "central_field", "magnetic_length")
 PROFILE_POINTS = 241
+FIRST_SEED = 100  # the scripts were written looking at the seeds below
 COVERED = 1.959964  # 95 % of a normal distribution
 
 
@@ -87,7 +88,7 @@ def run_one(job: tuple[str, int]) -> Outcome:
     return Outcome(kind, kit, plain, careful, tuple(profile.tolist()))
 
 
-def run(each: int, first_seed: int = 0, workers: int | None = None) -> list[Outcome]:
+def run(each: int, first_seed: int = FIRST_SEED, workers: int | None = None) -> list[Outcome]:
     """Run `each` campaigns of every kind on all cores, one thread a process."""
     os.environ["OMP_NUM_THREADS"] = "1"  # for the workers: they share the cores
     os.environ["OPENBLAS_NUM_THREADS"] = "1"
@@ -145,7 +146,7 @@ def main() -> None:
     """Command line of the study."""
     parser = argparse.ArgumentParser(description="Calibration study of the whole chain.")
     parser.add_argument("--each", type=int, default=100, help="campaigns of every kind")
-    parser.add_argument("--seed", type=int, default=0, help="first seed")
+    parser.add_argument("--seed", type=int, default=FIRST_SEED, help="first seed")
     chosen = parser.parse_args()
     print(table(run(chosen.each, chosen.seed)))
 
