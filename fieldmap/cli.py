@@ -108,7 +108,7 @@ def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...]]
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
 
-    with tqdm(delay=2, leave=False, dynamic_ncols=True, bar_format=BAR) as bar:
+    with tqdm(delay=2, leave=False, disable=None, dynamic_ncols=True, bar_format=BAR) as bar:
 
         def tell(step: str) -> None:
             bar.set_description(step, refresh=False)
