@@ -20,6 +20,7 @@ __all__ = ["Finding", "line_findings", "pass_findings"]
 Floats = npt.NDArray[np.float64]
 
 SHARE_WORTH_A_WORD = 0.75  # of the variance of the level
+LEAST_TOLD = 0.02  # of a prior variance: where the readings tell less, they contradict nothing
 RARE = 4.0  # standard deviations: about 1 clean pass in 30 000
 
 
@@ -131,6 +132,7 @@ def line_findings(fit: LineFit, low: float, high: float, stage: Stage, gap: floa
     found = [finding for one in fit.passes for finding in _noise(one)]
     found += [finding for one in fit.passes for finding in _sampling(one.one, gap)]
     found += _drift(fit, low, high)
+    found += _contradicted(fit)
     found += _trusted(fit)
     if fit.passes and stage.u_lag == 0 and stage.u_position == 0:
         found.append(
@@ -220,6 +222,30 @@ def _drift(fit: LineFit, low: float, high: float) -> list[Finding]:
             "drift; a dwell at each end, a pass back or an absolute reference would separate them.",
         )
     ]
+
+
+def _contradicted(fit: LineFit) -> list[Finding]:
+    """What the readings found of gains, drifts and positions, against what was stated."""
+    size = fit.spline.size
+    variances = np.diagonal(fit.covariance)[size:].tolist()
+    found = []
+    for unknown, value, variance in zip(
+        fit.unknowns, fit.values[size:].tolist(), variances, strict=True
+    ):
+        told = unknown.sd**2 - variance  # variance of how far the readings may move it
+        if told < LEAST_TOLD * unknown.sd**2:
+            continue
+        off = (value - unknown.mean) / np.sqrt(told)
+        if abs(off) > RARE:
+            unit = "" if unknown.unit == "1" else f" {unknown.unit}"
+            text = (
+                f"the readings ask for a {unknown.kind} of {value:.3g}{unit}, where "
+                f"{unknown.mean:.3g} with u = {unknown.sd:.2g}{unit} is stated: {abs(off):.1f} "
+                "times what chance allows; check the stated value, its unit, and the passes that "
+                "disagree."
+            )
+            found.append(Finding("stated-value-contradicted", "warn", unknown.where, text))
+    return found
 
 
 def _trusted(fit: LineFit) -> list[Finding]:

@@ -272,14 +272,17 @@ class _Solver:
     def _amplitude(self) -> Floats:
         """Change of the profile as recorded with each nuisance: a gain enlarges it.
 
-        Several gains count by their mean; what tells them apart the readings see.
+        Several gains count by their mean; what tells them apart the readings see. The scale of
+        the stage is a gain of wires.
         """
-        gains = [("gain", name) for name in {model.one.probe.name for model in self.models}]
-        known = [self.state.index("gain", name) for _, name in gains]
+        probes = {model.one.probe.name: model.one.probe for model in self.models}
         columns = np.zeros((self.spline.size, len(self.state.eta)))
-        for index in known:
-            if index is not None:
-                columns[:, index] = self.state.b / len(gains)
+        share = self.state.b / len(probes)
+        for name, probe in probes.items():
+            if (index := self.state.index("gain", name)) is not None:
+                columns[:, index] += share
+            if probe.senses_level and (index := self.state.index("scale")) is not None:
+                columns[:, index] += share
         return columns
 
     def _noise(self, model: PassModel) -> Tridiagonal:
