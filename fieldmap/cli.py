@@ -18,7 +18,7 @@ from fieldmap.shipped import demo_folder, notebook_folder
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
-    from fieldmap.magnet.quantity import Results
+    from fieldmap.magnet.results import Results
     from fieldmap.readings import Limit
 
 __all__ = ["main"]

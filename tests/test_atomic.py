@@ -9,7 +9,8 @@ import pytest
 
 from fieldmap.atomic import output_folder, replacing
 from fieldmap.errors import InputError
-from fieldmap.magnet.quantity import LineResults, Quantity, Results
+from fieldmap.magnet.quantity import Quantity
+from fieldmap.magnet.results import LineResults, Results
 from fieldmap.magnet.results_file import save_results
 
 RESULTS = Results(

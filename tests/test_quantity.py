@@ -7,7 +7,8 @@ from dataclasses import FrozenInstanceError
 import pytest
 
 from fieldmap.estimate.findings import Finding
-from fieldmap.magnet.quantity import LineResults, Quantity, Results
+from fieldmap.magnet.quantity import Quantity
+from fieldmap.magnet.results import LineResults, Results
 from fieldmap.magnet.verdict import Verdict
 
 LENGTH = Quantity(0.381, 5e-5, "m")

@@ -15,7 +15,7 @@ from fieldmap.estimate.map import (
     map_title,
 )
 from fieldmap.magnet.length import length_results
-from fieldmap.magnet.quantity import LineResults, Results
+from fieldmap.magnet.results import LineResults, Results
 from fieldmap.magnet.shape import shape_results
 from fieldmap.magnet.verdict import decide
 

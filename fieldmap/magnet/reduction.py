@@ -14,7 +14,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-    from fieldmap.magnet.quantity import Results
+    from fieldmap.magnet.results import Results
 
 __all__ = ["save_reduction"]
 

@@ -11,7 +11,7 @@ from fieldmap.atomic import replacing
 if TYPE_CHECKING:
     import os
 
-    from fieldmap.magnet.quantity import Results
+    from fieldmap.magnet.results import Results
 
 __all__ = ["save_results", "write_results"]
 

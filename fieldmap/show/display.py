@@ -12,7 +12,7 @@ from fieldmap.show.tables import summary_text
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
-    from fieldmap.magnet.quantity import Results
+    from fieldmap.magnet.results import Results
     from fieldmap.readings.passes import Limit
 
 __all__ = ["Shown", "summary"]
@@ -67,7 +67,7 @@ def summary(
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import Results
+    >>> from fieldmap.magnet.results import Results
     >>> summary(Results("Magnet 3", "", ())).text.splitlines()[0]
     'Magnet 3'
     """

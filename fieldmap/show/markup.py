@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
 
     from fieldmap.estimate.findings import Finding
-    from fieldmap.magnet.quantity import LineResults, Results
+    from fieldmap.magnet.results import LineResults, Results
     from fieldmap.readings.passes import Limit
     from fieldmap.show.rows import ResultRow
 
@@ -57,7 +57,8 @@ def results_html(
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import LineResults, Quantity, Results
+    >>> from fieldmap.magnet.quantity import Quantity
+    >>> from fieldmap.magnet.results import LineResults, Results
     >>> line = LineResults(0, 0, {"magnetic_length": Quantity(0.4000049, 8.4e-6, "m")})
     >>> "<td>400.005</td><td>0.017</td>" in results_html(Results("a < b", "", (line,)))
     True
@@ -107,7 +108,7 @@ def verdicts_html(results: Results, limits: Sequence[Limit] = ()) -> str:
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import Results
+    >>> from fieldmap.magnet.results import Results
     >>> verdicts_html(Results("Magnet 3", "", ()))
     '<p class="fm-remark">No limits are set, so nothing was decided.</p>'
     """

@@ -15,7 +15,8 @@ if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
 
     from fieldmap.estimate.findings import Finding
-    from fieldmap.magnet.quantity import LineResults, Quantity, Results
+    from fieldmap.magnet.quantity import Quantity
+    from fieldmap.magnet.results import LineResults, Results
     from fieldmap.magnet.verdict import Verdict
     from fieldmap.readings.passes import Limit
 

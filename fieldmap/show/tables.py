@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     from collections.abc import Iterable, Mapping, Sequence
 
     from fieldmap.estimate.findings import Finding
-    from fieldmap.magnet.quantity import LineResults, Results
+    from fieldmap.magnet.results import LineResults, Results
     from fieldmap.readings.passes import Limit
     from fieldmap.show.rows import ResultRow
 
@@ -68,7 +68,8 @@ def results_text(
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import LineResults, Quantity, Results
+    >>> from fieldmap.magnet.quantity import Quantity
+    >>> from fieldmap.magnet.results import LineResults, Results
     >>> line = LineResults(0, 0, {"magnetic_length": Quantity(0.4000049, 8.4e-6, "m")})
     >>> print(results_text(Results("Magnet 3", "", (line,))))
     Magnet 3
@@ -129,7 +130,7 @@ def verdicts_text(results: Results, limits: Sequence[Limit] = ()) -> str:
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import Results
+    >>> from fieldmap.magnet.results import Results
     >>> from fieldmap.magnet.verdict import Verdict
     >>> decided = Verdict("magnetic_length", 0, "accept", 0.99987)
     >>> print(verdicts_text(Results("Magnet 3", "", (), (), (decided,))))
@@ -162,7 +163,7 @@ def summary_text(
 
     Examples
     --------
-    >>> from fieldmap.magnet.quantity import Results
+    >>> from fieldmap.magnet.results import Results
     >>> print(summary_text(Results("Magnet 3", "", ())).splitlines()[-1])
     No findings.
     """

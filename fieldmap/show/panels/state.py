@@ -30,7 +30,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-    from fieldmap.magnet.quantity import LineResults, Results
+    from fieldmap.magnet.results import LineResults, Results
     from fieldmap.readings.passes import Axis, Pass
 
 __all__ = ["Listener", "Reduction", "Topic"]
