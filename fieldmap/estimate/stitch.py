@@ -241,20 +241,18 @@ def _refine(
     """Halve the knots until that moves no result by more than STILL times its uncertainty."""
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
-            return best, [_unsure(best, "was not tried: it would take too many knots")]
+            return best, [_unsure("halving the knots was not tried: there would be too many")]
         finer = fit(best.spline.spacing / 2, best)
         moved = _moved(best, finer, axis)
         if moved <= STILL:
             return best, []
         best = finer
-    return best, [_unsure(best, f"still moved a result by {moved:.2g} of its uncertainty")]
+    spacing = f"{best.spline.spacing * 1e3:.3g} mm"
+    return best, [_unsure(f"halving the knots to {spacing} still moved a result by {moved:.2g} u")]
 
 
-def _unsure(fit: LineFit, outcome: str) -> Finding:
-    text = (
-        f"halving the knot spacing to {fit.spline.spacing * 1e3:.3g} mm {outcome}; "
-        "check the gap in [magnet]: it sets the first spacing."
-    )
+def _unsure(outcome: str) -> Finding:
+    text = f"{outcome}; check the gap in [magnet], which sets the first knot spacing."
     return Finding("knots-not-settled", "warn", "[magnet] gap", text)
 
 
