@@ -59,6 +59,13 @@ def main(arguments: Sequence[str] | None = None) -> int:
         return INTERRUPTED
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
+    except Exception as error:  # noqa: BLE001 - a fault of the kit's own is one sentence, too
+        print(
+            f"fieldmap: found a fault of its own, {type(error).__name__}: {error}; "
+            "please report it with the campaign; nothing was replaced.",
+            file=sys.stderr,
+        )
+        return REFUSED
     return 0
 
 
