@@ -34,6 +34,7 @@ Floats = npt.NDArray[np.float64]
 
 STILL = 0.1  # halving the knots may move no result by more than this many u
 HALVINGS = 3
+WHITER = 0.85  # a mean square of residuals that falls below this share was misfit
 PROFILE_POINTS = 200
 
 
@@ -238,17 +239,26 @@ def _undetermined(passes: list[Pass]) -> RefusedError:
 def _refine(
     best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis
 ) -> tuple[LineFit, list[Finding]]:
-    """Halve the knots until that moves no result by more than STILL times its uncertainty."""
+    """Halve the knots until that moves no result by more than STILL times its uncertainty.
+
+    Residuals that halving makes whiter show knots too coarse for very quiet readings as well.
+    """
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
             return best, [_unsure("halving the knots was not tried: there would be too many")]
         finer = fit(best.spline.spacing / 2, best)
         moved = _moved(best, finer, axis)
-        if moved <= STILL:
+        if moved <= STILL and _misfit(finer) >= WHITER * _misfit(best):
             return best, []
         best = finer
     spacing = f"{best.spline.spacing * 1e3:.3g} mm"
     return best, [_unsure(f"halving the knots to {spacing} still moved a result by {moved:.2g} u")]
+
+
+def _misfit(fit: LineFit) -> float:
+    """Mean square of the whitened residuals over what is expected of them."""
+    square = sum(float(one.residual @ one.residual) for one in fit.passes)
+    return square / max(sum(one.freedom for one in fit.passes), 1.0)
 
 
 def _unsure(outcome: str) -> Finding:
