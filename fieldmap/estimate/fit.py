@@ -8,6 +8,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.frame import common_frame
 from fieldmap.estimate.model import (
     Information,
@@ -96,6 +97,12 @@ class LineFit:
     covariance: Floats
     roughness: Floats
     passes: list[PassFit]
+
+    def line(self, x: float, y: float, low: float, high: float) -> FieldLine:
+        """The field alone, as a line at (x, y) mapped from low to high (m)."""
+        n = self.spline.size
+        b, covariance = self.values[:n], self.covariance[:n, :n]
+        return FieldLine(x, y, low, high, self.spline, b, covariance)
 
     def coefficients_for(self, spline: UniformSpline) -> Floats:
         """Coefficients on other knots with nearly the same field: B at each one's middle."""

@@ -148,19 +148,11 @@ def _grid(lines: Sequence[MappedLine], step: float | None) -> Floats:
 
 
 def _on_grid(line: MappedLine, z: Floats) -> tuple[Floats, Floats]:
-    one = field_line(line)
+    one = line.fit.line(line.x, line.y, line.low, line.high)
     outside = (z < line.low - 1e-9) | (z > line.high + 1e-9)
     inside = np.where(outside, line.low, z)
     return np.where(outside, np.nan, one.field(inside)), np.where(
         outside, np.nan, one.u_field(inside)
-    )
-
-
-def field_line(line: MappedLine) -> FieldLine:
-    """The field of a line just fitted."""
-    fit, n = line.fit, line.fit.spline.size
-    return FieldLine(
-        line.x, line.y, line.low, line.high, fit.spline, fit.values[:n], fit.covariance[:n, :n]
     )
 
 

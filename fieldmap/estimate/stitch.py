@@ -275,16 +275,10 @@ def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:
     after, _ = _main_results(fine, axis)
     results = float(np.max(np.abs(after - before) / u))
     s = np.linspace(*axis.integrate, PROFILE_POINTS)
-    field, u_field = _profile(coarse, s)
-    profile = float(np.sqrt(np.mean(((_profile(fine, s)[0] - field) / u_field) ** 2)))
+    old, new = (fit.line(0.0, 0.0, *axis.integrate) for fit in (coarse, fine))
+    change = (new.field(s) - old.field(s)) / old.u_field(s)
+    profile = float(np.sqrt(np.mean(change**2)))
     return max(results, profile / 3)
-
-
-def _profile(fit: LineFit, s: Floats) -> tuple[Floats, Floats]:
-    size = fit.spline.size
-    rows = fit.spline.field_rows(s)
-    spread = np.einsum("ij,ij->i", rows @ fit.covariance[:size, :size], rows)
-    return rows @ fit.values[:size], np.sqrt(spread)
 
 
 def _main_results(fit: LineFit, axis: Axis) -> tuple[Floats, Floats]:
