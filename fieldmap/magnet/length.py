@@ -13,7 +13,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import InputError, RefusedError
-from fieldmap.magnet.quantity import Quantity
+from fieldmap.magnet.functional import Functional, functional
 
 if TYPE_CHECKING:
     from fieldmap.estimate.fieldline import FieldLine
@@ -26,7 +26,7 @@ Floats = npt.NDArray[np.float64]
 SMALLEST_LEVEL = 3.0  # a central field below this many u has no length
 
 
-def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
+def length_results(line: FieldLine, axis: Axis) -> dict[str, Functional]:
     """Results that are ratios of integrals.
 
     Parameters
@@ -38,7 +38,7 @@ def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
 
     Returns
     -------
-    dict of str to Quantity
+    dict of str to Functional
         ``integrated_field``, ``central_field``, ``magnetic_length``, ``boundary_in``,
         ``boundary_out``, ``magnetic_centre``; only the first two where the central field is
         not distinct from zero.
@@ -68,9 +68,9 @@ def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
     middle = 0.5 * (flat_start + flat_stop)
     whole = line.spline.integral_row(start, stop)
     level = line.spline.integral_row(flat_start, flat_stop) / (flat_stop - flat_start)
-    central = Quantity(float(level @ line.b), line.u(level), "T")
+    central = functional(line, float(level @ line.b), level, "T")
     results = {
-        "integrated_field": Quantity(float(whole @ line.b), line.u(whole), "T m"),
+        "integrated_field": functional(line, float(whole @ line.b), whole, "T m"),
         "central_field": central,
     }
     if abs(central.value) < SMALLEST_LEVEL * central.u:
@@ -84,11 +84,11 @@ def length_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
     return results
 
 
-def _ratio(line: FieldLine, above: Floats, below: Floats, offset: float = 0.0) -> Quantity:
+def _ratio(line: FieldLine, above: Floats, below: Floats, offset: float = 0.0) -> Functional:
     """Offset + (above @ b)/(below @ b) in m, to first order in the covariance."""
     level = float(below @ line.b)
     value = float(above @ line.b) / level
-    return Quantity(offset + value, line.u((above - value * below) / level), "m")
+    return functional(line, offset + value, (above - value * below) / level, "m")
 
 
 def _check_window(line: FieldLine, low: float, high: float, key: str) -> None:

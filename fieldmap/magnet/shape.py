@@ -6,12 +6,13 @@ So the spread is taken over profiles drawn from the covariance, with a generator
 
 from __future__ import annotations
 
+from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.magnet.quantity import Quantity
+from fieldmap.magnet.functional import Functional, functional
 
 if TYPE_CHECKING:
     from fieldmap.estimate.fieldline import FieldLine
@@ -24,10 +25,11 @@ Floats = npt.NDArray[np.float64]
 DRAWS = 400
 PER_KNOT = 4  # points at which the extremes are looked for
 SEED = 20_061  # the same map gives the same digits
+SEARCH = "search for the extreme,"
 IN_REACH = 8.0  # points that far (in u) below the peak cannot become it
 
 
-def shape_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
+def shape_results(line: FieldLine, axis: Axis) -> dict[str, Functional]:
     """Peak within the limits of the integral, homogeneity within the flat window.
 
     Parameters
@@ -39,7 +41,7 @@ def shape_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
 
     Returns
     -------
-    dict of str to Quantity
+    dict of str to Functional
         ``peak_field``, ``peak_position``, and ``homogeneity`` where the central field is not
         zero.
 
@@ -56,15 +58,10 @@ def shape_results(line: FieldLine, axis: Axis) -> dict[str, Quantity]:
     """
     s = _points(line, *axis.integrate)
     b = line.field(s)
-    near = _candidates(b, line.u_field(s))
-    found = _peak(s[near], b[near], _draws(line, s[near]))
+    found = _peak(line, s[_candidates(b, line.u_field(s))])
     flat = _points(line, *axis.flat)
-    level = float(line.field(flat).mean())
-    if level != 0:
-        drawn = _draws(line, flat)
-        value = _homogeneity(line.field(flat))
-        spread = _homogeneity(line.field(flat) + drawn)
-        found["homogeneity"] = Quantity(float(value), _rms(spread - value), "1")
+    if line.field(flat).mean() != 0:
+        found["homogeneity"] = _flatness(line, flat)
     return found
 
 
@@ -80,24 +77,77 @@ def _points(line: FieldLine, low: float, high: float) -> Floats:
     return np.linspace(low, high, count)
 
 
-def _draws(line: FieldLine, s: Floats) -> Floats:
-    """Deviations of the profile at s, one row a draw."""
+@dataclass(frozen=True, eq=False)
+class _Sample:
+    """Profiles drawn from the covariance of a line, at some points.
+
+    Parameters
+    ----------
+    line : FieldLine
+        The line.
+    rows : (n, size) array
+        Rows of the field at the points.
+    used : int array
+        Coefficients that bear on the points.
+    coefficients : (DRAWS, used) array
+        Drawn deviations of those.
+    """
+
+    line: FieldLine
+    rows: Floats
+    used: npt.NDArray[np.intp]
+    coefficients: Floats
+
+    @property
+    def deviations(self) -> Floats:
+        """Drawn deviations of the field, one row a draw."""
+        return np.asarray(self.coefficients @ self.rows[:, self.used].T)
+
+    def result(self, value: float, drawn: Floats, tangent: Floats, unit: str) -> Functional:
+        """A result from its drawn values: as much of it linear in the profile as they bear out.
+
+        The part of the spread along the tangent is regressed out and keeps its gradient; what
+        is left comes from the search for the extreme.
+        """
+        moved = drawn - value
+        along = self.coefficients @ tangent[self.used]
+        square = float(along @ along)
+        share = float(along @ moved) / square if square > 0 else 0.0
+        rest = _rms(moved - share * along)
+        return functional(self.line, value, share * tangent, unit, {f"{SEARCH} {unit}": rest})
+
+
+def _sample(line: FieldLine, s: Floats) -> _Sample:
     rows = line.spline.field_rows(s)
     used = np.flatnonzero(rows.any(axis=0))
     values, vectors = np.linalg.eigh(line.covariance[np.ix_(used, used)])
     root = vectors * np.sqrt(np.maximum(values, 0))
     normal = np.random.default_rng(SEED).standard_normal((DRAWS, len(used)))
-    return np.asarray(normal @ root.T @ rows[:, used].T)
+    return _Sample(line, rows, used, normal @ root.T)
 
 
-def _peak(s: Floats, b: Floats, deviations: Floats) -> dict[str, Quantity]:
+def _peak(line: FieldLine, s: Floats) -> dict[str, Functional]:
     """Largest |B| and its place, a parabola through the three highest points."""
+    b, sample = line.field(s), _sample(line, s)
     place, height = _summit(s, b)
-    drawn = np.array([_summit(s, b + deviation) for deviation in deviations])
+    drawn = np.array([_summit(s, b + deviation) for deviation in sample.deviations])
+    at = np.array([place])
+    slope, bend = line.spline.field_rows(at, 1)[0], float(line.field(at, 2)[0])
+    sideways = -slope / bend if bend != 0 else np.zeros_like(slope)
     return {
-        "peak_field": Quantity(height, _rms(drawn[:, 1] - height), "T"),
-        "peak_position": Quantity(place, _rms(drawn[:, 0] - place), "m"),
+        "peak_field": sample.result(height, drawn[:, 1], line.spline.field_rows(at)[0], "T"),
+        "peak_position": sample.result(place, drawn[:, 0], sideways, "m"),
     }
+
+
+def _flatness(line: FieldLine, s: Floats) -> Functional:
+    b, sample = line.field(s), _sample(line, s)
+    level = float(b.mean())
+    value = float(_homogeneity(b))
+    drawn = _homogeneity(b + sample.deviations)
+    spread = sample.rows[b.argmax()] - sample.rows[b.argmin()]
+    tangent = spread / (2 * abs(level)) - value / level * sample.rows.mean(axis=0)
+    return sample.result(value, drawn, tangent, "1")
 
 
 def _summit(s: Floats, b: Floats) -> tuple[float, float]:
