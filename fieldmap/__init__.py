@@ -12,9 +12,9 @@ from fieldmap.estimate.stitch import reconstruct, stitch
 from fieldmap.estimate.store import load_map, save_map
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.magnet.quantity import Quantity
-from fieldmap.magnet.reduction import save_reduction
 from fieldmap.magnet.results import Results
 from fieldmap.readings import Campaign, Pass, load, make_pass
+from fieldmap.show.handover import save_reduction
 from fieldmap.version import __version__
 
 __all__ = [

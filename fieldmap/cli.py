@@ -1,10 +1,11 @@
-"""The same verbs from a shell: demo, lab, reduce."""
+"""The same verbs from a shell: demo, lab, reduce, report, export."""
 
 from __future__ import annotations
 
 import argparse
 import json
 import os
+import re
 import shutil
 import sys
 from pathlib import Path
@@ -14,6 +15,7 @@ import fieldmap
 from fieldmap.atomic import output_folder
 from fieldmap.errors import FieldmapError, InputError
 from fieldmap.shipped import demo_folder, notebook_folder
+from fieldmap.units import si
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
@@ -88,10 +90,32 @@ def _parser() -> argparse.ArgumentParser:
     lab.add_argument("folder", nargs="?", default="fieldmap-demo", metavar="FOLDER")
     lab.set_defaults(run=_lab)
 
-    reduce = verbs.add_parser("reduce", help="reduce a campaign to map.nc and results.json")
+    reduce = verbs.add_parser("reduce", help="reduce a campaign to a map, results and a report")
     reduce.add_argument("campaign", metavar="CAMPAIGN", help="campaign.toml, or its folder")
     reduce.add_argument("--out", required=True, metavar="DIR", help="folder for the files")
     reduce.set_defaults(run=_reduce)
+
+    report = verbs.add_parser("report", help="write the report again, from the map alone")
+    report.add_argument("map", metavar="MAP", help="map.nc, or the folder that holds it")
+    report.add_argument("--out", required=True, metavar="DIR", help="folder for report.html")
+    report.set_defaults(run=_report)
+
+    export = verbs.add_parser("export", help="write a plain table of a map: CSV or NetCDF")
+    # "-300mm" is a position, not an option, with or without the blank before its unit
+    export._negative_number_matcher = re.compile(r"-\.?[0-9]")  # noqa: SLF001 no public way
+    export.add_argument("map", metavar="MAP", help="map.nc, or the folder that holds it")
+    export.add_argument("--out", required=True, metavar="FILE", help="a name in .csv or .nc")
+    export.add_argument("--step", metavar="STEP", help='as in "1 mm"; that of the map if left out')
+    export.add_argument("--from", dest="start", metavar="POSITION", help='as in "-300 mm"')
+    export.add_argument("--to", dest="stop", metavar="POSITION", help='as in "300 mm"')
+    export.add_argument("--line", type=int, default=0, metavar="INDEX", help="0 if left out")
+    export.add_argument(
+        "--off-axis",
+        metavar="DISTANCE",
+        help='adds the field there, as in "5 mm": from the axis of a solenoid or the median plane '
+        "of a dipole",
+    )
+    export.set_defaults(run=_export)
     return parser
 
 
@@ -104,14 +128,14 @@ def _reduce_campaign(source: Path, out: Path, truth: Path | None) -> None:
     from fieldmap.show.cautions import caution_text
     from fieldmap.show.tables import summary_text
 
-    results, limits = _with_progress(source, out)
+    results, limits, files = _with_progress(source, out)
     known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
     print(summary_text(results, limits, truth=known))
-    print(f"\nWritten: {out / 'map.nc'}, {out / 'results.json'}\n")
+    print(f"\nWritten: {', '.join(str(file) for file in files)}\n")
     print(caution_text())
 
 
-def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...]]:
+def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...], tuple[Path, ...]]:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
 
@@ -127,8 +151,44 @@ def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...]]
         bar.reset(total=STEPS_OF_A_SOLVE * len({(one.x, one.y) for one in campaign.passes}))
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
-        fieldmap.save_reduction(fmap, results, out)
-    return results, campaign.limits
+        files = fieldmap.save_reduction(fmap, results, out)
+    return results, campaign.limits, files
+
+
+def _report(chosen: argparse.Namespace) -> None:
+    from fieldmap.show.report import FILE_NAME, save_report
+
+    fmap = fieldmap.load_map(_map_file(chosen.map))
+    print(f"Written: {save_report(fmap, Path(chosen.out) / FILE_NAME)}")
+
+
+def _map_file(given: str) -> Path:
+    """The map, or that in a folder."""
+    path = Path(given)
+    return path / "map.nc" if path.is_dir() else path
+
+
+def _export(chosen: argparse.Namespace) -> None:
+    from fieldmap.magnet.export import export_table
+
+    source, out = _map_file(chosen.map), Path(chosen.out)
+    if out.exists() and source.exists() and out.samefile(source):
+        raise InputError(str(out), "the map itself", "another file", "give the table its own name")
+    table = export_table(
+        fieldmap.load_map(source),
+        out,
+        step=_length(chosen.step, "--step"),
+        limits=(_length(chosen.start, "--from"), _length(chosen.stop, "--to")),
+        line=chosen.line,
+        off_axis=_length(chosen.off_axis, "--off-axis"),
+    )
+    print("\n".join(f"{statement}." for statement in table.statements()))
+    print(f"\nWritten: {out}")
+
+
+def _length(text: str | None, option: str) -> float | None:
+    """A length given on the command line, m."""
+    return None if text is None else si(text, "m", option)
 
 
 def _demo(chosen: argparse.Namespace) -> None:

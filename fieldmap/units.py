@@ -54,6 +54,9 @@ _EXAMPLES: Final = {
     "T": "0.5 T",
     "T m": "0.2 T m",
     "A": "85 A",
+    "rad": "2 mrad",
+    "degC": "22 degC",
+    "1/K": "17e-6 1/K",
     "1": "20e-6",
 }
 
@@ -109,6 +112,9 @@ def si(value: object, unit: str, where: str) -> float:
     number, unit_text = float(match[1]), match[2]
     if not unit_text and unit != "1":
         raise InputError(where, f"{quoted(value)} without a unit", _expected(unit), "add the unit")
+    if unit == "degC":
+        scale, offset = _temperature(unit_text, where)
+        return scale * number + offset
     try:
         result = _scaled(number, _scale(unit_text or "1", unit))
     except UnitError as error:
@@ -313,7 +319,8 @@ def _scale(unit_text: str, unit: str) -> float:
     """Factor from `unit_text` to `unit`, or raise UnitError."""
     with _REGISTRY_LOCK:
         given, wanted = _product(unit_text), _product(unit)
-        if given.dimensionality != wanted.dimensionality or _has_angle(given):
+        angles = _has_angle(given), _has_angle(wanted)
+        if given.dimensionality != wanted.dimensionality or angles[0] != angles[1]:
             raise UnitError(f"which is not a unit of the dimension of {unit!r}")
         return float(given.to(wanted.units).magnitude)
 

@@ -110,8 +110,20 @@ def test_means_of_time_position_flux_and_current(motion):
     np.testing.assert_allclose(bins.time, in_bins(bins, one.time), rtol=1e-13)
     np.testing.assert_allclose(bins.position, in_bins(bins, one.position), rtol=0, atol=1e-15)
     np.testing.assert_allclose(np.diff(bins.flux), np.diff(in_bins(bins, one.flux)), atol=1e-12)
-    np.testing.assert_allclose(bins.current, in_bins(bins, current / 85), rtol=1e-14)
-    assert bin_pass(one, STEP).current is None
+    np.testing.assert_allclose(bins.strength, in_bins(bins, current / 85), rtol=1e-14)
+    assert bin_pass(one, STEP).strength is None
+
+
+def test_a_warm_probe_reads_more():
+    warm = 20 + 5 * np.random.default_rng(2).random(800)
+    probe = replace(WIRE, temperature_coefficient=2e-5, reference_temperature=22.0)
+    one = replace(scan(smooth_out(), temperature=warm), probe=probe)
+    bins = bin_pass(one, STEP)
+    np.testing.assert_allclose(bins.strength, in_bins(bins, 1 + 2e-5 * (warm - 22.0)), rtol=1e-14)
+    current = np.full(800, 86.0)
+    both = bin_pass(replace(one, current=current), STEP, nominal_current=85.0)
+    np.testing.assert_allclose(both.strength, bins.strength * 86 / 85, rtol=1e-14)
+    assert bin_pass(replace(one, probe=WIRE), STEP).strength is None
 
 
 def test_speed_is_that_of_the_motion():

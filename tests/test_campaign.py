@@ -1,6 +1,7 @@
 """Campaign files: the example of the design, every key, and one sentence for each mistake."""
 
 import hashlib
+import re
 from dataclasses import asdict
 
 import numpy as np
@@ -291,6 +292,33 @@ class TestOptions:
     def test_limits(self, bench, keys, limit):
         (made,) = bench(f"{SHORT}[[limits]]\n{keys}\n").limits
         assert (made.lower, made.upper) == limit
+
+    @pytest.mark.parametrize(
+        ("keys", "rule"),
+        [
+            ("", (None, 1.0)),
+            ("k = 3\nguard = 0.5", (3, 0.5)),
+            ("guard = 0", (None, 0)),
+        ],
+    )
+    @pytest.mark.parametrize("ends", ['upper = "1 T"', 'nominal = "1 T"\ntolerance = "1 mT"'])
+    def test_rule_of_a_limit(self, bench, keys, rule, ends):
+        (made,) = bench(f'{SHORT}[[limits]]\nresult = "central_field"\n{ends}\n{keys}\n').limits
+        assert (made.k, made.guard) == rule
+
+    @pytest.mark.parametrize(
+        ("keys", "words"),
+        [
+            ("k = 0", "key 'k': found 0, expected a value above zero"),
+            ("guard = -1", "key 'guard': found -1, expected zero or a value above it"),
+            ('guard = "1"', "key 'guard': found '1', expected a number"),
+            ("k = nan", "key 'k'"),
+        ],
+    )
+    def test_refuses_a_rule_that_is_none(self, bench, keys, words):
+        entry = f'[[limits]]\nresult = "central_field"\nupper = "1 T"\n{keys}\n'
+        with pytest.raises(InputError, match=re.escape(words)):
+            bench(SHORT + entry)
 
     def test_every_result_may_have_a_limit(self, bench):
         units = {"1": "1", "m": "mm", "T": "mT", "T m": "T m"}
@@ -609,6 +637,38 @@ VALUES = st.sampled_from(
 )  # fmt: skip
 
 
+def test_tails_known_otherwise(bench):
+    tails = 'tail_in = "12 uT m"\nu_tail_in = "1 uT m"\ntail_out = "0 T m"\nu_tail_out = "0 T m"\n'
+    axis = bench(SHORT.replace("[probes.wire]", tails + "[probes.wire]")).axis
+    assert axis == Axis("z", (-0.6, 0.6), (-0.05, 0.05), 12e-6, 1e-6, 0.0, 0.0)
+    assert bench(SHORT).axis == Axis("z", (-0.6, 0.6), (-0.05, 0.05))
+
+
+@pytest.mark.parametrize(
+    ("line", "expected"),
+    [
+        (
+            'tail_in = "12 uT m"',
+            (
+                "campaign.toml, [axis]: found 'tail_in' alone, expected 'tail_in' and 'u_tail_in' "
+                "together; add the other one."
+            ),
+        ),
+        (
+            'u_tail_out = "1 uT m"',
+            (
+                "campaign.toml, [axis]: found 'u_tail_out' alone, expected 'tail_out' and "
+                "'u_tail_out' together; add the other one."
+            ),
+        ),
+        ('tail_in = "12 uT"', "key 'tail_in': found '12 uT'"),
+        ('u_tail_in = "-1 uT m"', "key 'u_tail_in': found '-1 uT m', expected zero or a value"),
+    ],
+)
+def test_a_tail_comes_with_its_uncertainty(bench, line, expected):
+    assert expected in sentence(bench, SHORT.replace("[probes.wire]", line + "\n[probes.wire]"))
+
+
 @settings(
     deadline=None,
     max_examples=150,
@@ -627,5 +687,33 @@ def test_any_line_exchanged_is_a_campaign_or_one_sentence(bench, line, key, valu
         numbers = [value for value in asdict(campaign.magnet).values() if isinstance(value, float)]
         assert np.isfinite(numbers).all()
         assert all(isinstance(limit, Limit) for limit in campaign.limits)
-    assert message.startswith(("campaign.toml", "pass_01.csv", "x: ", "1: ", "1 m: ", "-1 mm: "))
+    named = str(value).strip('"')  # a file that is not there is named as it was written
+    assert message.startswith(("campaign.toml", "pass_01.csv", f"{named}: "))
     assert "\n" not in message
+
+
+def test_what_moves_the_gain_and_the_window_of_a_probe(tmp_path):
+    extra = (
+        'window = "10 mm"\nu_window = "0.05 mm"\nu_tilt = "3 mrad"\n'
+        'temperature_coefficient = "17e-6 1/K"\nreference_temperature = "295.15 K"\n'
+        'u_temperature = "500 mK"'
+    )
+    (tmp_path / "campaign.toml").write_text(
+        EXAMPLE.replace('window = "10 mm"', extra), encoding="utf-8"
+    )
+    (tmp_path / "pass_01.csv").write_text(TABLE, encoding="utf-8")
+    campaign = load(tmp_path / "campaign.toml")
+    (coil,) = {one.probe for one in campaign.references if isinstance(one, FlipReference)}
+    found = (coil.u_window, coil.u_tilt, coil.temperature_coefficient, coil.u_temperature)
+    assert found == pytest.approx((5e-5, 3e-3, 17e-6, 0.5))
+    assert coil.reference_temperature == pytest.approx(22.0)
+
+
+def test_a_temperature_without_a_unit_is_one_sentence(tmp_path):
+    extra = 'window = "10 mm"\nreference_temperature = "22 mm"'
+    (tmp_path / "campaign.toml").write_text(
+        EXAMPLE.replace('window = "10 mm"', extra), encoding="utf-8"
+    )
+    (tmp_path / "pass_01.csv").write_text(TABLE, encoding="utf-8")
+    with pytest.raises(InputError, match=r"reference_temperature.*'mm'.*'degC' or 'K'"):
+        load(tmp_path / "campaign.toml")

@@ -65,6 +65,29 @@ def test_zero_that_says_something_is_written():
     assert set(section["main"]) == {"kind", "read_noise", "walk_noise", "u_drift"}
 
 
+def test_what_moves_the_gain_of_a_probe():
+    warm = replace(
+        WIRE,
+        u_tilt=2e-3,
+        temperature_coefficient=1.7e-5,
+        reference_temperature=0.0,
+        u_temperature=0.5,
+    )
+    section = parsed(replace(PLAN, planned=(replace(OUT, probe=warm),)))["probes"]["wire"]
+    assert section["u_tilt"] == "2 mrad"
+    assert section["temperature_coefficient"] == "0.000017 1/K"
+    assert section["reference_temperature"] == "0 degC"
+    assert section["u_temperature"] == "0.5 K"
+
+
+def test_tails_known_otherwise_are_written_even_if_zero():
+    axis = replace(PLAN.axis, tail_in=0.0, u_tail_in=0.0, tail_out=-2e-5, u_tail_out=1e-6)
+    section = parsed(replace(PLAN, axis=axis))["axis"]
+    assert section["tail_in"] == section["u_tail_in"] == "0 T m"
+    assert section["tail_out"] == "-0.00002 T m"
+    assert section["u_tail_out"] == "0.000001 T m"
+
+
 def test_integrators_are_named_where_there_are_several():
     second = replace(OUT, integrator=Integrator("second"))
     passes = parsed(replace(PLAN, planned=(OUT, second)))["passes"]
@@ -103,6 +126,12 @@ def test_every_result_can_be_limited(result):
     assert set(limit) == {"result", "lower"}
 
 
+def test_the_rule_of_a_limit_is_told_where_it_is_a_special_one():
+    limit = Limit("central_field", None, 1.0, k=3.0, guard=0.0)
+    (written,) = parsed(replace(PLAN, limits=(limit,)))["limits"]
+    assert (written["k"], written["guard"]) == (3.0, 0.0)
+
+
 def test_layout_is_told():
     layout = TableLayout(
         delimiter=";",
@@ -129,8 +158,10 @@ def test_layout_is_told():
 def test_no_field_of_a_record_is_forgotten():
     # a new field of a record needs a new line in the writer
     handled = {
-        Wire: {entry.field for entry in module._WIRE} | {"name", "turns", "polarity"},
-        Coil: {entry.field for entry in module._COIL} | {"name", "shape", "polarity"},
+        Wire: {entry.field for entry in module._WIRE + module._WARM}
+        | {"name", "turns", "polarity"},
+        Coil: {entry.field for entry in module._COIL + module._WARM}
+        | {"name", "shape", "polarity"},
         Integrator: {entry.field for entry in module._INTEGRATOR} | {"name", "kind"},
         Stage: {entry.field for entry in module._STAGE} | {"u_scale"},
         PlannedPass: {entry.field for entry in module._PLANNED + module._LINE}
@@ -139,8 +170,8 @@ def test_no_field_of_a_record_is_forgotten():
         ZeroReference: {entry.field for entry in module._ZERO} | {"x", "y"},
         FlipReference: {entry.field for entry in module._FLIP} | {"probe", "x", "y"},
         Magnet: {"kind", "component", "gap", "iron_length", "current"},
-        Axis: {"travel", "integrate", "flat"},
-        Limit: {"result", "lower", "upper"},
+        Axis: {entry.field for entry in module._AXIS} | {"travel", "integrate", "flat"},
+        Limit: {"result", "lower", "upper", "k", "guard"},
         TableLayout: {
             *("delimiter", "decimal", "skip_lines", "header", "rate", "per_count", "columns"),
         },

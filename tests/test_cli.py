@@ -33,7 +33,7 @@ def test_reduce_prints_and_writes_the_same_results(campaign, tmp_path, capsys):
     said = capsys.readouterr().out
     assert "Magnetic length" in said
     assert "pacemakers" in said
-    assert sorted(file.name for file in out.iterdir()) == ["map.nc", "results.json"]
+    assert sorted(file.name for file in out.iterdir()) == ["map.nc", "report.html", "results.json"]
     written = json.loads((out / "results.json").read_text(encoding="utf-8"))
     assert written["format"] == "fieldmap-results/1"
     assert written == fieldmap.evaluate(fieldmap.load_map(out / "map.nc")).as_dict()

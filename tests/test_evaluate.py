@@ -5,12 +5,14 @@ from __future__ import annotations
 import json
 from dataclasses import replace
 
+import numpy as np
 import pytest
 
+from fieldmap.bench.sources import Solenoid, Uniform
 from fieldmap.errors import FieldmapError, InputError, RefusedError
 from fieldmap.estimate import stitch
 from fieldmap.magnet import evaluate
-from fieldmap.readings import Axis, Limit
+from fieldmap.readings import Axis, Limit, Magnet
 from fieldmap.readings.sections import RESULT_UNITS
 from tests.shop import AXIS, DIPOLE, MAGNET, measured, out_and_back, truth
 
@@ -90,9 +92,37 @@ def test_refuses_limits_that_enclose_nothing(campaign, fmap, axis):
 
 
 def test_refuses_a_limit_on_what_the_map_does_not_give(campaign, fmap):
-    other = replace(campaign, limits=(Limit("tail_in", None, 1e-6),))
-    with pytest.raises(InputError, match="tail_in"):
+    other = replace(campaign, limits=(Limit("sextupole", None, 1e-6),))
+    with pytest.raises(InputError, match="sextupole"):
         evaluate(fmap, other)
+
+
+def test_the_reason_why_a_result_is_withheld_is_told(fmap, campaign):
+    tail = Axis("z", (-0.39, 0.39), (0.35, 0.39))  # no central field there, hence no length
+    limited = replace(campaign, limits=(Limit("magnetic_length", 0.299, 0.301),))
+    words = "magnetic_length', which is withheld here .the mean field in the flat window is not"
+    with pytest.raises(InputError, match=words):
+        evaluate(fmap, limited, axis=tail)
+
+
+def test_every_result_given_can_be_judged(campaign, fmap):
+    given = evaluate(fmap, campaign, fringe=False).lines[0].results
+    assert {"integrated_field_total", "tail_in", "fringe_integral_out"} <= set(given)
+    wide = tuple(Limit(key, q.value - 3 * q.u, q.value + 3 * q.u) for key, q in given.items())
+    verdicts = evaluate(fmap, replace(campaign, limits=wide), fringe=False).verdicts
+    assert [(one.result, one.decision) for one in verdicts] == [(key, "accept") for key in given]
+    assert [one.probability for one in verdicts] == pytest.approx([0.9973] * len(given), abs=1e-4)
+
+
+def test_a_limit_of_its_own_rule(campaign, fmap):
+    length = evaluate(fmap, campaign)["magnetic_length"]
+    lower = length.value - 2.5 * length.u
+    rules = {(2.0, 1.0): "accept", (3.0, 1.0): "undecided", (3.0, 0.8): "accept"}
+    for (k, guard), decision in rules.items():
+        limit = Limit("magnetic_length", lower, None, k=k, guard=guard)
+        judged = evaluate(fmap, replace(campaign, limits=(limit,)), k=1.0)
+        assert judged.verdicts[0].decision == decision
+        assert judged.verdicts[0].band == pytest.approx(guard * k * length.u)
 
 
 def test_a_length_far_from_iron_plus_gap_is_remarked(campaign):
@@ -112,6 +142,76 @@ def test_no_central_field_is_remarked(campaign, fmap):
     results = evaluate(fmap, replace(campaign, limits=()), axis=tail)
     assert "magnetic_length" not in results.lines[0].results
     assert "no-central-field" in {one.code for one in results.findings}
+
+
+@pytest.fixture(scope="module")
+def leaking():
+    """A magnet in a background field, whose integral has no end."""
+    return measured(out_and_back(), source=DIPOLE + Uniform(2e-3))
+
+
+def test_tails_and_total_of_a_magnet_whose_field_ends(campaign, fmap):
+    results = evaluate(fmap, campaign)
+    for key in ("tail_in", "tail_out"):
+        assert abs(results[key].value) < 2 * results[key].u  # 10 decay lengths outside
+    total = results["integrated_field_total"]
+    assert abs(total.value - DIPOLE.total) < 3 * total.u
+    assert total.u > results["integrated_field"].u
+    assert list(results.lines[0].results)[-5:] == [
+        "tail_in",
+        "tail_out",
+        "integrated_field_total",
+        "fringe_integral_in",
+        "fringe_integral_out",
+    ]
+    # tanh with lam = g/pi: lam/2g
+    for side in ("in", "out"):
+        fringe = results[f"fringe_integral_{side}"]
+        assert abs(fringe.value - 1 / (2 * np.pi)) < 3 * fringe.u
+    assert not {one.code for one in results.findings} & {"tail-cut-off", "tail-not-converging"}
+
+
+def test_ends_without_a_tail_are_remarked(leaking):
+    results = evaluate(stitch(leaking, knot_spacing=0.01))
+    assert "integrated_field" in results.lines[0].results
+    assert not {"tail_in", "tail_out", "integrated_field_total"} & set(results.lines[0].results)
+    found = [one for one in results.findings if one.code == "tail-not-converging"]
+    assert [one.severity for one in found] == ["warn", "warn"]
+    assert "0.40% of the central field" in found[0].text
+
+
+def test_a_limit_on_a_total_that_is_withheld_says_why(leaking):
+    limited = replace(leaking, limits=(Limit("integrated_field_total", 0.1, 0.2),))
+    with pytest.raises(InputError, match="cannot be estimated: tail_in and integrated_field_total"):
+        evaluate(stitch(leaking, knot_spacing=0.01), limited)
+
+
+def test_tails_known_otherwise_go_with_the_map(leaking):
+    known = replace(AXIS, tail_in=1e-5, u_tail_in=1e-6, tail_out=2e-5, u_tail_out=0.0)
+    campaign = replace(leaking, axis=known)
+    fmap = stitch(campaign, knot_spacing=0.01)
+    results = evaluate(fmap)
+    assert results.lines[0].results == evaluate(fmap, campaign).lines[0].results
+    total = results["integrated_field"].value + 3e-5
+    assert results["integrated_field_total"].value == pytest.approx(total, rel=1e-12)
+    assert "tail-not-converging" not in {one.code for one in results.findings}
+
+
+def test_a_tail_cut_off_is_remarked_by_what_the_limits_ask():
+    solenoid = Solenoid(0.05, 0.2, turns=100, current=500.0)
+    axis = Axis("z", (-0.39, 0.39), (-0.01, 0.01))
+    magnet = Magnet("solenoid", "Bz", gap=0.1)
+    campaign = measured(out_and_back(), source=solenoid, axis=axis, magnet=magnet)
+    fmap = stitch(campaign, knot_spacing=0.01)
+
+    def severities(*limits):
+        found = evaluate(fmap, replace(campaign, limits=limits)).findings
+        return [one.severity for one in found if one.code == "tail-cut-off"]
+
+    length = evaluate(fmap, campaign)["magnetic_length"].value
+    assert severities() == ["note", "note"]
+    assert severities(Limit("magnetic_length", length - 1e-4, length + 1e-4)) == ["warn", "warn"]
+    assert severities(Limit("magnetic_length", length - 0.1, length + 0.1)) == []
 
 
 def test_results_as_json(campaign, fmap):

@@ -3,12 +3,14 @@
 from __future__ import annotations
 
 import json
-from dataclasses import replace
+from dataclasses import asdict, replace
 
 import numpy as np
 import pytest
+from scipy import sparse
 
 from fieldmap.errors import InputError
+from fieldmap.estimate.evidence import Evidence
 from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.fit import LineFit, PassFit
 from fieldmap.estimate.map import (
@@ -23,6 +25,7 @@ from fieldmap.estimate.map import (
     map_magnet,
     map_passes,
 )
+from fieldmap.estimate.noise import Tridiagonal
 from fieldmap.estimate.parameters import Nuisance
 from fieldmap.estimate.spline import UniformSpline
 from fieldmap.estimate.variance import NoiseLevel
@@ -40,6 +43,27 @@ CAMPAIGN = Campaign(
 LEVEL = NoiseLevel(2e-7, 5e-8, walk_known=True, read_known=False)
 UNKNOWNS = [Nuisance("drift", "p.csv", 0.0, 1e-6), Nuisance("gain", "wire", 0.0, 4e-4)]
 REMARK = Finding("residuals-too-large", "warn", "p.csv", "a sentence.")
+
+
+def evidence(size, count=2):
+    """Two increments that see the first three unknowns and the gain, and one reference."""
+    rows = np.zeros((count, size + 2))
+    rows[:, :3], rows[:, -1] = [1.0, 2.0, 3.0], 0.5
+    one = np.ones(count)
+    return Evidence(
+        design=sparse.csr_array(rows),
+        target=np.arange(1.0, count + 1),
+        owner=np.zeros(count, dtype=int),
+        noise={cause: Tridiagonal(2 * one, -one[:-1]) for cause in ("walk", "read", "jitter")},
+        references=np.ones((1, size + 2)),
+        reference_target=np.array([4.0]),
+        prior=np.array([0.0, 0.0]),
+        frame=np.zeros((size, 2)),
+        shift=np.zeros((2, 2)),
+        roughness=np.ones(size - 3),
+        smooth_effect=np.zeros((size - 3, 2)),
+        smooth_origin=np.zeros(size - 3),
+    )
 
 
 def line(x=0.0, y=0.0, low=0.0, high=0.02, level=1.0, u=1e-3, spacing=0.01):
@@ -60,6 +84,7 @@ def line(x=0.0, y=0.0, low=0.0, high=0.02, level=1.0, u=1e-3, spacing=0.01):
         covariance=covariance,
         roughness=np.ones(n - 3),
         passes=[fitted],
+        evidence=evidence(n),
     )
     return MappedLine(x, y, low, high, fit, (REMARK,))
 
@@ -117,7 +142,11 @@ def test_attributes_of_the_whole():
     assert attrs["Conventions"] == "CF-1.11"
     assert attrs["format"] == FORMAT
     assert attrs["title"] == "Field map: by hand"
-    assert json.loads(attrs["campaign"]) == {
+    campaign = json.loads(attrs["campaign"])
+    assert campaign.pop("limits") == [asdict(CAMPAIGN.limits[0])]
+    axis = campaign.pop("axis")
+    assert (axis["travel"], axis["integrate"], axis["flat"]) == ("z", [0.0, 0.02], [0.005, 0.015])
+    assert campaign == {
         "name": "by hand",
         "sha256": "c0ffee",
         "magnet": {
@@ -127,7 +156,6 @@ def test_attributes_of_the_whole():
             "iron_length": 0.27,
             "current": 85.0,
         },
-        "axis": {"travel": "z", "integrate": [0.0, 0.02], "flat": [0.005, 0.015]},
         "stage": {
             "u_scale": 2e-5,
             "u_position": 0.0,
@@ -135,7 +163,9 @@ def test_attributes_of_the_whole():
             "u_lag": 0.0,
             "u_backlash": 0.0,
         },
-        "limits": [{"result": "integrated_field", "lower": 0.01, "upper": None}],
+        "probes": [],
+        "integrators": [],
+        "references": [],
     }
     (kept,) = map_passes(fmap)
     assert kept["name"] == "p.csv"

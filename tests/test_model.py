@@ -14,7 +14,9 @@ from fieldmap.estimate.model import (
     State,
     pass_information,
     reference_information,
+    reference_rows,
 )
+from fieldmap.estimate.noise import total
 from fieldmap.estimate.parameters import Nuisance
 from fieldmap.estimate.response import response
 from fieldmap.estimate.spline import UniformSpline
@@ -124,6 +126,35 @@ def test_columns_of_the_nuisances(probe, name, step, tolerance):
 
 
 @every_probe
+@pytest.mark.parametrize("kind", ["tilt", "temperature"])
+def test_tilt_and_temperature_are_gains(probe, kind):
+    unknowns = [Nuisance("gain", probe.name, 0.0, 1e-3), Nuisance(kind, probe.name, 0.0, 1e-4)]
+    state = State(B, np.array([1e-3, 2e-4]), unknowns)
+    design = PassModel(scan(probe), SPLINE).rows(state, FRAME).design.toarray()
+    assert design[:, SPLINE.size].any()
+    np.testing.assert_array_equal(design[:, SPLINE.size], design[:, SPLINE.size + 1])
+    plain = PassModel(scan(probe), SPLINE).rows(ZERO, FRAME).design.toarray()
+    np.testing.assert_allclose(design[:, 30], 1.0012 * plain[:, 30], rtol=1e-12)
+
+
+@pytest.mark.parametrize("probe", [RECT, ROUND], ids=lambda p: p.name)
+def test_the_column_of_a_window_is_that_of_a_longer_coil(probe):
+    loose = replace(probe, u_window=1e-4)
+    unknowns = [Nuisance("window", probe.name, 0.0, 0.01)]
+    state = State(B, np.array([0.0]), unknowns)
+    model = PassModel(scan(loose), SPLINE)
+    column = model.rows(state, FRAME).design.toarray()[:, SPLINE.size]
+    longer, shorter = (replace(probe, window=probe.window * (1 + by)) for by in (1e-4, -1e-4))
+    expected = steps(model, linked(longer, ZERO, MOTION) - linked(shorter, ZERO, MOTION)) / 2e-4
+    np.testing.assert_allclose(column, expected, rtol=0, atol=2e-5 * np.abs(expected).max())
+    flip = FlipReference(loose, 0.02, 0.3, 2e-6)
+    row, _ = one_row(flip, state)
+    place = np.array([0.02])
+    moved = linked(longer, ZERO, place) - linked(shorter, ZERO, place)
+    assert row[SPLINE.size] == pytest.approx(2 * float(moved[0]) / 2e-4, rel=1e-4)
+
+
+@every_probe
 def test_other_probes_gains_have_no_column(probe):
     design = PassModel(scan(probe), SPLINE).rows(ZERO, FRAME).design.toarray()
     for other in PROBES:
@@ -187,8 +218,8 @@ def test_current_scales_what_was_read(probe):
 
 def test_jitter_is_seen_through_the_slope():
     model = PassModel(scan(WIRE), SPLINE)
-    quiet = model.covariance(ZERO, 2e-7, 5e-8, 0.0)
-    loud = model.covariance(ZERO, 2e-7, 5e-8, 1e-5)
+    quiet = total(model.noise(ZERO, 2e-7, 5e-8, 0.0))
+    loud = total(model.noise(ZERO, 2e-7, 5e-8, 1e-5))
     swing = WIRE.gain * SPLINE.field_rows(model.bins.position) @ B  # dΦ/ds of a wire
     extra = (swing * 1e-5) ** 2 / model.bins.count
     np.testing.assert_allclose(loud.diagonal - quiet.diagonal, extra[1:] + extra[:-1], rtol=2e-3)
@@ -197,7 +228,7 @@ def test_jitter_is_seen_through_the_slope():
 
 def test_information_of_a_pass_is_that_of_dense_least_squares():
     model = PassModel(scan(WIRE), SPLINE)
-    rows, noise = model.rows(ZERO, FRAME), model.covariance(ZERO, 2e-7, 5e-8, 5e-6)
+    rows, noise = model.rows(ZERO, FRAME), total(model.noise(ZERO, 2e-7, 5e-8, 5e-6))
     found = pass_information(rows, noise)
     C = np.diag(noise.diagonal) + np.diag(noise.off, 1) + np.diag(noise.off, -1)
     A, weight = rows.design.toarray(), np.linalg.inv(C)
@@ -209,7 +240,7 @@ def test_information_of_a_pass_is_that_of_dense_least_squares():
 
 def test_information_adds_up():
     model = PassModel(scan(WIRE), SPLINE)
-    one = pass_information(model.rows(ZERO, FRAME), model.covariance(ZERO, 2e-7, 5e-8, 0.0))
+    one = pass_information(model.rows(ZERO, FRAME), total(model.noise(ZERO, 2e-7, 5e-8, 0.0)))
     both = one + one
     np.testing.assert_array_equal(both.matrix, 2 * one.matrix)
     np.testing.assert_array_equal(both.right, 2 * one.right)
@@ -217,7 +248,7 @@ def test_information_adds_up():
 
 def one_row(reference, state=ZERO):
     """Row and target of one reference, from its information."""
-    found = reference_information([reference], SPLINE, state, FRAME)
+    found = reference_information(reference_rows([reference], SPLINE, state, FRAME))
     u = reference.u if isinstance(reference, PointReference) else reference.u_flux_change
     middle = int(np.argmax(np.diagonal(found.matrix)[: SPLINE.size]))  # its entry is positive
     row = found.matrix[:, middle] * u / np.sqrt(found.matrix[middle, middle])
@@ -236,7 +267,9 @@ def test_row_of_a_point_reference():
 
 
 def test_row_of_a_zero_reference_is_the_mean_over_its_stretch():
-    found = reference_information([ZeroReference(0.09, 0.12, 5e-6)], SPLINE, ZERO, FRAME)
+    found = reference_information(
+        reference_rows([ZeroReference(0.09, 0.12, 5e-6)], SPLINE, ZERO, FRAME)
+    )
     row = np.zeros(len(found.right))
     row[: SPLINE.size] = SPLINE.integral_row(0.09, 0.12) / 0.03
     np.testing.assert_allclose(found.matrix, np.outer(row, row) / 5e-6**2, rtol=1e-9, atol=1e-3)

@@ -36,6 +36,36 @@ def test_a_drift_for_each_pass_a_gain_for_each_probe_and_the_stage():
     ]
 
 
+def test_tilt_temperature_and_window_belong_to_the_probe():
+    coil = replace(
+        COIL, u_window=1e-4, u_tilt=1e-2, temperature_coefficient=-2e-5, u_temperature=0.5
+    )
+    certain = Integrator("main", u_drift=0.0)
+    found = described([scan("a", coil, certain)], [coil], Stage())
+    assert [one[:2] for one in found] == [
+        ("gain", "coil"),
+        ("tilt", "coil"),
+        ("temperature", "coil"),
+        ("window", "coil"),
+    ]
+    means, sds = [one[2] for one in found], [one[3] for one in found]
+    assert means == pytest.approx([0.0, -0.5e-4, 0.0, 0.0])
+    assert sds == pytest.approx([2e-4, 1e-4 / np.sqrt(2), 1e-5, 1e-2])
+
+
+def test_the_cosine_of_a_small_normal_angle_has_these_moments():
+    # moments of cos t - 1 over t normal, by numerical integration
+    u = 0.02
+    t = np.linspace(-8 * u, 8 * u, 20001)
+    weight = np.exp(-(t**2) / (2 * u**2))
+    weight /= weight.sum()
+    mean = weight @ (np.cos(t) - 1)
+    sd = np.sqrt(weight @ (np.cos(t) - 1 - mean) ** 2)
+    wire = replace(WIRE, u_active_length=0.0, u_tilt=u)
+    (one,) = nuisances([], [wire], Stage())
+    assert (one.mean, one.sd) == pytest.approx((mean, sd), rel=1e-3)
+
+
 def test_what_is_certain_is_no_unknown():
     certain = Integrator("main", u_drift=0.0)
     assert described([scan("a", integrator=certain)], [Wire("w", 1, 0.1)], Stage()) == []

@@ -185,6 +185,35 @@ def test_probability_is_never_certainty(decision, probability, words):
     )
 
 
+@pytest.mark.parametrize(
+    ("rule", "band", "words"),
+    [
+        ({}, 1e-4, "50 %, accepted 380.60 to 381.40 mm; the interval crosses a limit."),
+        (
+            {"guard": 0.5, "k": 3.0},
+            1.5e-4,
+            "accepted 380.65 to 381.35 mm (guard band 0.5·U, k = 3); the value is in a guard band.",
+        ),
+        (
+            {"guard": 2.0},
+            9e-4,
+            "50 %, the guard bands leave nothing to accept (guard band 2·U); the value is in",
+        ),
+    ],
+)
+def test_verdicts_tell_what_is_accepted(rule, band, words):
+    results = one_line(verdicts=(Verdict("magnetic_length", 0, "undecided", 0.5, band),))
+    limits = [Limit("magnetic_length", 0.3805, 0.3815, **rule)]
+    assert words in " ".join(verdicts_text(results, limits).split())
+    assert words in verdicts_html(results, limits)
+
+
+def test_one_sided_limits_tell_what_is_accepted():
+    results = one_line(verdicts=(Verdict("magnetic_length", 0, "accept", 0.999, 1e-4),))
+    limits = [Limit("magnetic_length", None, 0.3815)]
+    assert ", accepted at most 381.40 mm." in verdicts_html(results, limits)
+
+
 def test_no_limits_no_verdict():
     assert verdicts_text(one_line()) == "No limits are set, so nothing was decided."
 

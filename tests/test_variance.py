@@ -12,6 +12,7 @@ from fieldmap.estimate.fit import fit_line
 from fieldmap.estimate.frame import Frame
 from fieldmap.estimate.knots import knots_for
 from fieldmap.estimate.model import PassModel, State, pass_information
+from fieldmap.estimate.noise import total
 from fieldmap.estimate.normal import NormalSystem
 from fieldmap.estimate.spline import UniformSpline
 from fieldmap.estimate.variance import Fitted, NoiseLevel, _part, _score, initial_level
@@ -41,7 +42,7 @@ def small_problem():
 def restricted(model, state, prior, walk, read):
     """Restricted log-likelihood with b ~ N(0, prior⁻¹), by orthogonal factors of dense matrices."""
     rows = model.rows(state, Frame(0.0, 0.0))
-    noise = model.covariance(state, walk, read, 0.0)
+    noise = total(model.noise(state, walk, read, 0.0))
     C = np.diag(noise.diagonal) + np.diag(noise.off, 1) + np.diag(noise.off, -1)
     root = np.linalg.cholesky(C)
     design = np.linalg.solve(root, rows.design.toarray())
@@ -58,7 +59,7 @@ def restricted(model, state, prior, walk, read):
 @pytest.mark.parametrize(("walk", "read"), [(2e-7, 5e-8), (1e-7, 3e-7), (1e-6, 2e-8)])
 def test_score_is_the_derivative_of_the_restricted_likelihood(walk, read):
     model, state, prior = small_problem()
-    rows, noise = model.rows(state, Frame(0.0, 0.0)), model.covariance(state, walk, read, 0.0)
+    rows, noise = model.rows(state, Frame(0.0, 0.0)), total(model.noise(state, walk, read, 0.0))
     data = pass_information(rows, noise)
     system = NormalSystem(data.matrix + prior)
     residual = rows.target - rows.design @ system.solve(data.right)

@@ -9,7 +9,7 @@ from hypothesis import given
 from hypothesis import strategies as st
 
 from fieldmap.magnet.quantity import Quantity
-from fieldmap.magnet.verdict import conformity, decide
+from fieldmap.magnet.verdict import conformity, decide, guard_band
 from fieldmap.readings import Limit
 
 TWO_SIDED = Limit("magnetic_length", 1.0, 2.0)
@@ -47,6 +47,39 @@ def test_open_sides():
 def test_coverage_factor():
     assert decision(1.25, 0.1, k=2.0) == "accept"
     assert decision(1.25, 0.1, k=3.0) == "undecided"
+
+
+@pytest.mark.parametrize(
+    ("guard", "value", "expected"),
+    [
+        (0.0, 1.0, "accept"),
+        (0.0, 0.99, "reject"),
+        (0.5, 1.11, "accept"),  # half of U = 0.2 inside the limit
+        (0.5, 1.09, "undecided"),
+        (0.5, 0.91, "undecided"),
+        (0.5, 0.89, "reject"),
+        (1.5, 1.29, "undecided"),
+        (1.5, 1.31, "accept"),
+        (1.5, 0.69, "reject"),
+    ],
+)
+def test_guard_bands(guard, value, expected):
+    assert decision(value, 0.1, Limit("r", 1.0, 2.0, guard=guard)) == expected
+
+
+def test_a_limit_names_its_own_coverage_factor():
+    strict = Limit("r", 1.0, 2.0, k=3.0)
+    assert decision(1.25, 0.1, strict) == "undecided"
+    assert decision(1.25, 0.1, strict, k=1.0) == "undecided"
+    assert decide(strict, Quantity(1.25, 0.1, "m")).band == pytest.approx(0.3)
+    assert guard_band(Limit("r", 1.0, None, guard=0.5), 0.1, k=3.0) == pytest.approx(0.15)
+
+
+@given(st.floats(-3, 3), st.floats(1e-3, 1), st.floats(0.1, 5))
+def test_without_a_guard_band_nothing_is_undecided(value, u, k):
+    assert decision(value, u, Limit("r", -1.0, 1.0, k=k, guard=0.0)) == (
+        "accept" if -1 <= value <= 1 else "reject"
+    )
 
 
 def test_an_interval_wider_than_the_limits_is_undecided():

@@ -2,18 +2,19 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 from fieldmap.errors import InputError
 from fieldmap.readings.passes import FlipReference
+from fieldmap.readings.probe import Coil
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
     import numpy as np
 
-    from fieldmap.readings.passes import Campaign, PlannedPass
+    from fieldmap.readings.passes import Campaign, Pass, PlannedPass
     from fieldmap.readings.probe import Integrator
 
 __all__ = ["Errors", "Noise", "draw_errors", "noise_of"]
@@ -52,6 +53,12 @@ class Errors:
         Trigger to reading, s.
     backlash : float
         Difference between the two directions of travel, m.
+    window : mapping of str to float
+        Error of the window of each coil, by its name, m.
+    tilt : mapping of str to float
+        Angle of each probe to the field, by its name, rad: it reads the cosine of it.
+    warmth : mapping of str to float
+        Error of the temperature of each probe, by its name, K.
     drift : tuple of float
         Drift rate of each planned pass, in their order, V s/s; the expected rates if empty.
     noise : mapping of str to Noise
@@ -69,12 +76,19 @@ class Errors:
     offset: float = 0.0
     lag: float = 0.0
     backlash: float = 0.0
+    window: Mapping[str, float] = field(default_factory=dict)
+    tilt: Mapping[str, float] = field(default_factory=dict)
+    warmth: Mapping[str, float] = field(default_factory=dict)
     drift: tuple[float, ...] = ()
     noise: Mapping[str, Noise] = field(default_factory=dict)
 
 
 def draw_errors(
-    plan: Campaign, rng: np.random.Generator, noise: Mapping[str, Noise] | None = None
+    plan: Campaign,
+    rng: np.random.Generator,
+    noise: Mapping[str, Noise] | None = None,
+    *,
+    passes: Sequence[Pass | PlannedPass] | None = None,
 ) -> Errors:
     """Draw what is uncertain from normal distributions of the stated standard uncertainties.
 
@@ -86,6 +100,8 @@ def draw_errors(
         Source of chance.
     noise : mapping of str to Noise, optional
         Passed on: true noise by the integrator's name.
+    passes : sequence of Pass or PlannedPass, optional
+        Passes that the drifts are drawn for; the planned ones if left out.
 
     Returns
     -------
@@ -103,22 +119,36 @@ def draw_errors(
     >>> errors.offset, bool(abs(errors.lag) < 1e-2)
     (0.0, True)
     """
-    probes = [planned.probe for planned in plan.planned]
+    passes = plan.planned if passes is None else passes
+    probes = [one.probe for one in passes]
     probes += [ref.probe for ref in plan.references if isinstance(ref, FlipReference)]
     by_name = {probe.name: probe for probe in probes}
     stage = plan.stage
-    return Errors(
-        gain={name: by_name[name].u_gain * rng.standard_normal() for name in sorted(by_name)},
+    probes = [by_name[name] for name in sorted(by_name)]
+    errors = Errors(
+        gain={probe.name: probe.u_gain * rng.standard_normal() for probe in probes},
         scale=stage.u_scale * rng.standard_normal(),
         offset=stage.u_offset * rng.standard_normal(),
         lag=stage.u_lag * rng.standard_normal(),
         backlash=stage.u_backlash * rng.standard_normal(),
-        drift=tuple(_drift(planned.integrator, rng) for planned in plan.planned),
+        drift=tuple(_drift(one.integrator, rng) for one in passes),
         noise=dict(noise or {}),
+    )
+    # drawn last and only where stated, so that a seed keeps what it drew of all the others
+    return replace(
+        errors,
+        window=_drawn({p.name: p.u_window for p in probes if isinstance(p, Coil)}, rng),
+        tilt=_drawn({p.name: p.u_tilt for p in probes}, rng),
+        warmth=_drawn({p.name: p.u_temperature for p in probes}, rng),
     )
 
 
-def noise_of(planned: PlannedPass, errors: Errors) -> Noise:
+def _drawn(stated: Mapping[str, float], rng: np.random.Generator) -> dict[str, float]:
+    """A normal deviate for every standard uncertainty that is not zero."""
+    return {name: u * rng.standard_normal() for name, u in stated.items() if u > 0}
+
+
+def noise_of(planned: Pass | PlannedPass, errors: Errors) -> Noise:
     """True noise of a pass: that of the errors, else what its integrator states.
 
     Raises

@@ -52,17 +52,31 @@ _NVS: Final = _Unit("nV s", 9, "V s")
 _WALK: Final = _Unit("nV s s^-0.5", 9, "V s s^-0.5")
 _DRIFT: Final = _Unit("uV s/s", 6, "V s/s")
 _T: Final = _Unit("T", 0, "T")
+_TM: Final = _Unit("T m", 0, "T m")
 _UT: Final = _Unit("uT", 6, "T")
+_MRAD: Final = _Unit("mrad", 3, "rad")
+_PER_K: Final = _Unit("1/K", 0, "1/K")
+_DEG_C: Final = _Unit("degC", 0, "degC")
+_K: Final = _Unit("K", 0, "K")
 
+_MOUNT: Final = (
+    _Entry("u_tilt", "u_tilt", _MRAD),
+    _Entry("temperature_coefficient", "temperature_coefficient", _PER_K),
+    _Entry("u_temperature", "u_temperature", _K),
+)
+_WARM: Final = (_Entry("reference_temperature", "reference_temperature", _DEG_C),)
 _WIRE: Final = (
     _Entry("active_length", "active_length", _MM),
     _Entry("u_active_length", "u_active_length", _MM),
     _Entry("width", "width", _MM),
+    *_MOUNT,
 )
 _COIL: Final = (
     _Entry("effective_area", "effective_area", _M2),
     _Entry("u_effective_area", "u_effective_area", _M2),
     _Entry("window", "window", _MM),
+    _Entry("u_window", "u_window", _MM),
+    *_MOUNT,
 )
 _INTEGRATOR: Final = (
     _Entry("read_noise", "read_noise", _NVS),
@@ -80,6 +94,12 @@ _STAGE: Final = (
     _Entry("u_lag", "u_lag", _MS),
     _Entry("u_backlash", "u_backlash", _UM),
 )
+_AXIS: Final = (
+    _Entry("tail_in", "tail_in", _TM),
+    _Entry("u_tail_in", "u_tail_in", _TM),
+    _Entry("tail_out", "tail_out", _TM),
+    _Entry("u_tail_out", "u_tail_out", _TM),
+)
 _LINE: Final = (_Entry("x", "x", _MM), _Entry("y", "y", _MM))
 _PLANNED: Final = (
     _Entry("from", "start", _MM),
@@ -96,7 +116,7 @@ _FLIP: Final = (
     _Entry("u_flux_change", "u_flux_change", _NVS),
 )
 _LIMIT_UNITS: Final = {
-    "T m": _Unit("T m", 0, "T m"),
+    "T m": _TM,
     "T": _T,
     "m": _MM,
     "1": _Unit("", 0, ""),
@@ -157,7 +177,7 @@ def campaign_text(
     for reference in campaign.references:
         lines += _reference(reference)
     for limit in campaign.limits:
-        lines += ["", "[[limits]]", f'result = "{limit.result}"', *_limit(limit)]
+        lines += ["", "[[limits]]", f'result = "{limit.result}"', *_limit(limit), *_rule(limit)]
     return "\n".join(lines) + "\n"
 
 
@@ -188,7 +208,11 @@ def _given(item: object, entries: Iterable[_Entry]) -> list[str]:
     return lines
 
 
-_ALWAYS: Final = {"from", "to", "at", "field", "flux_change", "read_noise", "walk_noise", "u_drift"}
+_ALWAYS: Final = {
+    *("from", "to", "at", "field", "flux_change", "read_noise", "walk_noise", "u_drift"),
+    "reference_temperature",
+    *(entry.key for entry in _AXIS),
+}
 """Keys for which zero is not the same as leaving them out."""
 
 
@@ -218,7 +242,7 @@ def _axis(campaign: Campaign) -> list[str]:
     lines = ["", "[axis]", f"travel = {_string(axis.travel)}"]
     for key, (start, stop) in spans.items():
         lines.append(f"{key} = [{_quantity(start, _MM)}, {_quantity(stop, _MM)}]")
-    return lines
+    return lines + _given(axis, _AXIS)
 
 
 def _probe(probe: Probe) -> list[str]:
@@ -228,6 +252,8 @@ def _probe(probe: Probe) -> list[str]:
         lines += ['kind = "wire"', f"turns = {turns}", *_given(probe, _WIRE)]
     else:
         lines += ['kind = "coil"', f'shape = "{probe.shape}"', *_given(probe, _COIL)]
+    if probe.temperature_coefficient:
+        lines += _given(probe, _WARM)
     return lines if probe.polarity == 1 else [*lines, f"polarity = {probe.polarity}"]
 
 
@@ -299,3 +325,9 @@ def _limit(limit: Limit) -> list[str]:
             return [f"{key} = {_quantity(value, unit)}" for key, value in values.items()]
     ends = {"lower": limit.lower, "upper": limit.upper}
     return [f"{key} = {_quantity(v, unit)}" for key, v in ends.items() if v is not None]
+
+
+def _rule(limit: Limit) -> list[str]:
+    """Coverage factor and guard band where they are not the usual ones."""
+    lines = [] if limit.k is None else [f"k = {float(limit.k)!r}"]
+    return lines if limit.guard == 1 else [*lines, f"guard = {float(limit.guard)!r}"]

@@ -103,8 +103,9 @@ def _make(demo: Demo, folder: Path, *, overwrite: bool) -> Path:
         overwrite=overwrite,
     )
     about = f"{campaign.name}: {demo.about}; true values of a simulated campaign"
+    text = truth_text(demo.source, campaign.axis, about, campaign.magnet.gap)
     with replacing(folder / "truth.json") as aside:
-        aside.write_bytes(truth_text(demo.source, campaign.axis, about).encode())
+        aside.write_bytes(text.encode())
     return file
 
 

@@ -12,6 +12,14 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 
 from fieldmap.bench.bench_errors import Errors, draw_errors, noise_of
+from fieldmap.bench.reading import (
+    shown,
+    true_gain,
+    true_position,
+    true_probe,
+    warmed,
+    whole_steps,
+)
 from fieldmap.bench.response import flux
 from fieldmap.bench.slope import flux_slope
 from fieldmap.bench.sources import Source
@@ -29,7 +37,7 @@ from fieldmap.readings.records import cumulative_flux
 
 if TYPE_CHECKING:
     from fieldmap.bench.bench_errors import Noise
-    from fieldmap.readings.probe import Coil, Integrator
+    from fieldmap.readings.probe import Coil
 
 __all__ = ["History", "Recorded", "Sources", "read_flip", "read_point", "record"]
 
@@ -107,7 +115,8 @@ def record(
         Current of the supply, A, against time from the start of a pass, s. It is recorded,
         and the field follows it in proportion to the nominal current of the magnet.
     temperature : callable, optional
-        Temperature, degC, against time from the start of a pass, s; recorded only.
+        Temperature, degC, against time from the start of a pass, s. It is recorded, and the
+        gain of a probe with a temperature coefficient follows it.
     per_count : float
         Travel per encoder count, m: recorded positions are whole counts. Zero for none.
 
@@ -244,8 +253,9 @@ def read_flip(
     0.3
     """
     errors = errors or Errors()
-    linked = float(flux(source, probe, at * (1.0 + errors.scale) + errors.offset))
-    change = 2.0 * (1.0 + errors.gain.get(probe.name, 0.0)) * linked
+    place = at * (1.0 + errors.scale) + errors.offset
+    linked = float(flux(source, true_probe(probe, errors), place))
+    change = 2.0 * true_gain(probe, errors) * linked
     return FlipReference(probe, at, change + u * float(rng.standard_normal()), u)
 
 
@@ -272,13 +282,13 @@ def _recorded(
         samples = _shown(bench, planned, time, jitter, drift, noise, rng)
         noted = nominal
     if planned.record == "increments":
-        samples = _whole_steps(np.diff(samples, prepend=samples[0]), planned.integrator.resolution)
+        samples = whole_steps(np.diff(samples, prepend=samples[0]), planned.integrator.resolution)
     return Recorded(
         name=name,
         probe=planned.probe,
         integrator=planned.integrator,
         time=time,
-        position=np.round(_whole_steps(noted, bench.per_count), _DIGITS),
+        position=np.round(whole_steps(noted, bench.per_count), _DIGITS),
         flux=cumulative_flux(samples, time, planned.record, planned.integrator),
         x=planned.x,
         y=planned.y,
@@ -291,26 +301,27 @@ def _recorded(
 
 def _true_position(bench: _Bench, planned: PlannedPass, time: Floats) -> Floats:
     """Where the probe is, jitter left out, m."""
-    errors = bench.errors
-    reached = nominal_position(planned, time + errors.lag) * (1.0 + errors.scale)
-    return reached + errors.offset + direction(planned) * errors.backlash / 2.0
+    reached = nominal_position(planned, time + bench.errors.lag)
+    return true_position(reached, direction(planned), bench.errors)
 
 
 def _linked(bench: _Bench, planned: PlannedPass, position: Floats, time: Floats) -> Floats:
     """Flux through the probe, V s; a wire's circuit closes at the low end of the scan."""
-    source, probe = bench.source_of(planned), planned.probe
+    source, probe = bench.source_of(planned), true_probe(planned.probe, bench.errors)
     linked = flux(source, probe, position)
     if probe.senses_level:
         linked = linked - flux(source, probe, bench.low_end)
-    gain = 1.0 + bench.errors.gain.get(probe.name, 0.0)
-    return np.asarray(gain * linked * _strength(bench, time))
+    return np.asarray(true_gain(probe, bench.errors) * linked * _strength(bench, planned, time))
 
 
-def _strength(bench: _Bench, time: Floats) -> Floats:
-    """Field over its nominal value, as the supply's current has it."""
-    if bench.current is None or not bench.plan.magnet.current:
-        return np.ones_like(time)
-    return np.asarray(bench.current(time) / bench.plan.magnet.current)
+def _strength(bench: _Bench, planned: PlannedPass, time: Floats) -> Floats:
+    """Reading over its nominal value, as the supply's current and the temperature have it."""
+    strength = np.ones_like(time)
+    if bench.current is not None and bench.plan.magnet.current:
+        strength = np.asarray(bench.current(time) / bench.plan.magnet.current)
+    if bench.temperature is not None and planned.probe.temperature_coefficient:
+        strength = strength * warmed(planned.probe, bench.temperature(time))
+    return strength
 
 
 def _voltage(bench: _Bench, planned: PlannedPass, time: Floats) -> Floats:
@@ -318,10 +329,10 @@ def _voltage(bench: _Bench, planned: PlannedPass, time: Floats) -> Floats:
     errors = bench.errors
     position = _true_position(bench, planned, time)
     speed = nominal_speed(planned, time + errors.lag) * (1.0 + errors.scale)
-    gain = 1.0 + errors.gain.get(planned.probe.name, 0.0)
-    slope = gain * flux_slope(bench.source_of(planned), planned.probe, position)
-    moved = slope * speed * _strength(bench, time)
-    if bench.current is None:
+    probe = true_probe(planned.probe, errors)
+    slope = true_gain(probe, errors) * flux_slope(bench.source_of(planned), probe, position)
+    moved = slope * speed * _strength(bench, planned, time)
+    if bench.current is None and bench.temperature is None:
         return np.asarray(moved)
     change = _linked(bench, planned, position, time + _TICK)
     change -= _linked(bench, planned, position, time - _TICK)
@@ -344,32 +355,5 @@ def _shown(
     linked -= _linked(bench, planned, start, time[:1])  # reset at the start
     steps = rng.standard_normal(time.size) / np.sqrt(planned.rate)
     walk = noise.walk * np.cumsum(np.append(0.0, steps[1:]))
-    held = _drooped(linked + drift * time + walk, time, planned.integrator)
-    read = held + noise.read * rng.standard_normal(time.size)
-    shown = _whole_steps(read, planned.integrator.resolution)
-    full = planned.integrator.full_scale
-    return shown if full is None else np.clip(shown, -full, full)
-
-
-def _drooped(integral: Floats, time: Floats, integrator: Integrator) -> Floats:
-    """What an analog integrator holds of an integral: dy/dt = v - y/tau, v even in each step."""
-    if integrator.kind != "analog" or integrator.leak_time is None:
-        return integral
-    held = np.empty_like(integral)
-    held[0] = integral[0]
-    share = np.diff(time) / integrator.leak_time
-    kept = np.exp(-share)
-    gained = np.diff(integral) * -np.expm1(-share) / share
-    for i in range(len(share)):
-        held[i + 1] = held[i] * kept[i] + gained[i]
-    return held
-
-
-def _whole_steps(values: Floats, step: float) -> Floats:
-    """Round to whole steps; through the inverse where that is whole, which keeps decimals short."""
-    if step <= 0.0:
-        return values
-    inverse = round(1.0 / step)
-    if inverse and abs(inverse * step - 1.0) < 1e-14:
-        return np.asarray(np.round(values * inverse) / inverse + 0.0)  # no negative zero
-    return np.asarray(np.round(values / step) * step + 0.0)
+    read = noise.read * rng.standard_normal(time.size)
+    return shown(linked + drift * time + walk, time, planned.integrator, read)

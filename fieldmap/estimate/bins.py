@@ -49,8 +49,9 @@ class Bins:
     bridge : array
         ``∫A(1-A) dt`` over the bin, s, with A the share of its readings already taken: what
         the design's ``w(1 - 1/c²)/6`` is for evenly spaced readings.
-    current : array or None
-        Mean of the supply's current over its nominal value, 1.
+    strength : array or None
+        What a reading is larger by than at nominal current and reference temperature, 1: the
+        field follows the supply's current, the probe its temperature.
     """
 
     starts: Ints
@@ -61,7 +62,7 @@ class Bins:
     speed: Floats
     sense: Floats
     bridge: Floats
-    current: Floats | None = None
+    strength: Floats | None = None
 
 
 def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
@@ -125,9 +126,7 @@ def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bi
         return np.asarray(np.add.reduceat(values, starts) / count)
 
     speed = _bin_speed(one, starts)
-    current = None
-    if one.current is not None and nominal_current:
-        current = mean(one.current) / nominal_current
+    strength = _strength(one, nominal_current)
     return Bins(
         starts=starts,
         count=count,
@@ -137,8 +136,19 @@ def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bi
         speed=speed,
         sense=_sense(speed),
         bridge=_bridge(one, starts, count),
-        current=current,
+        strength=None if strength is None else mean(strength),
     )
+
+
+def _strength(one: Pass, nominal_current: float | None) -> Floats | None:
+    """Reading over what it would be at nominal current and reference temperature."""
+    factors = []
+    if one.current is not None and nominal_current:
+        factors.append(one.current / nominal_current)
+    if one.temperature is not None and one.probe.temperature_coefficient:
+        warmer = one.temperature - one.probe.reference_temperature
+        factors.append(1 + one.probe.temperature_coefficient * warmer)
+    return np.prod(factors, axis=0) if factors else None
 
 
 def _bin_speed(one: Pass, starts: Ints) -> Floats:

@@ -10,15 +10,18 @@ import numpy.typing as npt
 
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.frame import common_frame
+from fieldmap.estimate.linearised import Linearised
 from fieldmap.estimate.model import (
     Information,
     PassModel,
     State,
     pass_information,
     reference_information,
+    reference_rows,
 )
+from fieldmap.estimate.noise import total
 from fieldmap.estimate.normal import NormalSystem
-from fieldmap.estimate.parameters import Nuisance, nuisances
+from fieldmap.estimate.parameters import GAINS, Nuisance, nuisances
 from fieldmap.estimate.smoothing import Smoother
 from fieldmap.estimate.variance import Fitted, NoiseLevel, improve_levels, initial_level
 from fieldmap.progress import Tell, silent
@@ -27,6 +30,7 @@ from fieldmap.readings.passes import FlipReference
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from fieldmap.estimate.evidence import Evidence
     from fieldmap.estimate.noise import Tridiagonal
     from fieldmap.estimate.spline import UniformSpline
     from fieldmap.readings.passes import Pass, Reference
@@ -89,6 +93,8 @@ class LineFit:
         Variance of the third differences of B's coefficients that the prior ended with, T^2.
     passes : list of PassFit
         Residuals of each pass.
+    evidence : Evidence
+        Readings, references and priors as the last solve used them.
     """
 
     spline: UniformSpline
@@ -97,6 +103,7 @@ class LineFit:
     covariance: Floats
     roughness: Floats
     passes: list[PassFit]
+    evidence: Evidence
 
     def line(self, x: float, y: float, low: float, high: float) -> FieldLine:
         """The field alone, as a line at (x, y) mapped from low to high (m)."""
@@ -230,7 +237,8 @@ class _Solver:
             self._solve(adaptations)
             if done >= enough - 1 and self._settled(before, levels):
                 break
-        values, covariance = self._at_true_positions()
+        moves = self.frame.to_true(self.spline, self.state.b, self.state.unknowns)
+        values, covariance = self._at_true_positions(moves)
         return LineFit(
             spline=self.spline,
             unknowns=self.state.unknowns,
@@ -238,12 +246,14 @@ class _Solver:
             covariance=covariance,
             roughness=self.smoother.variance,
             passes=self._pass_fits(),
+            evidence=self.linearised.evidence(
+                self.state.unknowns, self.frame, moves, self.smoother
+            ),
         )
 
-    def _at_true_positions(self) -> tuple[Floats, Floats]:
+    def _at_true_positions(self, moves: Floats) -> tuple[Floats, Floats]:
         """Values and covariance with the profile moved from recorded to true positions."""
         size, b, eta = self.spline.size, self.state.b, self.state.eta
-        moves = self.frame.to_true(self.spline, b, self.state.unknowns)
         jacobian = np.eye(size + len(eta))
         jacobian[:size, size:] = moves
         values = np.concatenate([b + moves @ eta, eta])
@@ -251,11 +261,10 @@ class _Solver:
 
     def _solve(self, adaptations: int) -> None:
         """Linearise at the present state, solve, and adapt the smoothness to the solution."""
-        data = self._priors() + reference_information(
-            self.references, self.spline, self.state, self.frame
-        )
-        for model in self.models:
-            data = data + pass_information(model.rows(self.state, self.frame), self._noise(model))
+        self.linearised = self._linearise()
+        data = self._priors() + reference_information(self.linearised.references)
+        for rows, noise in zip(self.linearised.passes, self.linearised.noise, strict=True):
+            data = data + pass_information(rows, total(noise))
         size = self.spline.size
         if adaptations == START:
             self.smoother.start(data)
@@ -286,16 +295,25 @@ class _Solver:
         columns = np.zeros((self.spline.size, len(self.state.eta)))
         share = self.state.b / len(probes)
         for name, probe in probes.items():
-            if (index := self.state.index("gain", name)) is not None:
-                columns[:, index] += share
+            for kind in GAINS:
+                if (index := self.state.index(kind, name)) is not None:
+                    columns[:, index] += share
             if probe.senses_level and (index := self.state.index("scale")) is not None:
                 columns[:, index] += share
         return columns
 
-    def _noise(self, model: PassModel) -> Tridiagonal:
-        """Covariance of a pass at the present state and noise levels."""
+    def _linearise(self) -> Linearised:
+        """Rows and noise of all readings at the present state and noise levels."""
+        return Linearised(
+            references=reference_rows(self.references, self.spline, self.state, self.frame),
+            passes=[model.rows(self.state, self.frame) for model in self.models],
+            noise=[self._noise(model) for model in self.models],
+        )
+
+    def _noise(self, model: PassModel) -> dict[str, Tridiagonal]:
+        """Covariance of a pass at the present state and noise levels, by its cause."""
         level = self.levels[_key(model.one)]
-        return model.covariance(self.state, level.walk, level.read, self.jitter)
+        return model.noise(self.state, level.walk, level.read, self.jitter)
 
     def _priors(self) -> Information:
         """What is known of the nuisances before the scan."""
@@ -320,7 +338,8 @@ class _Solver:
     def _fitted(self, model: PassModel) -> Fitted:
         rows = model.rows(self.state, self.frame)
         values = np.concatenate([self.state.b, self.state.eta])
-        return Fitted(model, rows, self._noise(model), rows.target - rows.design @ values)
+        noise = total(self._noise(model))
+        return Fitted(model, rows, noise, rows.target - rows.design @ values)
 
     def _rebin(self) -> None:
         """Move the readings to where they were taken, if that is more than a linear step."""

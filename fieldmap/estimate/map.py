@@ -10,18 +10,26 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import InputError
+from fieldmap.estimate.evidence_labels import labelled_evidence
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.findings import Finding
+from fieldmap.estimate.map_attributes import FORMAT, describe
+from fieldmap.estimate.provenance import (
+    map_evidence,
+    map_integrators,
+    map_probes,
+    map_references,
+    map_stage,
+)
 from fieldmap.estimate.spline import DEGREE, UniformSpline
 from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
-from fieldmap.version import __version__
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
     import xarray as xr
 
-    from fieldmap.estimate.fit import LineFit, PassFit
+    from fieldmap.estimate.fit import LineFit
 
 __all__ = [
     "FORMAT",
@@ -35,16 +43,15 @@ __all__ = [
     "map_magnet",
     "map_passes",
     "map_title",
+    "with_axis",
 ]
 
 Floats = npt.NDArray[np.float64]
 
-FORMAT = "fieldmap-map/1"
-
 
 @dataclass(frozen=True, eq=False)
 class MappedLine:
-    """One fitted line with its place and its remarks (m)."""
+    """One fitted line with its place (m), its remarks, and the numbers of its references."""
 
     x: float
     y: float
@@ -52,6 +59,7 @@ class MappedLine:
     high: float
     fit: LineFit
     findings: tuple[Finding, ...]
+    references: tuple[int, ...] = ()
 
 
 def build_map(
@@ -125,7 +133,9 @@ def build_map(
         },
         coords={"y": ("y", ys), "x": ("x", xs), "z": ("z", z)},
     )
-    _describe(dataset, campaign, lines, findings)
+    evidence = labelled_evidence([line.fit.evidence for line in lines], most, others)
+    dataset = dataset.assign(evidence)
+    describe(dataset, campaign, lines, findings)
     return dataset
 
 
@@ -176,83 +186,6 @@ def _residuals(lines: Sequence[MappedLine]) -> tuple[Floats, Floats, npt.NDArray
     )
 
 
-def _describe(
-    dataset: xr.Dataset,
-    campaign: Campaign,
-    lines: Sequence[MappedLine],
-    findings: Sequence[Finding],
-) -> None:
-    """Attributes: units and names of the variables, provenance of the whole."""
-    component = campaign.magnet.component
-    along = campaign.axis.travel
-    labels: dict[str, tuple[str, str]] = {
-        "B": ("T", f"flux density, component {component}"),
-        "B_se": ("T", f"standard uncertainty of the flux density, component {component}"),
-        "n_readings": ("1", "number of readings nearest to the grid point"),
-        "coefficient": ("T", "coefficients of the cubic B-spline of the flux density"),
-        "coefficient_covariance": ("T2", "covariance of coefficient"),
-        "nuisance": ("1", "drifts, gains and position errors, each in its unit listed in lines"),
-        "nuisance_covariance": ("1", "covariance of nuisance"),
-        "shared_covariance": ("T", "covariance between coefficient and nuisance"),
-        "mapped_range": ("m", f"lowest and highest recorded position along {along}"),
-        "knots": ("1", "first knot in m, knot spacing in m, number of coefficients of B"),
-        "residual": ("1", "whitened residual of the bin increments"),
-        "residual_position": ("m", f"position along {along} of the residual"),
-        "residual_pass": ("1", "index of the pass in the list of passes"),
-        "x": ("m", "transverse position x of the line"),
-        "y": ("m", "transverse position y of the line"),
-        "z": ("m", f"position along the travel, {along}"),
-    }
-    for name, (units, long_name) in labels.items():
-        dataset[name].attrs = {"units": units, "long_name": long_name}
-    dataset["B"].attrs["ancillary_variables"] = "B_se n_readings"
-    gathered = [*findings, *(remark for line in lines for remark in line.findings)]
-    dataset.attrs = {
-        "Conventions": "CF-1.11",
-        "format": FORMAT,
-        "fieldmap_version": __version__,
-        "title": f"Field map: {campaign.name}",
-        "source": "moving-probe scans with a voltage integrator",
-        "campaign": json.dumps(_campaign_facts(campaign)),
-        "lines": json.dumps([_line_facts(line) for line in lines]),
-        "passes": json.dumps([_pass_facts(one) for line in lines for one in line.fit.passes]),
-        "findings": json.dumps([finding.as_dict() for finding in dict.fromkeys(gathered)]),
-    }
-
-
-def _campaign_facts(campaign: Campaign) -> dict[str, Any]:
-    return {
-        "name": campaign.name,
-        "sha256": campaign.sha256,
-        "magnet": asdict(campaign.magnet),
-        "axis": asdict(campaign.axis),
-        "stage": asdict(campaign.stage),
-        "limits": [asdict(limit) for limit in campaign.limits],
-    }
-
-
-def _line_facts(line: MappedLine) -> dict[str, Any]:
-    unknowns = [{**asdict(u), "unit": f"{u.sd!r} {u.unit}"} for u in line.fit.unknowns]
-    return {"x": line.x, "y": line.y, "unknowns": unknowns}
-
-
-def _pass_facts(one: PassFit) -> dict[str, Any]:
-    measured = one.one
-    return {
-        "name": measured.name,
-        "sha256": measured.sha256,
-        "probe": measured.probe.name,
-        "record": measured.record,
-        "x": measured.x,
-        "y": measured.y,
-        "readings": len(measured.time),
-        "walk_noise": one.level.walk,
-        "read_noise": one.level.read,
-        "chi_square": float(one.residual @ one.residual),
-        "freedom": one.freedom,
-    }
-
-
 def _facts(fmap: xr.Dataset, name: str) -> Any:
     """A JSON attribute of the map."""
     return json.loads(fmap.attrs[name])
@@ -277,8 +210,12 @@ def check_map(fmap: xr.Dataset, where: str) -> None:
         lines = map_lines(fmap)
         whole = bool(lines) and all(_is_whole(line) for line in lines)
         readers = (map_title, map_axis, map_limits, map_magnet, map_findings, map_passes)
-        for read in readers:
+        for read in (*readers, map_probes, map_integrators, map_stage, map_references):
             read(fmap)
+        for index in range(len(lines)):
+            map_evidence(fmap, index)
+    except InputError as error:
+        raise _no_map(where, error.found) from error
     except (KeyError, TypeError, ValueError, IndexError, AttributeError) as error:
         raise _no_map(where, f"a part that is missing or damaged ({error})") from error
     if not whole:
@@ -343,7 +280,30 @@ def map_lines(fmap: xr.Dataset) -> list[FieldLine]:
 def map_axis(fmap: xr.Dataset) -> Axis:
     """Integration limits and flat window that the campaign named."""
     axis = _facts(fmap, "campaign")["axis"]
-    return Axis(axis["travel"], tuple(axis["integrate"]), tuple(axis["flat"]))
+    spans = {key: tuple(axis[key]) for key in ("integrate", "flat")}
+    return Axis(**{**axis, **spans})
+
+
+def with_axis(fmap: xr.Dataset, axis: Axis, notes: Sequence[Finding] = ()) -> xr.Dataset:
+    """The same map with other limits and flat window to take results within.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`; it stays as it is.
+    axis : Axis
+        What `map_axis` will give.
+    notes : sequence of Finding, optional
+        Remarks to add.
+
+    Returns
+    -------
+    xarray.Dataset
+        Shares its arrays with `fmap`.
+    """
+    facts = _facts(fmap, "campaign") | {"axis": asdict(axis)}
+    findings = _facts(fmap, "findings") + [note.as_dict() for note in notes]
+    return fmap.assign_attrs(campaign=json.dumps(facts), findings=json.dumps(findings))
 
 
 def map_limits(fmap: xr.Dataset) -> tuple[Limit, ...]:

@@ -22,8 +22,10 @@ from scipy import sparse
 from fieldmap.estimate.bins import Bins, bin_pass, mean_rows
 from fieldmap.estimate.frame import Frame
 from fieldmap.estimate.noise import Tridiagonal, read_part, walk_part
+from fieldmap.estimate.parameters import GAINS
 from fieldmap.estimate.response import response
 from fieldmap.readings.passes import FlipReference, PointReference
+from fieldmap.readings.probe import Coil
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -31,11 +33,21 @@ if TYPE_CHECKING:
     from fieldmap.estimate.parameters import Kind, Nuisance
     from fieldmap.estimate.spline import UniformSpline
     from fieldmap.readings.passes import Pass, Reference
+    from fieldmap.readings.probe import Probe
 
-__all__ = ["Information", "PassModel", "State", "reference_information"]
+__all__ = [
+    "Information",
+    "PassModel",
+    "Rows",
+    "State",
+    "pass_information",
+    "reference_information",
+    "reference_rows",
+]
 
 Floats = npt.NDArray[np.float64]
 
+WIDER = 1e-3  # of a window, for the difference quotient: its error is a millionth
 NEGLIGIBLE = 1e-14  # of the largest entry: what rounding leaves in a row outside its support
 
 
@@ -61,6 +73,10 @@ class State:
         """Value of one nuisance; zero where it is no unknown."""
         index = self.index(kind, where)
         return 0.0 if index is None else float(self.eta[index])
+
+    def gain(self, probe: str) -> float:
+        """Gain of a probe less its stated value, relative, everything that changes it included."""
+        return sum(self.value(kind, probe) for kind in GAINS)
 
     def index(self, kind: Kind, where: str = "") -> int | None:
         """Place of one nuisance in eta; None where it is no unknown."""
@@ -91,7 +107,7 @@ class Information:
 
 @dataclass(frozen=True, eq=False)
 class Rows:
-    """One pass linearised: increments y = design @ (b, eta) + noise, ready for a solve."""
+    """Some readings linearised: target = design @ (b, eta) + noise."""
 
     design: sparse.csr_array
     target: Floats
@@ -120,22 +136,17 @@ class PassModel:
     bins: Bins = field(init=False)
     flux_steps: sparse.csr_array = field(init=False)
     slope: sparse.csr_array = field(init=False)
+    window_steps: sparse.csr_array = field(init=False)
     applied: Floats = field(init=False)
     walk: Tridiagonal = field(init=False)
 
     def __post_init__(self) -> None:
         self.bins = bin_pass(self.one, self.spline.spacing / 2, self.nominal_current)
-        position = self.one.position if self.shift is None else self.one.position + self.shift
-        nodes = response(self.one.probe, self.spline.spacing)
-        running, direct, slope = mean_rows(self.bins, position, nodes, self.spline)
-        factor = self.bins.current
-        if factor is not None:
-            scale = sparse.diags_array(factor)
-            running, direct, slope = scale @ running, scale @ direct, scale @ slope
-        steps = self.spline.from_running((running[1:] - running[:-1]).toarray())
-        steps[np.abs(steps) < NEGLIGIBLE * np.abs(steps).max(initial=0.0)] = 0.0
-        self.flux_steps = sparse.csr_array(steps) + (direct[1:] - direct[:-1])
-        self.slope = slope.tocsr()
+        self.flux_steps, self.slope = self._steps(0.0)
+        self.window_steps = sparse.csr_array(self.flux_steps.shape)
+        if isinstance(self.one.probe, Coil) and self.one.probe.u_window > 0:
+            wider, narrower = self._steps(WIDER)[0], self._steps(-WIDER)[0]
+            self.window_steps = (wider - narrower) / (2 * WIDER)
         self.walk = walk_part(self.bins)
         starts, count = self.bins.starts, self.bins.count
         self.applied = (
@@ -143,6 +154,18 @@ class PassModel:
             if self.shift is None
             else np.add.reduceat(self.shift, starts) / count
         )
+
+    def _steps(self, widened: float) -> tuple[sparse.csr_array, sparse.csr_array]:
+        """Rows of the increments, and of dΦ/ds, for a window that is longer than stated."""
+        position = self.one.position if self.shift is None else self.one.position + self.shift
+        nodes = response(self.one.probe, self.spline.spacing, widened)
+        running, direct, slope = mean_rows(self.bins, position, nodes, self.spline)
+        if self.bins.strength is not None:
+            scale = sparse.diags_array(self.bins.strength)
+            running, direct, slope = scale @ running, scale @ direct, scale @ slope
+        steps = self.spline.from_running((running[1:] - running[:-1]).toarray())
+        steps[np.abs(steps) < NEGLIGIBLE * np.abs(steps).max(initial=0.0)] = 0.0
+        return sparse.csr_array(steps) + (direct[1:] - direct[:-1]), slope.tocsr()
 
     def own_effects(self, frame: Frame) -> dict[Kind, Floats]:
         """Shift of each bin against the recorded frame for one unit of each nuisance, m."""
@@ -165,12 +188,19 @@ class PassModel:
     def gain(self, state: State) -> float:
         """Gain over its stated value; in the recorded frame a wire's contains the scale."""
         stretched = state.value("scale") if self.one.probe.senses_level else 0.0
-        return 1 + state.value("gain", self.one.probe.name) + stretched
+        return 1 + state.gain(self.one.probe.name) + stretched
 
-    def covariance(self, state: State, walk: float, read: float, jitter: float) -> Tridiagonal:
-        """Covariance of the increments for given noise levels (V s/√s, V s, m)."""
+    def noise(
+        self, state: State, walk: float, read: float, jitter: float
+    ) -> dict[str, Tridiagonal]:
+        """Covariance of the increments by its cause, for noise levels in V s/√s, V s and m."""
         swing = self.slope @ state.b * self.gain(state)
-        return walk**2 * self.walk + read_part(self.bins, read**2 + (swing * jitter) ** 2)
+        even = np.full(len(swing), read**2)
+        return {
+            "walk": walk**2 * self.walk,
+            "read": read_part(self.bins, even),
+            "jitter": read_part(self.bins, (swing * jitter) ** 2),
+        }
 
     def rows(self, state: State, frame: Frame) -> Rows:
         """Linearise at a state."""
@@ -179,10 +209,13 @@ class PassModel:
         field_steps = self.flux_steps + (extra[1:] - extra[:-1])
         swing = gain * (self.slope @ state.b)
         columns = np.zeros((len(bins.time) - 1, len(state.eta)))
+        if (index := state.index("window", self.one.probe.name)) is not None:
+            columns[:, index] = gain * (self.window_steps @ state.b)
+            field_steps = field_steps + state.eta[index] * self.window_steps
         for kind, effect in self.own_effects(frame).items():
             if (index := state.index(kind)) is not None:
                 columns[:, index] = np.diff(swing * effect)
-        gains: list[tuple[Kind, str]] = [("gain", self.one.probe.name)]
+        gains = [(kind, self.one.probe.name) for kind in GAINS]
         if self.one.probe.senses_level:
             gains.append(("scale", ""))
         for kind, where in gains:
@@ -211,10 +244,10 @@ def pass_information(rows: Rows, covariance: Tridiagonal) -> Information:
     return Information(matrix, right)
 
 
-def reference_information(
+def reference_rows(
     references: Sequence[Reference], spline: UniformSpline, state: State, frame: Frame
-) -> Information:
-    """Normal equations of the absolute references.
+) -> Rows:
+    """Rows and values of the absolute references, divided by their standard uncertainties.
 
     Parameters
     ----------
@@ -229,7 +262,7 @@ def reference_information(
 
     Returns
     -------
-    Information
+    Rows
     """
     size = spline.size + len(state.eta)
     design = np.zeros((len(references), size))
@@ -238,8 +271,13 @@ def reference_information(
         row, target[i], sd[i] = _reference_row(reference, spline, state, frame)
         design[i] = row
         target[i] += float(row[spline.size :] @ state.eta)
-    white, goal = design / sd[:, None], target / sd
-    return Information(white.T @ white, white.T @ goal)
+    return Rows(sparse.csr_array(design / sd[:, None]), target / sd)
+
+
+def reference_information(rows: Rows) -> Information:
+    """Normal equations of references."""
+    white = rows.design.toarray()
+    return Information(white.T @ white, white.T @ rows.target)
 
 
 def _reference_row(
@@ -275,21 +313,18 @@ def _flip_row(
 ) -> tuple[Floats, float, float]:
     """A coil turned over sees twice what it links; it stands, so it has no lag."""
     row = np.zeros(spline.size + len(state.eta))
-    nodes = response(flip.probe, spline.spacing)
     standing = Frame(0.0, 0.0)
     at = flip.at + _shift(state, standing, flip.at) - _shift(state, frame, flip.at)
-    places = at + nodes.offsets
-    if nodes.of_integral:
-        links = nodes.weights @ spline.running_rows(places)
-        slope = nodes.weights @ spline.field_rows(places)
-    else:
-        links = nodes.weights @ spline.field_rows(places)
-        slope = nodes.weights @ spline.field_rows(places, 1)
-    gain = 1 + state.value("gain", flip.probe.name)
+    links, slope = _links(flip.probe, at, spline)
+    wider, narrower = (_links(flip.probe, at, spline, by)[0] for by in (WIDER, -WIDER))
+    window = (wider - narrower) / (2 * WIDER)
+    gain = 1 + state.gain(flip.probe.name)
+    links = links + state.value("window", flip.probe.name) * window
     row[: spline.size] = 2 * gain * links
     swing = float(2 * gain * slope @ state.b)
     steps: list[tuple[Kind, str, float]] = [
-        ("gain", flip.probe.name, float(2 * links @ state.b)),
+        *((kind, flip.probe.name, float(2 * links @ state.b)) for kind in GAINS),
+        ("window", flip.probe.name, float(2 * gain * window @ state.b)),
         ("lag", "", -swing * frame.speed),
         ("backlash", "", -swing * frame.sense / 2),
     ]
@@ -297,3 +332,16 @@ def _flip_row(
         if (index := state.index(kind, where)) is not None:
             row[spline.size + index] = step
     return row, flip.flux_change, flip.u_flux_change
+
+
+def _links(
+    probe: Probe, at: float, spline: UniformSpline, widened: float = 0.0
+) -> tuple[Floats, Floats]:
+    """Rows of the flux through a standing coil, and of its change with the position."""
+    nodes = response(probe, spline.spacing, widened)
+    places = at + nodes.offsets
+    if nodes.of_integral:
+        flux, slope = spline.running_rows(places), spline.field_rows(places)
+    else:
+        flux, slope = spline.field_rows(places), spline.field_rows(places, 1)
+    return nodes.weights @ flux, nodes.weights @ slope

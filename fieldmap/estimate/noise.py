@@ -15,9 +15,11 @@ import numpy.typing as npt
 from scipy.linalg import lapack
 
 if TYPE_CHECKING:
+    from collections.abc import Mapping, Sequence
+
     from fieldmap.estimate.bins import Bins
 
-__all__ = ["Tridiagonal", "allan_deviation", "read_part", "walk_part"]
+__all__ = ["Tridiagonal", "allan_deviation", "read_part", "stacked", "total", "walk_part"]
 
 Floats = npt.NDArray[np.float64]
 
@@ -93,6 +95,21 @@ class Tridiagonal:
         backward = Tridiagonal(self.diagonal[::-1].copy(), self.off[::-1].copy()).factor()[0][::-1]
         main = 1 / (forward + backward - self.diagonal)
         return main, -multipliers * main[1:]
+
+
+def total(parts: Mapping[str, Tridiagonal]) -> Tridiagonal:
+    """Sum of covariances that stand by their causes."""
+    first, *others = parts.values()
+    for other in others:
+        first = first + other
+    return first
+
+
+def stacked(blocks: Sequence[Tridiagonal]) -> Tridiagonal:
+    """Covariance of several passes end to end, with nothing correlated between them."""
+    diagonal = np.concatenate([block.diagonal for block in blocks])
+    off = np.concatenate([np.append(block.off, 0.0) for block in blocks])
+    return Tridiagonal(diagonal, off[:-1])
 
 
 def walk_part(bins: Bins) -> Tridiagonal:

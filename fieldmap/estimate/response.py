@@ -43,7 +43,7 @@ class Response:
     of_integral: bool
 
 
-def response(probe: Probe, spacing: float) -> Response:
+def response(probe: Probe, spacing: float, widened: float = 0.0) -> Response:
     """Nodes and weights with which a probe reads a spline.
 
     Parameters
@@ -52,6 +52,8 @@ def response(probe: Probe, spacing: float) -> Response:
         The probe.
     spacing : float
         Knot spacing, m: it sets how many nodes a round window needs.
+    widened : float
+        How much longer the window of a coil is than stated, relative; its area stays.
 
     Returns
     -------
@@ -73,8 +75,9 @@ def response(probe: Probe, spacing: float) -> Response:
         return Response(np.array([-node, node]), np.full(2, probe.gain / 2), of_integral=True)
     if half == 0:
         return Response(np.zeros(1), np.array([probe.gain]), of_integral=False)
+    half *= 1 + widened
     if probe.shape == "rectangular":
-        weight = probe.gain / probe.window
+        weight = probe.gain / (2 * half)
         return Response(np.array([-half, half]), np.array([-weight, weight]), of_integral=True)
     count = int(np.clip(np.ceil(2 * probe.window / spacing), 8, 64))
     angle = np.arange(1, count + 1) * np.pi / (count + 1)

@@ -122,16 +122,19 @@ class UniformSpline:
         (n, size) array
             Unit m**-derivative.
         """
-        s = np.atleast_1d(np.asarray(s, dtype=float))
-        piece, x = self.locate(s)
+        columns, values = self.field_parts(s, derivative)
+        rows = np.zeros((len(columns), self.size))
+        np.put_along_axis(rows, columns, values, axis=1)
+        return rows
+
+    def field_parts(self, s: Floats, derivative: int = 0) -> tuple[Ints, Floats]:
+        """What of the rows of `field_rows` is not zero: columns and values, (n, DEGREE + 1) each."""
+        piece, x = self.locate(np.atleast_1d(np.asarray(s, dtype=float)))
         table = piece_polynomials(DEGREE)
         for _ in range(derivative):
             table = table[1:] * np.arange(1, len(table))[:, None]
         values = np.vander(x, len(table), increasing=True) @ table / self.spacing**derivative
-        rows = np.zeros((len(s), self.size))
-        columns = piece[:, None] + np.arange(DEGREE + 1)
-        np.put_along_axis(rows, columns, values, axis=1)
-        return rows
+        return piece[:, None] + np.arange(DEGREE + 1), values
 
     def running_rows(self, s: Floats) -> Floats:
         """Rows r with F(s) = r @ b, F being zero left of the domain's functions.

@@ -224,7 +224,8 @@ def _fit_one(
     if spacing is None:
         best, remarks = _refine(best, fit, campaign.axis)
     remarks += line_findings(best, low, high, campaign.stage, gap)
-    return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks))
+    numbers = tuple(number for number, _ in numbered)
+    return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks), numbers)
 
 
 def _undetermined(passes: list[Pass]) -> RefusedError:

@@ -18,6 +18,8 @@ if TYPE_CHECKING:
 
 __all__ = ["load_map", "save_map", "write_map"]
 
+WORTH_PACKING = 10_000  # bytes
+
 
 def save_map(fmap: xr.Dataset, path: str | os.PathLike[str]) -> None:
     """Write a map as NetCDF-4 with CF-1.11 attributes.
@@ -49,9 +51,9 @@ def write_map(fmap: xr.Dataset, path: Path) -> None:
         for name, variable in out.data_vars.items()
     }
     encoding |= {str(name): {"_FillValue": None} for name in out.coords}
-    for name in ("coefficient_covariance", "shared_covariance"):
-        if name in out:
-            encoding[name] |= {"zlib": True, "complevel": 4, "shuffle": True}
+    for name, variable in out.data_vars.items():
+        if variable.nbytes > WORTH_PACKING:
+            encoding[str(name)] |= {"zlib": True, "complevel": 4, "shuffle": True}
     out.to_netcdf(path, engine="h5netcdf", encoding=encoding)
 
 

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from itertools import chain
+from types import MappingProxyType
+from typing import TYPE_CHECKING, Final
 
 from fieldmap.errors import InputError
 from fieldmap.estimate.findings import Finding
@@ -14,23 +16,46 @@ from fieldmap.estimate.map import (
     map_magnet,
     map_title,
 )
-from fieldmap.magnet.length import length_results
+from fieldmap.magnet.fringe_findings import line_fringes
+from fieldmap.magnet.functionals import line_functionals
 from fieldmap.magnet.results import LineResults, Results
-from fieldmap.magnet.shape import shape_results
+from fieldmap.magnet.tail_findings import tail_findings
 from fieldmap.magnet.verdict import decide
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Mapping, Sequence
 
     import xarray as xr
 
+    from fieldmap.estimate.fieldline import FieldLine
     from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
 
 __all__ = ["evaluate"]
 
+WITHHELD: Final[Mapping[str, tuple[str, ...]]] = MappingProxyType(
+    {
+        "magnetic_length": ("no-central-field",),
+        "boundary_in": ("no-central-field",),
+        "boundary_out": ("no-central-field",),
+        "magnetic_centre": ("no-central-field",),
+        "tail_in": ("no-central-field", "tail-not-converging"),
+        "tail_out": ("no-central-field", "tail-not-converging"),
+        "integrated_field_total": ("no-central-field", "tail-not-converging"),
+        "fringe_integral_in": ("no-central-field",),
+        "fringe_integral_out": ("no-central-field",),
+    }
+)
+"""Results that are not always given, and the findings that say why they are not."""
+
 
 def evaluate(
-    fmap: xr.Dataset, campaign: Campaign | None = None, *, axis: Axis | None = None, k: float = 2.0
+    fmap: xr.Dataset,
+    campaign: Campaign | None = None,
+    *,
+    axis: Axis | None = None,
+    k: float = 2.0,
+    fringe: bool = True,
+    profiles: Sequence[FieldLine] | None = None,
 ) -> Results:
     """Evaluate a map: results with uncertainties, findings, verdicts.
 
@@ -44,7 +69,11 @@ def evaluate(
     axis : Axis, optional
         Other limits and flat window than the campaign's.
     k : float
-        Coverage factor of the verdicts' interval.
+        Coverage factor of the verdicts' interval, where a limit names none of its own.
+    fringe : bool
+        Whether to fit the fringes as well: some tenths of a second a line.
+    profiles : sequence of FieldLine, optional
+        The lines of this very map from `map_lines`, to evaluate it again and again.
 
     Returns
     -------
@@ -54,6 +83,9 @@ def evaluate(
     ------
     RefusedError
         Limits or flat window outside the mapped range.
+    InputError
+        A limit on a result that the map does not give; the sentence says why, where a finding
+        does.
 
     Examples
     --------
@@ -66,36 +98,56 @@ def evaluate(
     """
     axis = axis or (campaign.axis if campaign else map_axis(fmap))
     limits = campaign.limits if campaign else map_limits(fmap)
+    magnet = map_magnet(fmap)
+    profiles = map_lines(fmap) if profiles is None else profiles
+    shapes = [line_fringes(fmap, axis, i) if fringe else ({}, []) for i in range(len(profiles))]
     lines = tuple(
-        LineResults(line.x, line.y, {**length_results(line, axis), **shape_results(line, axis)})
-        for line in map_lines(fmap)
+        LineResults(line.x, line.y, {**line_functionals(line, axis, magnet.gap)}, fringes)
+        for line, (fringes, _) in zip(profiles, shapes, strict=True)
+    )
+    tails = (
+        tail_findings(profile, axis, magnet.gap, line.results, limits)
+        for profile, line in zip(profiles, lines, strict=True)
     )
     name, sha256 = map_title(fmap)
+    remarks = chain(*tails, *(remarks for _, remarks in shapes))
+    findings = (*map_findings(fmap), *_remarks(lines, magnet), *remarks)
     return Results(
         campaign=name,
         sha256=sha256,
         lines=lines,
-        findings=(*map_findings(fmap), *_remarks(lines, map_magnet(fmap))),
+        findings=findings,
         verdicts=tuple(
             decide(limit, line.results[limit.result], index, k)
-            for limit in _known(limits, lines)
+            for limit in _known(limits, lines, findings)
             for index, line in enumerate(lines)
         ),
     )
 
 
-def _known(limits: Sequence[Limit], lines: Sequence[LineResults]) -> Sequence[Limit]:
-    """Refuse a limit on a result that this map does not give."""
+def _known(
+    limits: Sequence[Limit], lines: Sequence[LineResults], findings: Sequence[Finding]
+) -> Sequence[Limit]:
+    """Refuse a limit on a result that this map does not give, with the reason if one is known."""
     for i, limit in enumerate(limits, start=1):
         for line in lines:
             if limit.result not in line.results:
                 raise InputError(
                     f"[[limits]] {i}",
-                    f"result '{limit.result}', which this map does not give",
+                    f"result '{limit.result}', which {_why_not(limit.result, findings)}",
                     f"one of {', '.join(line.results)}",
                     "judge another result",
                 )
     return limits
+
+
+def _why_not(result: str, findings: Sequence[Finding]) -> str:
+    """Why a result is not given, as the end of a sentence."""
+    codes = WITHHELD.get(result, ())
+    reasons = [one.text.rstrip(".") for one in findings if one.code in codes]
+    if not reasons:
+        return "this map does not give"
+    return f"is withheld here ({reasons[0]})"
 
 
 def _remarks(lines: Sequence[LineResults], magnet: Magnet) -> list[Finding]:

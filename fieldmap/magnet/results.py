@@ -2,11 +2,12 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from fieldmap.estimate.findings import Finding
+    from fieldmap.magnet.fringe import Fringe
     from fieldmap.magnet.quantity import Quantity
     from fieldmap.magnet.verdict import Verdict
 
@@ -23,11 +24,14 @@ class LineResults:
         Transverse position, m.
     results : dict of str to Quantity
         By the keys of the design: ``integrated_field``, ``central_field``, …
+    fringes : dict of str to Fringe
+        ``fringe_in``, ``fringe_out``, where they could be fitted.
     """
 
     x: float
     y: float
     results: dict[str, Quantity]
+    fringes: dict[str, Fringe] = field(default_factory=dict)
 
 
 @dataclass(frozen=True)
@@ -70,7 +74,9 @@ class Results:
                 {
                     "x": line.x,
                     "y": line.y,
-                    "results": {key: one.as_dict() for key, one in line.results.items()},
+                    "results": {
+                        key: one.as_dict() for key, one in (line.results | line.fringes).items()
+                    },
                 }
                 for line in self.lines
             ],

@@ -1,7 +1,7 @@
 """Peak field and homogeneity: extremes of the profile, by draws from its covariance.
 
 An extreme is no linear functional: on a flat top the place of the peak is decided by noise.
-So the spread is taken over profiles drawn from the covariance, with a generator of its own.
+So the spread is taken over profiles drawn from the covariance of the line.
 """
 
 from __future__ import annotations
@@ -22,10 +22,7 @@ __all__ = ["shape_results"]
 
 Floats = npt.NDArray[np.float64]
 
-DRAWS = 400
 PER_KNOT = 4  # points at which the extremes are looked for
-SEED = 20_061  # the same map gives the same digits
-SEARCH = "search for the extreme,"
 IN_REACH = 8.0  # points that far (in u) below the peak cannot become it
 
 
@@ -89,54 +86,51 @@ class _Sample:
         Rows of the field at the points.
     used : int array
         Coefficients that bear on the points.
-    coefficients : (DRAWS, used) array
-        Drawn deviations of those.
     """
 
     line: FieldLine
     rows: Floats
     used: npt.NDArray[np.intp]
-    coefficients: Floats
 
     @property
     def deviations(self) -> Floats:
         """Drawn deviations of the field, one row a draw."""
-        return np.asarray(self.coefficients @ self.rows[:, self.used].T)
+        return np.asarray(self.line.draws[:, self.used] @ self.rows[:, self.used].T)
 
-    def result(self, value: float, drawn: Floats, tangent: Floats, unit: str) -> Functional:
+    def result(
+        self, value: float, drawn: Floats, tangent: Floats, unit: str, what: str
+    ) -> Functional:
         """A result from its drawn values: as much of it linear in the profile as they bear out.
 
         The part of the spread along the tangent is regressed out and keeps its gradient; what
         is left comes from the search for the extreme.
         """
         moved = drawn - value
-        along = self.coefficients @ tangent[self.used]
+        along = self.line.draws @ tangent
         square = float(along @ along)
         share = float(along @ moved) / square if square > 0 else 0.0
         rest = _rms(moved - share * along)
-        return functional(self.line, value, share * tangent, unit, {f"{SEARCH} {unit}": rest})
+        return functional(self.line, value, share * tangent, unit, {f"search for the {what}": rest})
 
 
 def _sample(line: FieldLine, s: Floats) -> _Sample:
     rows = line.spline.field_rows(s)
-    used = np.flatnonzero(rows.any(axis=0))
-    values, vectors = np.linalg.eigh(line.covariance[np.ix_(used, used)])
-    root = vectors * np.sqrt(np.maximum(values, 0))
-    normal = np.random.default_rng(SEED).standard_normal((DRAWS, len(used)))
-    return _Sample(line, rows, used, normal @ root.T)
+    return _Sample(line, rows, np.flatnonzero(rows.any(axis=0)))
 
 
 def _peak(line: FieldLine, s: Floats) -> dict[str, Functional]:
     """Largest |B| and its place, a parabola through the three highest points."""
     b, sample = line.field(s), _sample(line, s)
-    place, height = _summit(s, b)
-    drawn = np.array([_summit(s, b + deviation) for deviation in sample.deviations])
+    places, heights = _summits(s, np.vstack([b, b + sample.deviations]))
+    place, height = float(places[0]), float(heights[0])
     at = np.array([place])
     slope, bend = line.spline.field_rows(at, 1)[0], float(line.field(at, 2)[0])
     sideways = -slope / bend if bend != 0 else np.zeros_like(slope)
     return {
-        "peak_field": sample.result(height, drawn[:, 1], line.spline.field_rows(at)[0], "T"),
-        "peak_position": sample.result(place, drawn[:, 0], sideways, "m"),
+        "peak_field": sample.result(
+            height, heights[1:], line.spline.field_rows(at)[0], "T", "peak field"
+        ),
+        "peak_position": sample.result(place, places[1:], sideways, "m", "peak position"),
     }
 
 
@@ -147,19 +141,29 @@ def _flatness(line: FieldLine, s: Floats) -> Functional:
     drawn = _homogeneity(b + sample.deviations)
     spread = sample.rows[b.argmax()] - sample.rows[b.argmin()]
     tangent = spread / (2 * abs(level)) - value / level * sample.rows.mean(axis=0)
-    return sample.result(value, drawn, tangent, "1")
+    return sample.result(value, drawn, tangent, "1", "extremes")
 
 
-def _summit(s: Floats, b: Floats) -> tuple[float, float]:
-    i = int(np.argmax(np.abs(b)))
-    if not 0 < i < len(s) - 1 or not np.isclose(s[i + 1] - s[i], s[i] - s[i - 1]):
-        return float(s[i]), float(b[i])
-    left, mid, right = b[i - 1 : i + 2]
-    bend = left - 2 * mid + right
-    if bend == 0:
-        return float(s[i]), float(mid)
-    shift = float(np.clip(0.5 * (left - right) / bend, -0.5, 0.5))
-    return float(s[i] + shift * (s[i + 1] - s[i])), float(mid - 0.25 * (left - right) * shift)
+def _summits(s: Floats, profiles: Floats) -> tuple[Floats, Floats]:
+    """Place and height of the largest |B| of each profile, one profile a row.
+
+    By a parabola through three points, where the highest has an even neighbour to each side.
+    """
+    each = np.arange(len(profiles))
+    top = np.argmax(np.abs(profiles), axis=1)
+    if len(s) < 3:
+        return s[top], profiles[each, top]
+    mid = np.clip(top, 1, len(s) - 2)
+    left, centre, right = (profiles[each, mid + step] for step in (-1, 0, 1))
+    bend = left - 2 * centre + right
+    even = np.isclose(s[mid + 1] - s[mid], s[mid] - s[mid - 1])
+    smooth = (top == mid) & even & (bend != 0)
+    shift = np.zeros(len(profiles))
+    np.divide(0.5 * (left - right), bend, out=shift, where=smooth)
+    shift = np.clip(shift, -0.5, 0.5)
+    place = np.where(smooth, s[mid] + shift * (s[mid + 1] - s[mid]), s[top])
+    height = np.where(smooth, centre - 0.25 * (left - right) * shift, profiles[each, top])
+    return place, height
 
 
 def _homogeneity(b: Floats) -> Floats:

@@ -189,7 +189,17 @@ def _axis(raw: object, place: str) -> Axis:
         found = f"from {left:g} m to {right:g} m"
         expected = f"a window inside integrate, {start:g} m to {stop:g} m"
         raise InputError(key_place(place, "flat"), found, expected, "mend one of the two")
+    for key in ("tail_in", "tail_out"):
+        _check_pair(axis, key, place)
     return axis
+
+
+def _check_pair(axis: Axis, key: str, place: str) -> None:
+    """A tail known otherwise comes with its uncertainty."""
+    named = [name for name in (key, f"u_{key}") if getattr(axis, name) is not None]
+    if len(named) == 1:
+        found = f"{named[0]!r} alone"
+        raise InputError(place, found, f"'{key}' and 'u_{key}' together", "add the other one")
 
 
 def _passes(
@@ -345,10 +355,11 @@ def _limit(entry: Mapping[str, Any], place: str) -> Limit:
         raise InputError(where, stands, f"a result among {listed(known)}", "name the result")
     unit = sections.RESULT_UNITS[one_of(result, known, where, "a result among")]
     values = read_section(entry, sections.limit_keys(unit), place)
-    given = set(values) - {"result"}
+    rule = {key: values[key] for key in ("k", "guard") if key in values}
+    given = set(values) - {"result"} - set(rule)
     if given == {"nominal", "tolerance"}:
         lower = values["nominal"] - values["tolerance"]
-        return Limit(result, lower, values["nominal"] + values["tolerance"])
+        return Limit(result, lower, values["nominal"] + values["tolerance"], **rule)
     if not given or given - {"lower", "upper"}:
         found = f"the keys {listed(sorted(given))}" if given else "no limit"
         expected = "'nominal' and 'tolerance', or 'lower' or 'upper' or both"
@@ -357,4 +368,4 @@ def _limit(entry: Mapping[str, Any], place: str) -> Limit:
     if lower is not None and upper is not None and not lower < upper:
         found = f"'lower' {lower:g} and 'upper' {upper:g}"
         raise InputError(place, found, "'lower' below 'upper'", "exchange or mend the two")
-    return Limit(result, lower, upper)
+    return Limit(result, lower, upper, **rule)

@@ -135,11 +135,25 @@ Reference = PointReference | ZeroReference | FlipReference
 
 @dataclass(frozen=True)
 class Limit:
-    """Lower and upper limit of one result, SI; None leaves that side open."""
+    """Lower and upper limit of one result, and how strictly it is judged.
+
+    Parameters
+    ----------
+    result : str
+        Key of the result.
+    lower, upper : float or None
+        SI; None leaves that side open.
+    k : float, optional
+        Coverage factor of the expanded uncertainty U = k·u; that of the evaluation if None.
+    guard : float
+        Guard band in units of U, to either side of a limit; 0 is simple acceptance.
+    """
 
     result: str
     lower: float | None
     upper: float | None
+    k: float | None = None
+    guard: float = 1.0
 
 
 @dataclass(frozen=True)
@@ -155,11 +169,47 @@ class Magnet:
 
 @dataclass(frozen=True)
 class Axis:
-    """The mapped line: direction of travel, limits of the integral, flat window (m)."""
+    """The mapped line, and where results are taken on it.
+
+    Parameters
+    ----------
+    travel : str
+        Direction of travel.
+    integrate, flat : (float, float)
+        Limits of the integral and flat window, m.
+    tail_in, tail_out : float, optional
+        Integral beyond the lower and the upper limit where it is known otherwise, T m.
+    u_tail_in, u_tail_out : float, optional
+        Their standard uncertainties, T m.
+    """
 
     travel: str
     integrate: tuple[float, float]
     flat: tuple[float, float]
+    tail_in: float | None = None
+    u_tail_in: float | None = None
+    tail_out: float | None = None
+    u_tail_out: float | None = None
+
+    def moved(
+        self,
+        integrate: tuple[float, float] | None = None,
+        flat: tuple[float, float] | None = None,
+    ) -> Axis:
+        """The same line with other limits or another flat window (m).
+
+        A tail that is known beyond a limit is not known beyond another one, so it is dropped
+        where its limit moves.
+        """
+        start, stop = integrate or self.integrate
+        stays = (start == self.integrate[0], stop == self.integrate[1])
+        return Axis(
+            self.travel,
+            (start, stop),
+            flat or self.flat,
+            *((self.tail_in, self.u_tail_in) if stays[0] else (None, None)),
+            *((self.tail_out, self.u_tail_out) if stays[1] else (None, None)),
+        )
 
 
 @dataclass(frozen=True, eq=False)

@@ -29,6 +29,14 @@ class Wire:
         Width of the bundle along the travel, m.
     polarity : int
         +1 or -1; -1 turns the sign of every reading.
+    u_tilt : float
+        Standard uncertainty of the angle between the probe and the field component, rad.
+    temperature_coefficient : float
+        Relative change of the gain per kelvin, 1/K.
+    reference_temperature : float
+        Temperature at which the stated size holds, degC.
+    u_temperature : float
+        Standard uncertainty of the probe's temperature, K.
     """
 
     name: str
@@ -37,6 +45,10 @@ class Wire:
     u_active_length: float = 0.0
     width: float = 0.0
     polarity: int = 1
+    u_tilt: float = 0.0
+    temperature_coefficient: float = 0.0
+    reference_temperature: float = 20.0
+    u_temperature: float = 0.0
 
     @property
     def gain(self) -> float:
@@ -77,6 +89,16 @@ class Coil:
         Extent along the travel, m; the diameter of a round coil.
     polarity : int
         +1 or -1; -1 turns the sign of every reading.
+    u_window : float
+        Standard uncertainty of the window, m.
+    u_tilt : float
+        Standard uncertainty of the angle between the probe and the field component, rad.
+    temperature_coefficient : float
+        Relative change of the gain per kelvin, 1/K.
+    reference_temperature : float
+        Temperature at which the stated size holds, degC.
+    u_temperature : float
+        Standard uncertainty of the probe's temperature, K.
     """
 
     name: str
@@ -85,6 +107,11 @@ class Coil:
     u_effective_area: float = 0.0
     window: float = 0.0
     polarity: int = 1
+    u_window: float = 0.0
+    u_tilt: float = 0.0
+    temperature_coefficient: float = 0.0
+    reference_temperature: float = 20.0
+    u_temperature: float = 0.0
 
     @property
     def gain(self) -> float:

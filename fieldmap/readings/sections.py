@@ -95,6 +95,13 @@ def _uncertainty(name: str, unit: str) -> Key:
 
 _POLARITY: Final = Key("polarity", whole(allowed=(1, -1)))
 _LINE: Final = (Key("x", quantity("m")), Key("y", quantity("m")))
+_MOUNT: Final = (
+    _POLARITY,
+    _uncertainty("u_tilt", "rad"),
+    Key("temperature_coefficient", quantity("1/K")),
+    Key("reference_temperature", quantity("degC")),
+    _uncertainty("u_temperature", "K"),
+)
 _TURNED: Final = "give its size, and set polarity = -1 if the probe turns the sign"
 
 TOP: Final = (
@@ -123,6 +130,10 @@ AXIS: Final = (
     Key("travel", choice("x", "y", "z", "s"), required=True),
     Key("integrate", span("m"), required=True),
     Key("flat", span("m"), required=True),
+    Key("tail_in", quantity("T m")),
+    _uncertainty("u_tail_in", "T m"),
+    Key("tail_out", quantity("T m")),
+    _uncertainty("u_tail_out", "T m"),
 )
 
 _WIRE: Final = (
@@ -130,7 +141,7 @@ _WIRE: Final = (
     Key("active_length", quantity("m", "positive", _TURNED), required=True),
     _uncertainty("u_active_length", "m"),
     Key("width", quantity("m", "not negative")),
-    _POLARITY,
+    *_MOUNT,
 )
 
 _COIL: Final = (
@@ -138,7 +149,8 @@ _COIL: Final = (
     Key("effective_area", quantity("m^2", "positive", _TURNED), required=True),
     _uncertainty("u_effective_area", "m^2"),
     Key("window", quantity("m", "positive"), required=True),
-    _POLARITY,
+    _uncertainty("u_window", "m"),
+    *_MOUNT,
 )
 
 PROBES: Final[Mapping[str, Kind]] = MappingProxyType(
@@ -226,4 +238,6 @@ def limit_keys(unit: str) -> tuple[Key, ...]:
         Key("tolerance", quantity(unit, "positive")),
         Key("lower", quantity(unit)),
         Key("upper", quantity(unit)),
+        Key("k", number("positive")),
+        Key("guard", number("not negative")),
     )

@@ -10,14 +10,21 @@ from typing import TYPE_CHECKING, Final
 if TYPE_CHECKING:
     from collections.abc import Iterable
 
-__all__ = ["Scale", "like", "plain", "rounded", "scale_for"]
+__all__ = ["Scale", "last_place", "like", "plain", "rounded", "scale_for", "to_place"]
 
 EXACT: Final = 1e-14  # an uncertainty below this share of the value has no digits to show
 DIGITS: Final = 2  # significant digits of an uncertainty
 NOT_KNOWN: Final = "not known"
 
 _PREFIXES: Final = ((0.1, "", 1.0), (1e-4, "m", 1e3), (1e-7, "µ", 1e6), (0.0, "n", 1e9))
-_PREFIXED: Final = {"T": "T", "T m": "T·m", "V s": "V·s"}
+_PREFIXED: Final = {
+    "T": "T",
+    "T m": "T·m",
+    "V": "V",
+    "V s": "V·s",
+    "V s s^-0.5": "V·s/√s",
+    "V s/s": "V·s/s",
+}
 _FIXED: Final = {"m": ("mm", 1e3), "1": ("1e-4", 1e4), "s": ("s", 1.0)}
 
 
@@ -95,8 +102,8 @@ def rounded(value: float, half_width: float) -> tuple[str, str]:
         return (plain(value) if math.isfinite(value) else NOT_KNOWN), NOT_KNOWN
     if half_width <= EXACT * abs(value):
         return plain(value), "0"
-    place = _last_place(half_width)
-    return _to_place(value, place), _to_place(half_width, place)
+    place = last_place(half_width)
+    return to_place(value, place), to_place(half_width, place)
 
 
 def like(value: float, example: str) -> str:
@@ -117,14 +124,21 @@ def plain(value: float, digits: int = 9) -> str:
     return f"{value:.{digits}g}"
 
 
-def _last_place(half_width: float) -> int:
+def last_place(half_width: float) -> int:
     """Power of ten of the last digit to keep; 9.96 becomes 10, not 10.0."""
     place = math.floor(math.log10(half_width)) - DIGITS + 1
     in_places = decimal.Decimal(repr(float(half_width))).scaleb(-place)
     return place + 1 if round(in_places) >= 10**DIGITS else place
 
 
-def _to_place(value: float, place: int) -> str:
+def to_place(value: float, place: int) -> str:
+    """A number rounded to the digit of a power of ten, written out.
+
+    Examples
+    --------
+    >>> to_place(8.4376, -2), to_place(151.4, 1)
+    ('8.44', '150')
+    """
     with decimal.localcontext(prec=400):
         quantum = decimal.Decimal(1).scaleb(place)
         number = decimal.Decimal(repr(float(value))).quantize(quantum)

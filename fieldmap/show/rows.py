@@ -208,29 +208,50 @@ def verdict_words(verdict: Verdict, results: Results, limits: Sequence[Limit] = 
     where = ""
     if len(results.lines) > 1:
         where = f", {line_title(results.lines[verdict.line]).lower()}"
-    bounds = next((_bounds(limit) for limit in limits if limit.result == verdict.result), "")
-    reason = "; the interval crosses a limit" if verdict.decision == "undecided" else ""
+    limit = next((one for one in limits if one.result == verdict.result), None)
+    bounds = "" if limit is None else f" ({_between(limit, limit.lower, limit.upper)})"
+    rule = "" if limit is None or verdict.band is None else f", {_rule(limit, verdict.band)}"
+    reason = ""
+    if verdict.decision == "undecided":
+        plainly = limit is None or limit.guard == 1
+        reason = "; the interval crosses a limit" if plainly else "; the value is in a guard band"
     return VerdictWords(
         verdict.result,
         DECISION_WORDS[verdict.decision],
         f"{label(verdict.result)}{where}{bounds}: "
-        f"probability of conformity {_percent(verdict.probability)}{reason}.",
+        f"probability of conformity {_percent(verdict.probability)}{rule}{reason}.",
     )
 
 
-def _bounds(limit: Limit) -> str:
-    """Limits of a result in a handy unit."""
+def _between(limit: Limit, low: float | None, high: float | None, step: float = 0.0) -> str:
+    """An interval of a result in a handy unit, to the digits of a step if one is given."""
     given = [bound for bound in (limit.lower, limit.upper) if bound is not None]
     scale = scale_for(RESULT_UNITS.get(limit.result, "1"), given)
-    low, high = (
-        None if bound is None else plain(bound * scale.factor)
-        for bound in (limit.lower, limit.upper)
+    lower, upper = (
+        None if bound is None else _bound(bound * scale.factor, step * scale.factor)
+        for bound in (low, high)
     )
-    if low is None:
-        return f" (at most {high} {scale.unit})"
-    if high is None:
-        return f" (at least {low} {scale.unit})"
-    return f" ({low} to {high} {scale.unit})"
+    if lower is None:
+        return f"at most {upper} {scale.unit}"
+    if upper is None:
+        return f"at least {lower} {scale.unit}"
+    return f"{lower} to {upper} {scale.unit}"
+
+
+def _bound(value: float, step: float) -> str:
+    return rounded(value, step)[0] if step > 0 else plain(value)
+
+
+def _rule(limit: Limit, band: float) -> str:
+    """What is accepted, and the guard band where it is a special one."""
+    low = None if limit.lower is None else limit.lower + band
+    high = None if limit.upper is None else limit.upper - band
+    special = [] if limit.guard == 1 else [f"guard band {limit.guard:g}·U"]
+    special += [] if limit.k is None else [f"k = {limit.k:g}"]
+    how = f" ({', '.join(special)})" if special else ""
+    if low is not None and high is not None and low > high:
+        return f"the guard bands leave nothing to accept{how}"
+    return f"accepted {_between(limit, low, high, band)}{how}"
 
 
 def _percent(probability: float) -> str:

@@ -9,13 +9,16 @@ import numpy as np
 import pytest
 
 import fieldmap
+from fieldmap.magnet.budget import budget
 from fieldmap.shipped import demo_folder
+from fieldmap.show.budget_plots import budget_words
 from fieldmap.show.captions import field_words
 from fieldmap.show.figures import LEFT, RIGHT
-from fieldmap.show.look import PINK, VERMILION, pass_style
+from fieldmap.show.look import BLUE, PINK, VERMILION, pass_style
 from fieldmap.show.panels.limits import plain_step
 from fieldmap.show.picture import SIZE
 from fieldmap.show.profile import field_at
+from fieldmap.show.report import report_html
 from fieldmap.show.rows import result_rows
 
 from .notebook_page import (
@@ -30,6 +33,11 @@ from .notebook_page import (
 )
 
 pytestmark = pytest.mark.browser
+
+IN_SIGHT = """e => {
+  const box = e.getBoundingClientRect();
+  return document.elementFromPoint(box.x + box.width / 2, box.y + box.height / 2) === e;
+}"""
 
 
 @pytest.fixture(scope="module")
@@ -95,6 +103,16 @@ def test_magnetic_length(lab, page, shoot, campaign, fmap):
     assert "limits-moved" in page.locator(".fm-findings-box").inner_text()
     shoot("check_magnetic_length-moved")
 
+    # where the uncertainty comes from, following the limits
+    page.locator(".fm-kind button", has_text="Budget").click()
+    image = page.locator(".fm-picture-box img")
+    words = budget_words(budget(fmap, axis=moved)["magnetic_length"])
+    eventually(page, lambda: image.get_attribute("alt"), words)
+    shoot("check_magnetic_length-budget")
+    page.locator(".fm-of select").select_option(label="Central field")
+    words = budget_words(budget(fmap, axis=moved)["central_field"])
+    eventually(page, lambda: image.get_attribute("alt"), words)
+
     # a pass switched off with the space bar, seen in the raw passes
     page.locator(".fm-kind button", has_text="Raw passes").click()
     colour = pass_style(1).colour  # nothing in the profile has it
@@ -116,12 +134,32 @@ def test_magnetic_length(lab, page, shoot, campaign, fmap):
     page.locator(".fm-written p").wait_for()
     out = root / "fieldmap-results" / "gap_dipole"
     assert (out / "map.nc").stat().st_size > 0
+    report = (out / "report.html").read_text(encoding="utf-8")
+    for cell in results_shown(page)["magnetic_length"]:
+        assert cell.partition(".")[2] in report
+    assert report_html(fieldmap.load_map(out / "map.nc")) == report
     written = json.loads((out / "results.json").read_text(encoding="utf-8"))
     shown = float(results_shown(page)["magnetic_length"][0])
     value = written["lines"][0]["results"]["magnetic_length"]["value"]
     assert shown == pytest.approx(value * 1e3, abs=1e-3)
     scroll_to(page, ".fm-findings-box")
     shoot("check_magnetic_length-findings")
+
+    # below the panel, the same by calls: budget as a chart and as a table, the report with a link
+    selector = 'img[alt^="Uncertainty of magnetic length"]'
+    chart = page.locator(selector)
+    assert chart.get_attribute("alt") == budget_words(budget(fmap)["magnetic_length"])
+    assert page.locator(".fm-budget tr.fm-sum").count() == 2
+    chart.evaluate("e => e.scrollIntoView({block: 'center'})")
+    eventually(page, lambda: chart.evaluate(IN_SIGHT), expected=True)
+    assert amount(page, BLUE, selector) > 5000  # the bars
+    shoot("check_magnetic_length-budget-calls")
+    by_calls = root / "fieldmap-results" / "by_calls" / "report.html"
+    assert by_calls.read_text(encoding="utf-8") == report_html(fmap)
+    link = page.locator("a", has_text="by_calls/report.html")
+    assert link.count() == 1
+    link.scroll_into_view_if_needed()
+    shoot("check_magnetic_length-report-link")
 
     # a wrong path is said in words, and no number stays
     path = page.locator(".fm-path input")

@@ -5,9 +5,10 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any, Final, Literal
 
 from fieldmap.show import figures
+from fieldmap.show.budget_plots import budget_figure
 from fieldmap.show.panels.parts import column, hooked, row
 from fieldmap.show.picture import blank_figure, paint
-from fieldmap.show.rows import line_title
+from fieldmap.show.rows import label, line_title
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -18,7 +19,7 @@ if TYPE_CHECKING:
 
 __all__ = ["FigurePanel", "Kind", "Part"]
 
-Kind = Literal["profile", "passes", "residuals", "uncertainty"]
+Kind = Literal["profile", "passes", "residuals", "uncertainty", "budget"]
 Part = Literal["", "in", "out"]
 GAPS_INSIDE: Final = 3.0  # of a fringe, from its boundary towards the middle
 GAPS_OUTSIDE: Final = 6.0
@@ -27,7 +28,9 @@ NAMES: Final[dict[Kind, str]] = {
     "passes": "Raw passes",
     "residuals": "Residuals",
     "uncertainty": "Uncertainty",
+    "budget": "Budget",
 }
+FIRST_BUDGET: Final = "magnetic_length"
 NOTHING: Final = '<p class="fm-remark fm-empty">No picture: there is no map.</p>'
 
 
@@ -45,6 +48,8 @@ class FigurePanel:
         Which figure.
     line : ipywidgets.Dropdown
         Which line of the map; only shown where there are several.
+    result : ipywidgets.Dropdown
+        Which result the budget is of; only shown beside the budget.
     figure : matplotlib.figure.Figure
         The figure that is drawn on, again and again.
     picture : ipywidgets.HTML
@@ -75,11 +80,16 @@ class FigurePanel:
             ipywidgets.Dropdown(description="Line", style={"description_width": "36px"}), "fm-line"
         )
         self.line.layout.display = "none"
+        self.result = hooked(
+            ipywidgets.Dropdown(description="Of", style={"description_width": "24px"}), "fm-of"
+        )
+        self.result.layout.display = "none"
         self.picture = hooked(ipywidgets.HTML(NOTHING), "fm-picture-box")
-        self.bar = row((self.kind, self.line), "fm-figure-bar")
+        self.bar = row((self.kind, self.line, self.result), "fm-figure-bar")
         self.widget = column((self.bar, self.picture), "fm-figure")
         self.kind.observe(self._on_choice, names="value")
         self.line.observe(self._on_choice, names="value")
+        self.result.observe(self._on_choice, names="value")
         state.listen(self._on_change)
 
     @property
@@ -99,13 +109,20 @@ class FigurePanel:
     def draw(self) -> None:
         """Draw what is chosen."""
         with self.state.lock:
-            if self.state.campaign is None or self.state.axis is None:
-                self.picture.value = NOTHING
-                return
-            if self.state.fmap is None and self.kind.value != "passes":
+            self.result.layout.display = "" if self.kind.value == "budget" else "none"
+            if not self._drawable():
                 self.picture.value = NOTHING
                 return
             self.picture.value = paint(self.figure, self._drawn()).html
+
+    def _drawable(self) -> bool:
+        """Whether there is what the chosen figure shows."""
+        state = self.state
+        if state.campaign is None or state.axis is None:
+            return False
+        if self.kind.value == "budget" and not state.lines:
+            return False
+        return state.fmap is not None or self.kind.value == "passes"
 
     def _drawn(self) -> str:
         """Draw on the figure; its text alternative."""
@@ -121,6 +138,8 @@ class FigurePanel:
         line = self.line.value or 0
         if self.kind.value == "uncertainty":
             return figures.uncertainty_figure(self.figure, state.fmap, state.axis, line, self.span)
+        if self.kind.value == "budget":
+            return budget_figure(self.figure, state.fmap, self.result.value, state.axis, line)
         if self.decades:
             return figures.decay_figure(
                 self.figure, state.fmap, state.axis, line, self.span, self.cursor
@@ -137,6 +156,7 @@ class FigurePanel:
     def _on_change(self, topic: Topic) -> None:
         if topic in {"campaign", "results"}:  # results come after every map
             self._offer_lines()
+            self._offer_results()
             self.draw()
 
     def _offer_lines(self) -> None:
@@ -148,4 +168,18 @@ class FigurePanel:
         self.line.options = [(title, i) for i, title in enumerate(titles)]
         self.line.value = 0
         self.line.layout.display = "" if len(titles) > 1 else "none"
+        self._following = False
+
+    def _offer_results(self) -> None:
+        """Offer the results of the lines to take apart; the chosen one stays if it is there."""
+        if not self.state.lines:
+            return
+        keys = list(self.state.lines[self.line.value or 0].results)
+        if keys == [key for _, key in self.result.options]:
+            return
+        first = FIRST_BUDGET if FIRST_BUDGET in keys else keys[0]
+        chosen = self.result.value if self.result.value in keys else first
+        self._following = True
+        self.result.options = [(label(key), key) for key in keys]
+        self.result.value = chosen
         self._following = False

@@ -1,4 +1,4 @@
-"""Write map.nc and results.json."""
+"""Write map.nc, results.json and report.html."""
 
 from __future__ import annotations
 
@@ -45,7 +45,8 @@ class SavePanel:
             description="Folder", continuous_update=False, style={"description_width": "46px"}
         )
         hooked(self.folder, "fm-folder")
-        self.write = button("Write files", "Write map.nc and results.json there", "fm-write")
+        files = "map.nc, results.json and report.html"
+        self.write = button("Write files", f"Write {files} there", "fm-write")
         self.told = hooked(ipywidgets.HTML(), "fm-written")
         self.widget = column((row((self.folder, self.write)), self.told), "fm-save")
         self._propose()

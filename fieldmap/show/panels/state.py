@@ -20,10 +20,10 @@ from fieldmap.errors import FieldmapError, InputError
 from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
-from fieldmap.magnet.reduction import save_reduction
 from fieldmap.readings.campaign import load
 from fieldmap.readings.passes import Campaign
 from fieldmap.shipped import PACKAGE, demo_folder
+from fieldmap.show.handover import save_reduction
 
 if TYPE_CHECKING:
     import os
@@ -170,18 +170,14 @@ class Reduction:
         with self.lock:
             if self.axis is None:
                 return
-            moved = replace(
-                self.axis,
-                integrate=integrate or self.axis.integrate,
-                flat=flat or self.axis.flat,
-            )
+            moved = self.axis.moved(integrate, flat)
             if moved == self.axis:
                 return
             self.axis = moved
             self._evaluate()
 
     def save(self, folder: str | os.PathLike[str]) -> None:
-        """Write map.nc and results.json with the passes and limits in use.
+        """Write map.nc, results.json and report.html with the passes and limits in use.
 
         Parameters
         ----------
@@ -233,7 +229,10 @@ class Reduction:
         place = _writable(folder)
         if self.fmap is None or self.results is None:
             raise InputError("save", "no results", "a map with results", "mend the campaign first")
-        self.saved = save_reduction(self._marked(self.fmap), self.results, place)
+        marked = self._marked(self.fmap)
+        # what the panels show goes without the fringes, which take their time
+        results = evaluate(marked, self.campaign, axis=self.axis)
+        self.saved = save_reduction(marked, results, place)
 
     def _solve(self) -> None:
         self.fmap = self.results = None
@@ -272,7 +271,7 @@ class Reduction:
         assert self.axis is not None
         _check_order(self.axis)
         marked = self._marked(self.fmap)
-        self.results = evaluate(marked, self.campaign, axis=self.axis)
+        self.results = evaluate(marked, self.campaign, axis=self.axis, fringe=False)
 
     def _marked(self, fmap: xr.Dataset) -> xr.Dataset:
         """The map with the limits in use and a note of every departure from the campaign file."""

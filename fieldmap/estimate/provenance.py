@@ -1,0 +1,156 @@
+"""What a map tells of how it came about: probes, references, unknowns, and the evidence itself."""
+
+from __future__ import annotations
+
+import json
+from typing import TYPE_CHECKING, Any, NamedTuple
+
+import numpy as np
+import numpy.typing as npt
+
+from fieldmap.errors import InputError
+from fieldmap.estimate.evidence_labels import line_evidence
+from fieldmap.estimate.parameters import Nuisance
+from fieldmap.readings.probe import Coil, Integrator, Probe, Stage, Wire
+
+if TYPE_CHECKING:
+    import xarray as xr
+
+    from fieldmap.estimate.evidence import Evidence
+
+__all__ = [
+    "Joint",
+    "line_reference_numbers",
+    "map_evidence",
+    "map_integrators",
+    "map_joint",
+    "map_probes",
+    "map_references",
+    "map_stage",
+    "map_unknowns",
+]
+
+Floats = npt.NDArray[np.float64]
+
+
+class Joint(NamedTuple):
+    """Estimate of all unknowns of one line: coefficients of B, then nuisances.
+
+    Parameters
+    ----------
+    values : (size + m,) array
+        T, then nuisances in units of their standard uncertainty before the scan.
+    covariance : (size + m, size + m) array
+        Their covariance.
+    """
+
+    values: Floats
+    covariance: Floats
+
+
+def map_joint(fmap: xr.Dataset, line: int = 0) -> Joint:
+    """Coefficients and nuisances of one line with their joint covariance.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+    line : int
+        Index of the line.
+
+    Returns
+    -------
+    Joint
+    """
+    at = _at(fmap, line)
+    n, m = int(at["knots"].values[2]), len(_line_facts(fmap, line)["unknowns"])
+    shared = at["shared_covariance"].values[:n, :m]
+    return Joint(
+        np.concatenate([at["coefficient"].values[:n], at["nuisance"].values[:m]]),
+        np.block(
+            [
+                [at["coefficient_covariance"].values[:n, :n], shared],
+                [shared.T, at["nuisance_covariance"].values[:m, :m]],
+            ]
+        ),
+    )
+
+
+def map_evidence(fmap: xr.Dataset, line: int = 0) -> Evidence:
+    """Readings, references and priors that one line was estimated from.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+    line : int
+        Index of the line.
+
+    Returns
+    -------
+    Evidence
+
+    Raises
+    ------
+    InputError
+        The map keeps none, or not all of it.
+    """
+    size = int(_at(fmap, line)["knots"].values[2])
+    try:
+        return line_evidence(fmap, line, size, len(_line_facts(fmap, line)["unknowns"]))
+    except (KeyError, IndexError, ValueError) as error:
+        found = f"evidence of the readings that is missing or damaged ({error})"
+        raise InputError("map", found, "a whole map", "reduce the campaign again") from error
+
+
+def map_unknowns(fmap: xr.Dataset, line: int = 0) -> list[Nuisance]:
+    """What the nuisances of one line are."""
+    return [
+        Nuisance(one["kind"], one["where"], one["mean"], one["sd"])
+        for one in _line_facts(fmap, line)["unknowns"]
+    ]
+
+
+def map_probes(fmap: xr.Dataset) -> list[Probe]:
+    """The probes as the campaign states them."""
+    kinds = {"wire": Wire, "coil": Coil}
+    found: list[Probe] = []
+    for facts in _campaign(fmap)["probes"]:
+        rest = {key: value for key, value in facts.items() if key != "kind"}
+        found.append(kinds[facts["kind"]](**rest))
+    return found
+
+
+def map_integrators(fmap: xr.Dataset) -> list[Integrator]:
+    """The integrators as the campaign states them."""
+    return [Integrator(**facts) for facts in _campaign(fmap)["integrators"]]
+
+
+def map_stage(fmap: xr.Dataset) -> Stage:
+    """The stage as the campaign states it."""
+    return Stage(**_campaign(fmap)["stage"])
+
+
+def map_references(fmap: xr.Dataset) -> list[dict[str, Any]]:
+    """The absolute references as the campaign states them, SI; a flip names its probe."""
+    return [dict(facts) for facts in _campaign(fmap)["references"]]
+
+
+def line_reference_numbers(fmap: xr.Dataset, line: int = 0) -> list[int]:
+    """Numbers of the references that bear on a line, from 1, in the order of the evidence."""
+    return [int(number) for number in _line_facts(fmap, line)["references"]]
+
+
+def _campaign(fmap: xr.Dataset) -> dict[str, Any]:
+    facts: dict[str, Any] = json.loads(fmap.attrs["campaign"])
+    return facts
+
+
+def _line_facts(fmap: xr.Dataset, line: int) -> dict[str, Any]:
+    facts: dict[str, Any] = json.loads(fmap.attrs["lines"])[line]
+    return facts
+
+
+def _at(fmap: xr.Dataset, line: int) -> xr.Dataset:
+    facts = _line_facts(fmap, line)
+    return fmap.sel(x=facts["x"], y=facts["y"])

@@ -1,0 +1,84 @@
+"""What a reduction leaves behind: map.nc, results.json and report.html, all of them or none."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING
+
+from fieldmap.atomic import output_folder, replacing
+from fieldmap.errors import InputError
+from fieldmap.estimate.map import map_axis
+from fieldmap.estimate.store import write_map
+from fieldmap.magnet.evaluate import evaluate
+from fieldmap.magnet.results_file import write_results
+
+if TYPE_CHECKING:
+    import os
+    from pathlib import Path
+
+    import xarray as xr
+
+    from fieldmap.magnet.results import Results
+
+__all__ = ["save_reduction"]
+
+
+def save_reduction(
+    fmap: xr.Dataset, results: Results, folder: str | os.PathLike[str], *, k: float = 2.0
+) -> tuple[Path, Path, Path]:
+    """Write map.nc, results.json and report.html into a folder.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch`.
+    results : Results
+        From `evaluate`, with the limits that the map keeps: the three files tell the same.
+    folder : path
+        Made if it is not there. Earlier files are replaced only when all new ones are complete.
+    k : float
+        Coverage factor that the results were evaluated with, and that the report shows.
+
+    Returns
+    -------
+    tuple of Path
+        The three files.
+
+    Raises
+    ------
+    InputError
+        The folder cannot be made or written, or the results are not those of the map.
+
+    Examples
+    --------
+    >>> import tempfile
+    >>> import fieldmap
+    >>> from fieldmap.shipped import demo_folder
+    >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "slot" / "campaign.toml"))
+    >>> with tempfile.TemporaryDirectory() as folder:
+    ...     files = save_reduction(fmap, fieldmap.evaluate(fmap), folder)
+    >>> [file.name for file in files]
+    ['map.nc', 'results.json', 'report.html']
+    """
+    from fieldmap.show.report import FILE_NAME, report_of, write_report
+
+    if evaluate(fmap, k=k).as_dict() != results.as_dict():
+        raise InputError(
+            "results",
+            "others than the map gives with the limits it keeps",
+            "results of this map, so that map.nc, results.json and report.html agree",
+            "give evaluate(fmap); set limits and tolerances in the campaign before it is stitched",
+        )
+    report = report_of(fmap, results, map_axis(fmap), k)
+    place = output_folder(folder)
+    map_file, results_file, report_file = (
+        place / name for name in ("map.nc", "results.json", FILE_NAME)
+    )
+    with (
+        replacing(report_file) as report_aside,
+        replacing(results_file) as results_aside,
+        replacing(map_file) as map_aside,
+    ):
+        write_map(fmap, map_aside)
+        write_results(results, results_aside)
+        write_report(report, report_aside)
+    return map_file, results_file, report_file
