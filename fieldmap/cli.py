@@ -156,7 +156,7 @@ def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...],
 
 
 def _report(chosen: argparse.Namespace) -> None:
-    from fieldmap.show.report import FILE_NAME, save_report
+    from fieldmap.show.report.page import FILE_NAME, save_report
 
     fmap = fieldmap.load_map(_map_file(chosen.map))
     print(f"Written: {save_report(fmap, Path(chosen.out) / FILE_NAME)}")
@@ -169,7 +169,7 @@ def _map_file(given: str) -> Path:
 
 
 def _export(chosen: argparse.Namespace) -> None:
-    from fieldmap.magnet.export import export_table
+    from fieldmap.magnet.handover import export_table
 
     source, out = _map_file(chosen.map), Path(chosen.out)
     if out.exists() and source.exists() and out.samefile(source):

@@ -8,9 +8,9 @@ import pytest
 from fieldmap.bench.sources import TanhMagnet, Uniform
 from fieldmap.errors import RefusedError
 from fieldmap.estimate.fieldline import FieldLine
-from fieldmap.magnet.alignment import Pair, align, band_factor, first_shift
-from fieldmap.magnet.design_profile import design_profile
-from fieldmap.magnet.position_errors import position_errors
+from fieldmap.magnet.comparison.alignment import Pair, align, band_factor, first_shift
+from fieldmap.magnet.comparison.design_profile import design_profile
+from fieldmap.magnet.comparison.position_errors import position_errors
 from tests.pairs import SOFT, map_of, plain_map
 from tests.shop import STAGE
 

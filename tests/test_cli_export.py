@@ -5,7 +5,7 @@ import pytest
 
 import fieldmap
 from fieldmap.cli import main
-from fieldmap.magnet.design_profile import read_design
+from fieldmap.magnet.comparison.design_profile import read_design
 from tests.pairs import plain_map
 from tests.test_cli import refused
 

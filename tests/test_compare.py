@@ -10,8 +10,8 @@ import xarray as xr
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate import stitch
 from fieldmap.estimate.store import save_map
-from fieldmap.magnet.compare import compare
-from fieldmap.magnet.export import export_table
+from fieldmap.magnet.comparison.compare import compare
+from fieldmap.magnet.handover.export import export_table
 from fieldmap.magnet.sampling import chosen_line
 from tests.pairs import BUMP, SOFT, WIDE, errors_of, map_of, plain_map
 from tests.shop import MAGNET, measured, planned

@@ -6,8 +6,8 @@ from dataclasses import replace
 import numpy as np
 import pytest
 
-from fieldmap.magnet.compare import compare
-from fieldmap.magnet.comparison import ComparedResult, Comparison, DifferenceProfile
+from fieldmap.magnet.comparison.compare import compare
+from fieldmap.magnet.comparison.outcome import ComparedResult, Comparison, DifferenceProfile
 from fieldmap.magnet.quantity import Quantity
 from fieldmap.show.comparison import comparison_html, comparison_text, show_comparison
 from fieldmap.show.comparison_plots import comparison_figure, comparison_picture, comparison_words

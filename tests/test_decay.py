@@ -7,7 +7,7 @@ import math
 import numpy as np
 import pytest
 
-from fieldmap.magnet.decay import Stretches, decay_of
+from fieldmap.magnet.tails.decay import Stretches, decay_of
 
 NO_NOISE = np.zeros((3, 3))
 

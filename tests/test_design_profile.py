@@ -6,8 +6,8 @@ import xarray as xr
 
 from fieldmap.bench.sources import TanhMagnet
 from fieldmap.errors import InputError
-from fieldmap.magnet import design_profile as module
-from fieldmap.magnet.design_profile import design_profile, read_design
+from fieldmap.magnet.comparison import design_profile as module
+from fieldmap.magnet.comparison.design_profile import design_profile, read_design
 
 MAGNET = TanhMagnet(0.5, length=0.3, lam=0.02)
 S = np.arange(-200, 201) * 2e-3

@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 from scipy.integrate import quad
 
-from fieldmap.magnet.enge import EngeCurve
+from fieldmap.magnet.fringe.enge import EngeCurve
 
 SHAPES = [
     (0.0, 2.0),

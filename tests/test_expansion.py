@@ -9,8 +9,8 @@ from fieldmap.bench.sources import Loop, Solenoid, loop_field
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.spline import UniformSpline
-from fieldmap.magnet.design_profile import design_profile
-from fieldmap.magnet.expansion import FARTHEST, expansion_range, off_axis
+from fieldmap.magnet.comparison.design_profile import design_profile
+from fieldmap.magnet.handover.expansion import FARTHEST, expansion_range, off_axis
 from fieldmap.readings import Axis, Magnet
 
 AXIS = Axis("z", (-0.3, 0.3), (-0.05, 0.05))

@@ -12,9 +12,9 @@ import xarray as xr
 from fieldmap.bench.sources import Solenoid
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate import stitch
-from fieldmap.magnet import export
-from fieldmap.magnet.design_profile import read_design
-from fieldmap.magnet.export import export_table
+from fieldmap.magnet.handover import export
+from fieldmap.magnet.comparison.design_profile import read_design
+from fieldmap.magnet.handover.export import export_table
 from fieldmap.magnet.sampling import chosen_line
 from fieldmap.readings.layout import TableLayout
 from fieldmap.readings.text_table import open_text
@@ -183,7 +183,7 @@ def test_off_axis_uncertainties_are_true():
     s, r = np.linspace(-0.3, 0.3, 31), 0.01
     from fieldmap.bench.sources import loop_field
     from fieldmap.estimate.map import map_axis, map_magnet
-    from fieldmap.magnet.expansion import off_axis
+    from fieldmap.magnet.handover.expansion import off_axis
 
     places = (np.arange(800) + 0.5) / 800 * 0.2 - 0.1
     radial, axial = (b.sum(axis=1) for b in loop_field(0.05, 5000 / 800, r, s[:, None] - places))

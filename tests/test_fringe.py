@@ -13,11 +13,11 @@ from fieldmap.bench.sources import EngeMagnet, Solenoid, TanhMagnet
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.map import map_lines
 from fieldmap.estimate.provenance import map_evidence, map_joint
-from fieldmap.magnet.enge import EngeCurve
-from fieldmap.magnet.fringe import fringe, fringes
-from fieldmap.magnet.fringe_findings import line_fringes
-from fieldmap.magnet.fringe_information import Whitened, displacing, information_on
-from fieldmap.magnet.fringe_pair import compare_ends
+from fieldmap.magnet.fringe.enge import EngeCurve
+from fieldmap.magnet.fringe.findings import line_fringes
+from fieldmap.magnet.fringe.fitted import fringe, fringes
+from fieldmap.magnet.fringe.information import Whitened, displacing, information_on
+from fieldmap.magnet.fringe.pair import compare_ends
 from fieldmap.readings import Axis, Magnet, PointReference
 from tests.shop import AXIS, DIPOLE, MAGNET, measured, out_and_back, planned
 

@@ -9,7 +9,7 @@ import numpy as np
 import pytest
 from scipy.integrate import quad
 
-from fieldmap.magnet.fringe_integral import fringe_integral_results
+from fieldmap.magnet.fringe.integral import fringe_integral_results
 from fieldmap.magnet.length import length_results
 from fieldmap.readings import Axis
 from tests.profiles import line_through, smooth_noise

@@ -152,7 +152,7 @@ def test_without_a_length_there_is_no_outline(ax, fmap):
 
 def test_uncertainty_is_twice_u(ax, fmap):
     profile = profile_of(fmap)
-    line = draw_uncertainty(ax, profile, AXIS, "By")
+    line = draw_uncertainty(ax, profile, AXIS, "By").line
     np.testing.assert_allclose(line.get_ydata(), 2e3 * profile.u)
     assert ax.get_ylabel() == "2u(By) (mT)"
     assert ax.get_yscale() == "log"
@@ -190,7 +190,8 @@ def test_residuals_are_drawn_pass_by_pass(ax, fmap):
 
 def test_decay_shows_size_and_floor(ax, fmap):
     profile = profile_of(fmap, span=(0.05, 0.4))
-    line, floor = draw_decay(ax, profile, "z", "By")
+    drawn = draw_decay(ax, profile, "z", "By")
+    line, floor = drawn.line, drawn.floor
     np.testing.assert_allclose(line.get_ydata(), np.abs(profile.b))
     np.testing.assert_allclose(floor.get_ydata(), 2 * profile.u)
     assert ax.get_yscale() == "log"

@@ -10,7 +10,7 @@ import pytest
 from fieldmap.bench.sources import EngeMagnet, Loop, Plates, Solenoid, TanhMagnet, Uniform
 from fieldmap.magnet.functional import covariance
 from fieldmap.magnet.length import length_results
-from fieldmap.magnet.tail import HIDDEN, LAW, map_end, tail_results
+from fieldmap.magnet.tails.tail import HIDDEN, LAW, map_end, tail_results
 from fieldmap.readings import Axis
 from tests.profiles import line_through, smooth_noise
 

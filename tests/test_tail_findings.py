@@ -11,7 +11,7 @@ import pytest
 from fieldmap.bench.sources import Plates, Solenoid, TanhMagnet, Uniform
 from fieldmap.magnet.functionals import line_functionals
 from fieldmap.magnet.quantity import Quantity
-from fieldmap.magnet.tail_findings import required_uncertainty, tail_findings
+from fieldmap.magnet.tails.findings import required_uncertainty, tail_findings
 from fieldmap.readings import Axis, Limit
 from tests.profiles import line_through
 

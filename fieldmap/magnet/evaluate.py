@@ -16,10 +16,10 @@ from fieldmap.estimate.map import (
     map_magnet,
     map_title,
 )
-from fieldmap.magnet.fringe_findings import line_fringes
+from fieldmap.magnet.fringe.findings import line_fringes
 from fieldmap.magnet.functionals import line_functionals
 from fieldmap.magnet.results import LineResults, Results
-from fieldmap.magnet.tail_findings import tail_findings
+from fieldmap.magnet.tails.findings import tail_findings
 from fieldmap.magnet.verdict import decide
 
 if TYPE_CHECKING:

@@ -4,10 +4,10 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from fieldmap.magnet.fringe_integral import fringe_integral_results
+from fieldmap.magnet.fringe.integral import fringe_integral_results
 from fieldmap.magnet.length import length_results
 from fieldmap.magnet.shape import shape_results
-from fieldmap.magnet.tail import tail_results
+from fieldmap.magnet.tails.tail import tail_results
 
 if TYPE_CHECKING:
     from fieldmap.estimate.fieldline import FieldLine

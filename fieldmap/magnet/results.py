@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 if TYPE_CHECKING:
     from fieldmap.estimate.findings import Finding
-    from fieldmap.magnet.fringe import Fringe
+    from fieldmap.magnet.fringe.fitted import Fringe
     from fieldmap.magnet.quantity import Quantity
     from fieldmap.magnet.verdict import Verdict
 

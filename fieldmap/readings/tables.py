@@ -23,7 +23,7 @@ from fieldmap.readings.text_table import open_text, plain_text
 if TYPE_CHECKING:
     from fieldmap.readings.passes import Floats
 
-__all__ = ["Samples", "Table", "TablePreview", "preview_table", "read_bytes", "read_table"]
+__all__ = ["Samples", "Table", "TablePreview", "preview_table", "read_bytes", "read_table", "table_columns"]
 
 Samples = Literal["flux", "dflux", "voltage"]
 
@@ -115,11 +115,7 @@ def read_table(
         digest = pool.submit(hashlib.sha256, data)
         source: Source
         source = open_netcdf(data, name) if is_netcdf(data) else open_text(data, name, layout)
-        columns = _columns(source, layout, samples)
-    count = columns["position"].size
-    if layout.rate is not None and "time" not in columns:
-        columns["time"] = np.arange(count) / layout.rate
-    _check(columns, source)
+        columns = table_columns(source, layout, samples)
     return Table(
         time=columns["time"],
         position=columns["position"],
@@ -129,6 +125,35 @@ def read_table(
         sha256=digest.result().hexdigest(),
         place=source.place,
     )
+
+
+def table_columns(source: Source, layout: TableLayout, samples: Samples) -> dict[str, Floats]:
+    """Columns of an opened table in SI, checked.
+
+    Parameters
+    ----------
+    source : Source
+        From `open_text` or `open_netcdf`.
+    layout : TableLayout
+        How it is written.
+    samples : {"flux", "dflux", "voltage"}
+        The column that holds what was recorded.
+
+    Returns
+    -------
+    dict of str to (n,) array
+        By the names of `QUANTITIES`: time, position and samples, and what else is there.
+
+    Raises
+    ------
+    InputError
+        As for `read_table`.
+    """
+    columns = _columns(source, layout, samples)
+    if layout.rate is not None and "time" not in columns:
+        columns["time"] = np.arange(columns["position"].size) / layout.rate
+    _check(columns, source)
+    return columns
 
 
 def read_bytes(path: Path, name: str, most: int | None = None) -> bytes:

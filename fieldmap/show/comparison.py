@@ -14,7 +14,7 @@ from fieldmap.show.rows import label, one_line
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from fieldmap.magnet.comparison import ComparedResult, Comparison, Stretch
+    from fieldmap.magnet.comparison.outcome import ComparedResult, Comparison, Stretch
     from fieldmap.magnet.quantity import Quantity
 
 __all__ = ["comparison_html", "comparison_text", "show_comparison"]
@@ -41,7 +41,7 @@ def comparison_text(comparison: Comparison) -> str:
     Examples
     --------
     >>> import numpy as np
-    >>> from fieldmap.magnet.comparison import Comparison, DifferenceProfile
+    >>> from fieldmap.magnet.comparison.outcome import Comparison, DifferenceProfile
     >>> s, none = np.linspace(-0.1, 0.1, 3), np.zeros(3)
     >>> band = DifferenceProfile(s, none, none + 1e-5, 2.5)
     >>> found = Comparison(

@@ -27,7 +27,7 @@ if TYPE_CHECKING:
     from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
-    from fieldmap.magnet.comparison import Comparison, Stretch
+    from fieldmap.magnet.comparison.outcome import Comparison, Stretch
 
 __all__ = ["comparison_figure", "comparison_picture", "comparison_words"]
 
@@ -89,7 +89,7 @@ def comparison_picture(comparison: Comparison) -> Picture:
 
     Examples
     --------
-    >>> from fieldmap.magnet.comparison import Comparison, DifferenceProfile
+    >>> from fieldmap.magnet.comparison.outcome import Comparison, DifferenceProfile
     >>> s = np.linspace(-0.1, 0.1, 21)
     >>> band = DifferenceProfile(s, 1e-5 * s, np.full(21, 1e-5), 3.0)
     >>> found = Comparison(

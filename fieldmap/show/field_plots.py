@@ -1,16 +1,26 @@
 """Figures of the field along a line: profile, uncertainty, decay, one position.
 
 Each function draws on the axes it is given and returns what it drew. Positions are in mm,
-fields in the unit that suits their size.
+fields in the unit that suits their size. What was drawn can be given new data, which is much
+faster than drawing it anew.
 """
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
-import numpy as np
-
+from fieldmap.show.field_artists import (
+    CursorArtists,
+    DecayArtists,
+    K,
+    ProfileArtists,
+    UncertaintyArtists,
+    WindowArtists,
+    field_factor,
+    field_unit,
+    outline_of,
+    profile_reach,
+)
 from fieldmap.show.look import (
     BLUE,
     GREEN,
@@ -29,17 +39,13 @@ if TYPE_CHECKING:
 
     from matplotlib.artist import Artist
     from matplotlib.axes import Axes
-    from matplotlib.collections import PolyCollection
     from matplotlib.lines import Line2D
-    from matplotlib.patches import Rectangle
 
     from fieldmap.magnet.quantity import Quantity
     from fieldmap.readings.passes import Axis as MapAxis
     from fieldmap.show.profile import Profile
 
 __all__ = [
-    "CursorArtists",
-    "ProfileArtists",
     "draw_cursor",
     "draw_decay",
     "draw_profile",
@@ -47,26 +53,7 @@ __all__ = [
     "mark_windows",
 ]
 
-K = 2.0  # bands are at ±k·u
-
-
-@dataclass(frozen=True, eq=False)
-class ProfileArtists:
-    """What `draw_profile` drew; `equivalent` is None where there is no magnetic length."""
-
-    line: Line2D
-    band: PolyCollection
-    limits: tuple[Line2D, Line2D]
-    flat: Rectangle
-    equivalent: Line2D | None
-
-
-@dataclass(frozen=True, eq=False)
-class CursorArtists:
-    """What `draw_cursor` drew."""
-
-    line: Line2D
-    point: Line2D
+GRIP_HEIGHT = 0.965  # of the frame: where what can be dragged is marked
 
 
 def draw_profile(
@@ -109,25 +96,26 @@ def draw_profile(
     >>> drawn.limits[0].get_xdata()[0]
     -100.0
     """
-    scale = scale_for("T", [float(np.abs(profile.b).max())])
-    b, half = profile.b * scale.factor, K * profile.u * scale.factor
-    band = ax.fill_between(profile.s * MM, b - half, b + half, color=BLUE, alpha=0.3, linewidth=0)
-    (line,) = ax.plot(profile.s * MM, b, color=BLUE, linewidth=1.8)
-    limits, flat = mark_windows(ax, axis)
-    equivalent = _equivalent(ax, results or {}, scale.factor)
-    dress(ax, position_words(axis.travel), f"{component} ({scale.unit})")
+    (line,) = ax.plot([], [], color=BLUE, linewidth=1.8)
+    band = ax.fill_between([], [], color=BLUE, alpha=0.3, linewidth=0)
+    windows = mark_windows(ax, axis)
+    equivalent = _equivalent(ax, results or {}, field_factor(profile))
+    drawn = ProfileArtists(line, band, windows.limits, windows.flat, equivalent)
+    drawn.show(profile)
+    ax.set_ylim(*profile_reach(profile))
+    dress(ax, position_words(axis.travel), f"{component} ({field_unit(profile)})")
     named: list[tuple[Artist, str]] = [
         (line, f"{component} ± 2u"),
-        (limits[0], "limits of integration"),
-        (flat, "flat window"),
+        (windows.limits[0], "limits of integration"),
+        (windows.flat, "flat window"),
     ]
     if equivalent is not None:
         named.append((equivalent, "magnetic length"))
     legend_above(ax, [handle for handle, _ in named], [name for _, name in named])
-    return ProfileArtists(line, band, limits, flat, equivalent)
+    return drawn
 
 
-def mark_windows(ax: Axes, axis: MapAxis) -> tuple[tuple[Line2D, Line2D], Rectangle]:
+def mark_windows(ax: Axes, axis: MapAxis, *, grips: bool = False) -> WindowArtists:
     """Mark the limits of integration and shade the flat window.
 
     Parameters
@@ -136,11 +124,12 @@ def mark_windows(ax: Axes, axis: MapAxis) -> tuple[tuple[Line2D, Line2D], Rectan
         Axes with positions in mm.
     axis : Axis
         The limits, m.
+    grips : bool
+        Also mark that all four can be dragged.
 
     Returns
     -------
-    tuple
-        The two limits, and the window.
+    WindowArtists
     """
     first, last = (
         ax.axvline(limit * MM, color=VERMILION, linestyle=(0, (6, 2)), linewidth=1.4)
@@ -149,28 +138,39 @@ def mark_windows(ax: Axes, axis: MapAxis) -> tuple[tuple[Line2D, Line2D], Rectan
     flat = ax.axvspan(
         axis.flat[0] * MM, axis.flat[1] * MM, color=GREEN, alpha=0.18, linewidth=0, zorder=0.5
     )
-    return (first, last), flat
+    pairs = ((axis.integrate, VERMILION, "v"), (axis.flat, GREEN, "D")) if grips else ()
+    marks = tuple(_grips(ax, ends, colour, marker) for ends, colour, marker in pairs)
+    return WindowArtists((first, last), flat, marks)
+
+
+def _grips(ax: Axes, ends: tuple[float, float], colour: str, marker: str) -> Line2D:
+    """Two marks near the upper edge of the frame."""
+    (line,) = ax.plot(
+        [end * MM for end in ends],
+        [GRIP_HEIGHT, GRIP_HEIGHT],
+        color="none",
+        marker=marker,
+        markersize=7,
+        markerfacecolor=colour,
+        markeredgecolor=INK,
+        markeredgewidth=0.6,
+        transform=ax.get_xaxis_transform(),
+        zorder=4,
+    )
+    return line
 
 
 def _equivalent(ax: Axes, results: Mapping[str, Quantity], factor: float) -> Line2D | None:
-    """Outline of the uniform field that has the same integral: central field times length."""
-    if "boundary_in" not in results or "boundary_out" not in results:
+    outline = outline_of(results, factor)
+    if outline is None:
         return None
-    low, high = results["boundary_in"].value * MM, results["boundary_out"].value * MM
-    level = results["central_field"].value * factor
-    (line,) = ax.plot(
-        [low, low, high, high],
-        [0, level, level, 0],
-        color=INK,
-        linestyle=(0, (2, 1.5)),
-        linewidth=1.2,
-    )
+    (line,) = ax.plot(*outline, color=INK, linestyle=(0, (2, 1.5)), linewidth=1.2)
     return line
 
 
 def draw_uncertainty(
     ax: Axes, profile: Profile, axis: MapAxis | None = None, component: str = "B"
-) -> Line2D:
+) -> UncertaintyArtists:
     """Half width of the ±2u band along the line, which is too narrow to see on the field itself.
 
     Parameters
@@ -186,28 +186,20 @@ def draw_uncertainty(
 
     Returns
     -------
-    matplotlib.lines.Line2D
+    UncertaintyArtists
     """
-    half = K * profile.u
-    scale = scale_for("T", [float(half.max())])
-    shown = half * scale.factor
-    (line,) = ax.plot(profile.s * MM, shown, color=BLUE, linewidth=1.4)
-    low, scale_of_axis = 0.0, "linear"
-    if half.min() > 0:  # in a fringe it rises by decades
-        low, scale_of_axis = 0.6 * float(shown.min()), "log"
-    if ax.get_yscale() != scale_of_axis:
-        ax.set_yscale(scale_of_axis)
-    ax.fill_between(profile.s * MM, low, shown, color=BLUE, alpha=0.2, linewidth=0)
+    (line,) = ax.plot([], [], color=BLUE, linewidth=1.4)
+    area = ax.fill_between([], [], color=BLUE, alpha=0.2, linewidth=0)
+    drawn = UncertaintyArtists(line, area)
+    drawn.show(profile)
     if axis is not None:
         mark_windows(ax, axis)
-    ax.set_ylim(low, 1.6 * float(shown.max()) or 1.0)
-    dress(ax, position_words(axis.travel if axis else "z"), f"2u({component}) ({scale.unit})")
-    return line
+    unit = scale_for("T", [float(K * profile.u.max())]).unit
+    dress(ax, position_words(axis.travel if axis else "z"), f"2u({component}) ({unit})")
+    return drawn
 
 
-def draw_decay(
-    ax: Axes, profile: Profile, travel: str = "z", component: str = "B"
-) -> tuple[Line2D, Line2D]:
+def draw_decay(ax: Axes, profile: Profile, travel: str = "z", component: str = "B") -> DecayArtists:
     """The size of the field on a logarithmic scale, beside the half width of its band.
 
     Parameters
@@ -223,21 +215,16 @@ def draw_decay(
 
     Returns
     -------
-    tuple of matplotlib.lines.Line2D
+    DecayArtists
         The field, and 2u: where the field falls below it, it is not told from zero.
     """
-    scale = scale_for("T", [float(np.abs(profile.b).max())])
-    size, half = np.abs(profile.b) * scale.factor, K * profile.u * scale.factor
-    if ax.get_yscale() != "log":
-        ax.set_yscale("log")
-    (line,) = ax.plot(profile.s * MM, size, color=BLUE, linewidth=1.8)
-    (floor,) = ax.plot(profile.s * MM, half, color=PINK, linewidth=1.4, linestyle=(0, (5, 2)))
-    seen = half[half > 0]
-    if len(seen) and size.max() > 0:
-        ax.set_ylim(0.3 * min(float(seen.min()), float(size.max())), 3 * float(size.max()))
-    dress(ax, position_words(travel), f"|{component}| ({scale.unit})")
+    (line,) = ax.plot([], [], color=BLUE, linewidth=1.8)
+    (floor,) = ax.plot([], [], color=PINK, linewidth=1.4, linestyle=(0, (5, 2)))
+    drawn = DecayArtists(line, floor)
+    drawn.show(profile)
+    dress(ax, position_words(travel), f"|{component}| ({field_unit(profile)})")
     legend_above(ax, [line, floor], [f"|{component}|", "2u: below it not told from zero"])
-    return line, floor
+    return drawn
 
 
 def draw_cursor(ax: Axes, profile: Profile, at: float, value: float) -> CursorArtists:
@@ -258,8 +245,7 @@ def draw_cursor(ax: Axes, profile: Profile, at: float, value: float) -> CursorAr
     -------
     CursorArtists
     """
-    scale = scale_for("T", [float(np.abs(profile.b).max())])
-    shown = (abs(value) if ax.get_yscale() == "log" else value) * scale.factor
+    shown = (abs(value) if ax.get_yscale() == "log" else value) * field_factor(profile)
     line = ax.axvline(at * MM, color=INK, linewidth=1.0)
     (point,) = ax.plot(
         [at * MM], [shown], marker="o", markersize=8, color="none", markeredgecolor=INK

@@ -59,7 +59,7 @@ def save_reduction(
     >>> [file.name for file in files]
     ['map.nc', 'results.json', 'report.html']
     """
-    from fieldmap.show.report import FILE_NAME, report_of, write_report
+    from fieldmap.show.report.page import FILE_NAME, report_of, write_report
 
     if evaluate(fmap, k=k).as_dict() != results.as_dict():
         raise InputError(

@@ -18,7 +18,7 @@ from fieldmap.show.look import BLUE, PINK, VERMILION, pass_style
 from fieldmap.show.panels.limits import plain_step
 from fieldmap.show.picture import SIZE
 from fieldmap.show.profile import field_at
-from fieldmap.show.report import report_html
+from fieldmap.show.report.page import report_html
 from fieldmap.show.rows import result_rows
 
 from .notebook_page import (

@@ -9,7 +9,7 @@ import pytest
 
 import fieldmap
 from fieldmap.shipped import demo_folder
-from fieldmap.show.report import save_report
+from fieldmap.show.report.page import save_report
 from fieldmap.show.rows import result_rows
 
 from .conftest import SIZE

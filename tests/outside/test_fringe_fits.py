@@ -17,9 +17,9 @@ import fieldmap
 from fieldmap.bench.sources import EngeMagnet, Plates, TanhMagnet, TwoTermEnge
 from fieldmap.bench.sources.algebra import Source
 from fieldmap.errors import RefusedError
-from fieldmap.magnet.enge import EngeCurve
-from fieldmap.magnet.fringe import fringe, fringes
-from fieldmap.magnet.fringe_findings import line_fringes
+from fieldmap.magnet.fringe.enge import EngeCurve
+from fieldmap.magnet.fringe.findings import line_fringes
+from fieldmap.magnet.fringe.fitted import fringe, fringes
 from fieldmap.readings import Axis, Integrator, PointReference, Stage
 from tests.shop import AXIS, MAGNET, MAIN, PROBES, STAGE, measured, planned
 

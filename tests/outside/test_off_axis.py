@@ -8,8 +8,8 @@ import numpy as np
 import pytest
 
 from fieldmap.bench.sources import Solenoid
-from fieldmap.magnet.design_profile import design_profile
-from fieldmap.magnet.expansion import off_axis
+from fieldmap.magnet.comparison.design_profile import design_profile
+from fieldmap.magnet.handover.expansion import off_axis
 from fieldmap.readings import Axis, Magnet
 
 magpylib = pytest.importorskip("magpylib")

@@ -19,9 +19,9 @@ import numpy as np
 
 import fieldmap
 from fieldmap.bench.sources import EngeMagnet, TanhMagnet
-from fieldmap.magnet.enge import EngeCurve
-from fieldmap.magnet.fringe import fringes
-from fieldmap.magnet.fringe_pair import compare_ends
+from fieldmap.magnet.fringe.enge import EngeCurve
+from fieldmap.magnet.fringe.fitted import fringes
+from fieldmap.magnet.fringe.pair import compare_ends
 from tests.study import draw, magnets
 
 MOVED = ("wire+point", "wire+zero", "rectangular+point", "round+point", "mixed+point")

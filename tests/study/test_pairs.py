@@ -11,7 +11,7 @@ from dataclasses import dataclass
 import numpy as np
 import pytest
 
-from fieldmap.magnet.compare import compare
+from fieldmap.magnet.comparison.compare import compare
 from tests.pairs import BUMP, SOFT, errors_of, map_of
 
 PAIRS = 100

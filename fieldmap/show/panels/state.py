@@ -1,94 +1,176 @@
-"""What the panels work on: an open campaign, the passes in use, limits, map and results.
+"""What the panels work on: an open campaign, what of it is in use, limits, map and results.
 
 It knows no widget. Panels ask it for changes and listen to what became of them. A new map is
-solved only when the passes in use have changed, results are evaluated again only when the
-map, the limits or the window have.
+solved only when the passes or references in use have changed, results are evaluated again only
+when the map, the limits or the window have. In a notebook maps are solved in the background: a
+newer request ends an older one, and what is shown meanwhile is marked as out of date.
 """
 
 from __future__ import annotations
 
-import json
+import functools
 import logging
-import math
 import threading
+import time
 from collections.abc import Callable
-from dataclasses import asdict, replace
+from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Final, Literal
+from typing import TYPE_CHECKING, Any, Final, Literal, NamedTuple
 
 from fieldmap.errors import FieldmapError, InputError
-from fieldmap.estimate.findings import Finding
+from fieldmap.estimate.map import map_lines, with_axis
 from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.readings.campaign import load
 from fieldmap.readings.passes import Campaign
-from fieldmap.shipped import PACKAGE, demo_folder
 from fieldmap.show.handover import save_reduction
+from fieldmap.show.panels.choices import remember_choices
+from fieldmap.show.panels.departures import check_order, departures
+from fieldmap.show.panels.places import writable_folder
+from fieldmap.show.panels.settings import Settings
+from fieldmap.show.panels.worker import Stopped, Worker
 
 if TYPE_CHECKING:
     import os
 
     import xarray as xr
 
+    from fieldmap.estimate.fieldline import FieldLine
     from fieldmap.magnet.results import LineResults, Results
+    from fieldmap.progress import Tell
     from fieldmap.readings.passes import Axis, Pass
 
 __all__ = ["Listener", "Reduction", "Topic"]
 
-Topic = Literal["busy", "campaign", "map", "results", "saved"]
+Topic = Literal["busy", "campaign", "passes", "stale", "map", "results", "saved"]
 Listener = Callable[[Topic], None]
 
 MAPS_KEPT: Final = 8
 LOG: Final = logging.getLogger("fieldmap")
 
 
+class Choice(NamedTuple):
+    """What a map is made from: the campaign, and which of its passes and references."""
+
+    campaign: Campaign | None
+    active: tuple[bool, ...]
+    trusted: tuple[bool, ...]
+
+    @property
+    def marks(self) -> tuple[int, ...]:
+        """Index of each pass in use."""
+        return tuple(i for i, used in enumerate(self.active) if used)
+
+    @property
+    def whole(self) -> bool:
+        """Whether nothing is left out."""
+        return all(self.active) and all(self.trusted)
+
+
+NOTHING: Final = Choice(None, (), ())
+
+
 class Reduction:
     """A campaign on its way to results.
+
+    Parameters
+    ----------
+    background : bool
+        Whether campaigns are read and maps solved on a thread of their own; `wait` for them.
+    keeps : bool
+        Whether what is set by hand is kept beside the campaign, and taken up again.
 
     Attributes
     ----------
     campaign : Campaign or None
         What is open.
-    active : tuple of bool
-        Which of its passes are in use.
+    active, trusted : tuple of bool
+        Which of its passes and which of its references are in use.
     axis : Axis or None
         Limits of integration and flat window in use.
     fmap : xarray.Dataset or None
-        The map of the passes in use; None while there is an error in it.
+        The map of the passes in use, unless it is `stale`; None while there is an error in it.
+    profiles : list of FieldLine
+        The lines of that map.
     results : Results or None
         Its evaluation with the limits in use; None while there is an error in it.
     busy : str
         What is being done; empty if nothing is.
+    notice : str
+        What else there is to say of what was opened.
+    source : Path or None
+        The file that was to be opened last, whether it could be or not.
     saved : tuple of Path
         The files written last.
 
     Examples
     --------
+    >>> from fieldmap.shipped import demo_folder
     >>> state = Reduction()
     >>> state.open(demo_folder() / "slot" / "campaign.toml")
     >>> state.error, state.results is not None
     ('', True)
     """
 
-    def __init__(self) -> None:
-        self.campaign: Campaign | None = None
-        self.active: tuple[bool, ...] = ()
-        self.axis: Axis | None = None
-        self.fmap: xr.Dataset | None = None
-        self.results: Results | None = None
-        self.busy = ""
-        self.saved: tuple[Path, ...] = ()
-        # handlers of widgets run in threads of their own
+    def __init__(self, *, background: bool = False, keeps: bool = False) -> None:
+        self.background, self.keeps = background, keeps
+        # handlers of widgets run in threads of their own; never held while a map is solved in
+        # the background, nor while waiting for that
         self.lock = threading.RLock()
+        self._worker = Worker()
         self._listeners: list[Listener] = []
         self._errors: dict[str, str] = {}
-        self._maps: dict[tuple[bool, ...], xr.Dataset] = {}
+        self._quick = self._long = ""
+        self._since = 0.0
+        self._forget()
+        self.source: Path | None = None
+        self.settings = Settings()
+        remember_choices(self)
+
+    def _forget(self) -> None:
+        """Begin with nothing."""
+        self.campaign: Campaign | None = None
+        self.active: tuple[bool, ...] = ()
+        self.trusted: tuple[bool, ...] = ()
+        self.axis: Axis | None = None
+        self.fmap: xr.Dataset | None = None
+        self.profiles: list[FieldLine] = []
+        self.results: Results | None = None
+        self.saved: tuple[Path, ...] = ()
+        self.notice = ""
+        self._mapped = NOTHING
+        self._maps: dict[Choice, xr.Dataset] = {}
         self._spacing: float | None = None
+        self._errors.clear()
 
     @property
     def error(self) -> str:
         """What is wrong, in words; empty if nothing is."""
-        return " ".join(self._errors.values())
+        return " ".join(tuple(self._errors.values()))
+
+    @property
+    def busy(self) -> str:
+        """What is being done; empty if nothing is."""
+        return self._quick or self._long
+
+    @property
+    def solving(self) -> bool:
+        """Whether something is done or waits to be done in the background."""
+        return not self._worker.idle
+
+    @property
+    def elapsed(self) -> float:
+        """How long the work in the background has taken until now, s."""
+        return time.monotonic() - self._since if self._long else 0.0
+
+    @property
+    def stale(self) -> bool:
+        """Whether the map is of another choice of passes and references than the one in use."""
+        return self.fmap is not None and self._mapped != self._choice
+
+    @property
+    def _choice(self) -> Choice:
+        return Choice(self.campaign, self.active, self.trusted)
 
     @property
     def passes(self) -> tuple[Pass, ...]:
@@ -100,15 +182,15 @@ class Reduction:
     @property
     def marks(self) -> tuple[int, ...]:
         """Index in the campaign of each pass in use: it decides the style it is drawn in."""
-        return tuple(i for i, used in enumerate(self.active) if used)
+        return self._choice.marks
 
     @property
     def map_marks(self) -> tuple[int, ...]:
-        """The same in the order in which the map keeps its passes: by line."""
-        if self.campaign is None:
+        """The same of the passes of the map, in the order in which it keeps them: by line."""
+        campaign, marks = self._mapped.campaign, self._mapped.marks
+        if campaign is None:
             return ()
-        passes = self.campaign.passes
-        return tuple(sorted(self.marks, key=lambda i: (passes[i].y, passes[i].x)))
+        return tuple(sorted(marks, key=lambda i: (campaign.passes[i].y, campaign.passes[i].x)))
 
     @property
     def lines(self) -> tuple[LineResults, ...]:
@@ -116,11 +198,32 @@ class Reduction:
         return self.results.lines if self.results else ()
 
     def listen(self, listener: Listener) -> None:
-        """Call a listener after every change, with what has changed."""
+        """Call a listener after every change, with what has changed; it may hold no thread up."""
         self._listeners.append(listener)
 
+    def remember(self, name: str, get: Callable[[], Any], put: Callable[[Any], None]) -> None:
+        """Name a value that is kept with the campaign; call `keep` when it has changed.
+
+        Parameters
+        ----------
+        name, get, put
+            As for `Settings.remember`.
+        """
+        self.settings.remember(name, get, put)
+
+    def keep(self) -> None:
+        """Keep what is set by hand beside the campaign, if this state keeps anything."""
+        with self.lock:
+            path = self.campaign.path if self.campaign else None
+            if not self.keeps or path is None or self._restoring:
+                return
+            told = self.settings.write(path, self.settings.changed())
+            if told and told != self.notice:
+                self.notice = told
+                self._tell("busy")
+
     def open(self, source: str | os.PathLike[str] | Campaign) -> None:
-        """Open a campaign with all its passes, and solve it.
+        """Open a campaign with all its passes, or those chosen when it was last open; solve it.
 
         Parameters
         ----------
@@ -128,15 +231,8 @@ class Reduction:
             A campaign.toml, its folder, or a campaign that is loaded already.
         """
         with self.lock:
-            self.campaign, self.axis, self.active = None, None, ()
-            self.fmap = self.results = self._spacing = None
-            self.saved = ()
-            self._maps.clear()
-            self._errors.clear()
-            opened = self.attempt("reading the campaign", lambda: self._read(source))
-            self._tell("campaign")
-            if opened:
-                self._solve()
+            self._forget()
+            self._do(lambda tell: self._open(source, tell))
 
     def use(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
         """Use a pass, or leave it out, and solve again.
@@ -149,10 +245,18 @@ class Reduction:
             Whether it is used.
         """
         with self.lock:
-            if not 0 <= index < len(self.active) or self.active[index] == used:
-                return
-            self.active = (*self.active[:index], used, *self.active[index + 1 :])
-            self._solve()
+            if 0 <= index < len(self.active) and self.active[index] != used:
+                self.active = _with(self.active, index, used)
+                self.solve()
+                self.keep()
+
+    def trust(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
+        """Use a reference, or leave it out, and solve again; as for `use`."""
+        with self.lock:
+            if 0 <= index < len(self.trusted) and self.trusted[index] != used:
+                self.trusted = _with(self.trusted, index, used)
+                self.solve()
+                self.keep()
 
     def move(
         self,
@@ -175,6 +279,71 @@ class Reduction:
                 return
             self.axis = moved
             self._evaluate()
+            self.keep()
+
+    def renew(self, campaign: Campaign) -> None:
+        """Take a campaign that has grown or lost a pass; what was chosen by hand stays, by name.
+
+        Parameters
+        ----------
+        campaign : Campaign
+            Read again.
+        """
+        with self.lock:
+            first = self.campaign is None
+            kept = self.settings.changed()
+            if first:
+                self._forget()
+            self._take(campaign)
+            self._restored(self._kept(campaign) if first else kept)
+            self._maps.clear()
+            self._spacing = None
+            self._errors.clear()
+            self._tell("campaign" if first else "passes")
+            self.solve()
+
+    def reset(self) -> None:
+        """Everything as in the file, and nothing kept."""
+        with self.lock:
+            if self.campaign is None:
+                return
+            before = self._choice
+            self.axis = self.campaign.axis
+            self._restored({})
+            self.notice = ""
+            if self._choice != before:
+                self.solve()
+            else:
+                self._evaluate()
+            self.keep()
+
+    def solve(self) -> None:
+        """Make the map of what is in use, and evaluate it."""
+        with self.lock:
+            if self.campaign is None:
+                return
+            self._do(self._solve)
+            if self.background:
+                self._tell("stale")
+
+    def stop(self) -> None:
+        """Give up what is solved in the background; the last good map stays."""
+        self._worker.stop()
+
+    def wait(self, timeout: float | None = None) -> bool:
+        """Wait until nothing is done in the background; never with the lock held.
+
+        Parameters
+        ----------
+        timeout : float, optional
+            s.
+
+        Returns
+        -------
+        bool
+            Whether that is so.
+        """
+        return self._worker.wait(timeout)
 
     def save(self, folder: str | os.PathLike[str]) -> None:
         """Write map.nc, results.json and report.html with the passes and limits in use.
@@ -186,173 +355,9 @@ class Reduction:
         """
         with self.lock:
             self.saved = ()
-            self.attempt("writing", lambda: self._write(folder))
-            self._tell("saved")
-
-    def attempt(self, what: str, work: Callable[[], None]) -> bool:
-        """Say what is being done, do it, and keep what goes wrong as words.
-
-        Parameters
-        ----------
-        what : str
-            What is being done, in a few words; an earlier error of the same is forgotten.
-        work : callable
-            Does it.
-
-        Returns
-        -------
-        bool
-            Whether nothing went wrong.
-        """
-        with self.lock:
-            self._errors.pop(what, None)
-            self._work(what)
-            try:
-                work()
-            except FieldmapError as error:
-                self._errors[what] = str(error)
-            except Exception as error:  # noqa: BLE001 see _failed
-                self._failed(what, error)
-            finally:
-                self._work("")
-            return what not in self._errors
-
-    def _read(self, source: str | os.PathLike[str] | Campaign) -> None:
-        if isinstance(source, Campaign):
-            self.campaign = source
-        else:
-            self.campaign = load(Path(source).expanduser(), tell=self._work)
-        self.axis = self.campaign.axis
-        self.active = (True,) * len(self.campaign.passes)
-
-    def _write(self, folder: str | os.PathLike[str]) -> None:
-        place = _writable(folder)
-        if self.fmap is None or self.results is None:
-            raise InputError("save", "no results", "a map with results", "mend the campaign first")
-        marked = self._marked(self.fmap)
-        # what the panels show goes without the fringes, which take their time
-        results = evaluate(marked, self.campaign, axis=self.axis)
-        self.saved = save_reduction(marked, results, place)
-
-    def _solve(self) -> None:
-        self.fmap = self.results = None
-        self._errors.clear()
-        self.attempt("solving", self._take_map)
-        self._tell("map")
-        self._evaluate()
-
-    def _take_map(self) -> None:
-        """Make the map of the passes in use, or take it from those made before."""
-        if self.active not in self._maps:
-            self._maps[self.active] = self._stitched()
-            if len(self._maps) > MAPS_KEPT:
-                del self._maps[next(iter(self._maps))]
-        self.fmap = self._maps[self.active]
-
-    def _stitched(self) -> xr.Dataset:
-        """Solve; once a knot spacing has been found good, passes left out do not change it."""
-        assert self.campaign is not None
-        chosen = replace(self.campaign, passes=self.passes)
-        spacing = None if all(self.active) else self._spacing
-        fmap = stitch(chosen, knot_spacing=spacing, tell=self._work)
-        if spacing is None:
-            self._spacing = float(fmap["knots"].values[..., 1].min())
-        return fmap
-
-    def _evaluate(self) -> None:
-        self.results = None
-        if self.fmap is not None:
-            self._errors.clear()
-            self.attempt("evaluating", self._take_results)
-        self._tell("results")
-
-    def _take_results(self) -> None:
-        assert self.fmap is not None
-        assert self.axis is not None
-        _check_order(self.axis)
-        marked = self._marked(self.fmap)
-        self.results = evaluate(marked, self.campaign, axis=self.axis, fringe=False)
-
-    def _marked(self, fmap: xr.Dataset) -> xr.Dataset:
-        """The map with the limits in use and a note of every departure from the campaign file."""
-        assert self.campaign is not None
-        assert self.axis is not None
-        facts = json.loads(fmap.attrs["campaign"]) | {"axis": asdict(self.axis)}
-        notes = [note.as_dict() for note in _departures(self.campaign, self.active, self.axis)]
-        findings = json.loads(fmap.attrs["findings"]) + notes
-        return fmap.assign_attrs(campaign=json.dumps(facts), findings=json.dumps(findings))
-
-    def _failed(self, what: str, error: Exception) -> None:
-        """Say it in the panel: an exception in a handler reaches no user by itself."""
-        LOG.error("%s failed", what, exc_info=error)
-        kind = type(error).__name__
-        self._errors[what] = f"{what}: found a failure of the kit's own ({kind}: {error})."
-
-    def _work(self, what: str) -> None:
-        self.busy = what
-        self._tell("busy")
-
-    def _tell(self, topic: Topic) -> None:
-        for listener in self._listeners:
-            try:
-                listener(topic)
-            except Exception as error:  # noqa: BLE001 see _failed
-                self._failed("showing", error)
-
-
-def _check_order(axis: Axis) -> None:
-    for key, (low, high) in (("integrate", axis.integrate), ("flat", axis.flat)):
-        if not low < high:
-            raise InputError(
-                f"[axis] {key}",
-                f"from {low * 1e3:.6g} to {high * 1e3:.6g} mm",
-                "a first limit below the second",
-                "move one of them",
-            )
-
-
-def _departures(campaign: Campaign, active: tuple[bool, ...], axis: Axis) -> list[Finding]:
-    """What was chosen by hand against the campaign file."""
-    notes = []
-    left_out = [one.name for one, used in zip(campaign.passes, active, strict=True) if not used]
-    if left_out:
-        text = (
-            f"{len(left_out)} of {len(active)} passes left out by hand; results rest on the rest."
-        )
-        notes.append(Finding("passes-left-out", "note", ", ".join(left_out), text))
-    if not _same(axis, campaign.axis):
-        text = (
-            f"limits were moved by hand to {_span(axis.integrate)}, flat window "
-            f"{_span(axis.flat)}; the campaign file says {_span(campaign.axis.integrate)} and "
-            f"{_span(campaign.axis.flat)}."
-        )
-        notes.append(Finding("limits-moved", "note", "[axis]", text))
-    return notes
-
-
-def _same(one: Axis, other: Axis) -> bool:
-    """Whether limits and window agree to a nanometre: fields in mm round off more than that."""
-    ends = zip((*one.integrate, *one.flat), (*other.integrate, *other.flat), strict=True)
-    return all(math.isclose(a, b, rel_tol=0, abs_tol=1e-9) for a, b in ends)
-
-
-def _span(ends: tuple[float, float]) -> str:
-    return f"{ends[0] * 1e3:.6g} to {ends[1] * 1e3:.6g} mm"
-
-
-def _writable(folder: str | os.PathLike[str]) -> Path:
-    """Refuse an empty name, and the folders that came with the kit."""
-    text = str(folder).strip()
-    if not text:
-        raise InputError("folder for the files", "nothing", "the name of a folder", "name one")
-    place = Path(text).expanduser()
-    whole = place.resolve()
-    for own in (demo_folder().resolve(), PACKAGE):
-        if whole.is_relative_to(own):
-            raise InputError(
-                str(place),
-                "a folder that came with the kit",
-                "a folder of your own",
-                "name another one, so that the demo stays as it came",
-            )
-    return place
+            if self.stale or (self.fmap is None and self.solving):
+                self._errors["writing"] = str(_out_of_date())
+                self._tell("saved")
+                return
+            work = functools.partial(self._save, folder, self.fmap, self.results, self.axis)
+            self._do(work, lasting=True)

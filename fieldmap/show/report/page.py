@@ -16,11 +16,11 @@ from fieldmap.estimate.map import map_axis, map_limits, map_title
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.show.cautions import caution_html
 from fieldmap.show.markup import findings_html
-from fieldmap.show.report_evidence import SIGNATURES, provenance_section, trust_section
-from fieldmap.show.report_lines import line_parts, residuals_part
-from fieldmap.show.report_measured import measured_section, passes_section
-from fieldmap.show.report_parts import Section, safe
-from fieldmap.show.report_results import head, verdicts_section
+from fieldmap.show.report.evidence import SIGNATURES, provenance_section, trust_section
+from fieldmap.show.report.lines import line_parts, residuals_part
+from fieldmap.show.report.measured import measured_section, passes_section
+from fieldmap.show.report.parts import Section, safe
+from fieldmap.show.report.results import head, verdicts_section
 from fieldmap.show.rows import line_title
 from fieldmap.version import __version__
 

@@ -14,11 +14,11 @@ import numpy.typing as npt
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.map import FORMAT, map_axis, map_magnet, map_title
 from fieldmap.estimate.store import load_map
-from fieldmap.magnet.alignment import Alignment, Pair, align, band_factor, first_shift
-from fieldmap.magnet.comparison import ComparedResult, Comparison, DifferenceProfile
-from fieldmap.magnet.design_profile import design_profile, read_design
+from fieldmap.magnet.comparison.alignment import Alignment, Pair, align, band_factor, first_shift
+from fieldmap.magnet.comparison.design_profile import design_profile, read_design
+from fieldmap.magnet.comparison.outcome import ComparedResult, Comparison, DifferenceProfile
+from fieldmap.magnet.comparison.position_errors import position_errors
 from fieldmap.magnet.length import length_results
-from fieldmap.magnet.position_errors import position_errors
 from fieldmap.magnet.quantity import Quantity
 from fieldmap.magnet.sampling import chosen_line
 from fieldmap.readings.netcdf_table import is_netcdf
@@ -28,8 +28,8 @@ if TYPE_CHECKING:
     import xarray as xr
 
     from fieldmap.estimate.fieldline import FieldLine
-    from fieldmap.magnet.design_profile import DesignProfile
-    from fieldmap.magnet.position_errors import PositionErrors
+    from fieldmap.magnet.comparison.design_profile import DesignProfile
+    from fieldmap.magnet.comparison.position_errors import PositionErrors
 
 __all__ = ["compare"]
 

@@ -13,7 +13,7 @@ from fieldmap.estimate.provenance import (
 )
 from fieldmap.readings.probe import Wire
 from fieldmap.show.numbers import plain, scale_for
-from fieldmap.show.report_parts import Column, Section, paragraph, safe, table
+from fieldmap.show.report.parts import Column, Section, paragraph, safe, table
 from fieldmap.show.stated import in_handy_unit, stated_rows, written_out
 
 if TYPE_CHECKING:

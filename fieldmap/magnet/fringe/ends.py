@@ -8,7 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import RefusedError
-from fieldmap.magnet.fringe_fit import Stretch
+from fieldmap.magnet.fringe.fit import Stretch
 from fieldmap.magnet.length import SMALLEST_LEVEL, length_results
 
 if TYPE_CHECKING:

@@ -10,17 +10,17 @@ import numpy.typing as npt
 from scipy import linalg
 
 from fieldmap.errors import RefusedError
-from fieldmap.magnet.fringe_ends import End
-from fieldmap.magnet.fringe_fit import Solution, first_curve, fit_curves, own_factor
-from fieldmap.magnet.fringe_information import displacing, information_on
-from fieldmap.magnet.fringe_orders import TURNS, Trial, departures, try_orders
+from fieldmap.magnet.fringe.ends import End
+from fieldmap.magnet.fringe.fit import Solution, first_curve, fit_curves, own_factor
+from fieldmap.magnet.fringe.information import displacing, information_on
+from fieldmap.magnet.fringe.orders import TURNS, Trial, departures, try_orders
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
     from fieldmap.estimate.evidence import Evidence
-    from fieldmap.magnet.fringe_fit import Stretch
-    from fieldmap.magnet.fringe_information import Whitened
+    from fieldmap.magnet.fringe.fit import Stretch
+    from fieldmap.magnet.fringe.information import Whitened
 
 __all__ = ["Canonicals", "JointFit", "fit_ends", "refit"]
 

@@ -9,13 +9,13 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import InputError, RefusedError
-from fieldmap.magnet.fringe_joint import refit
-from fieldmap.magnet.fringe_orders import probability
+from fieldmap.magnet.fringe.joint import refit
+from fieldmap.magnet.fringe.orders import probability
 from fieldmap.magnet.quantity import Quantity
 
 if TYPE_CHECKING:
-    from fieldmap.magnet.fringe import Fringe
-    from fieldmap.magnet.fringe_joint import JointFit
+    from fieldmap.magnet.fringe.fitted import Fringe
+    from fieldmap.magnet.fringe.joint import JointFit
 
 __all__ = ["EndsCompared", "compare_ends"]
 
@@ -115,7 +115,7 @@ def compare_ends(fringe_in: Fringe, fringe_out: Fringe) -> EndsCompared:
     Examples
     --------
     >>> import fieldmap
-    >>> from fieldmap.magnet.fringe import fringes
+    >>> from fieldmap.magnet.fringe.fitted import fringes
     >>> from fieldmap.shipped import demo_folder
     >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "foreign_tables" / "campaign.toml"))
     >>> found, _ = fringes(fmap)

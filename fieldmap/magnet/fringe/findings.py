@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Final
 
 from fieldmap.errors import FieldmapError
 from fieldmap.estimate.findings import Finding
-from fieldmap.magnet.fringe import Fringe, fringes
+from fieldmap.magnet.fringe.fitted import Fringe, fringes
 
 if TYPE_CHECKING:
     import xarray as xr

@@ -8,8 +8,8 @@ import numpy as np
 
 from fieldmap.show.look import BLUE, INK, SOFT, dress, legend_above
 from fieldmap.show.numbers import plain, rounded
-from fieldmap.show.report_parts import Column, paragraph, table
-from fieldmap.show.report_results import quantity_words
+from fieldmap.show.report.parts import Column, paragraph, table
+from fieldmap.show.report.results import quantity_words
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from matplotlib.figure import Figure
 
     from fieldmap.estimate.fieldline import FieldLine
-    from fieldmap.magnet.fringe import Fringe
+    from fieldmap.magnet.fringe.fitted import Fringe
 
 __all__ = ["fringe_figure", "fringe_part"]
 

@@ -10,7 +10,7 @@ from fieldmap.estimate.map import map_lines, map_magnet, map_passes, map_title
 from fieldmap.estimate.provenance import map_joint, map_unknowns
 from fieldmap.magnet.budget import UNKNOWN_CAUSES
 from fieldmap.show.numbers import plain, rounded
-from fieldmap.show.report_parts import Column, Section, paragraph, table
+from fieldmap.show.report.parts import Column, Section, paragraph, table
 from fieldmap.show.rows import line_title
 from fieldmap.show.stated import in_handy_unit
 from fieldmap.version import __version__

@@ -9,7 +9,7 @@ if TYPE_CHECKING:
     import numpy as np
     import numpy.typing as npt
 
-    from fieldmap.magnet.expansion import OffAxis
+    from fieldmap.magnet.handover.expansion import OffAxis
 
     Floats = npt.NDArray[np.float64]
 

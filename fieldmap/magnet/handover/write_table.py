@@ -9,7 +9,7 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.magnet.exported import one_line
+from fieldmap.magnet.handover.exported import one_line
 from fieldmap.version import __version__
 
 if TYPE_CHECKING:
@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-    from fieldmap.magnet.exported import ExportedTable
+    from fieldmap.magnet.handover.exported import ExportedTable
 
 __all__ = ["csv_decimals", "write_csv", "write_netcdf"]
 

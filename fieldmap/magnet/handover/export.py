@@ -13,10 +13,10 @@ import numpy.typing as npt
 from fieldmap.atomic import replacing
 from fieldmap.errors import InputError
 from fieldmap.estimate.map import map_axis, map_magnet, map_title
-from fieldmap.magnet.expansion import expansion_range, off_axis
-from fieldmap.magnet.exported import ExportedTable, TableIntegral
+from fieldmap.magnet.handover.expansion import expansion_range, off_axis
+from fieldmap.magnet.handover.exported import ExportedTable, TableIntegral
+from fieldmap.magnet.handover.write_table import csv_decimals, write_csv, write_netcdf
 from fieldmap.magnet.sampling import Term, chosen_line, sample
-from fieldmap.magnet.write_table import csv_decimals, write_csv, write_netcdf
 
 if TYPE_CHECKING:
     import os
@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     import xarray as xr
 
     from fieldmap.estimate.fieldline import FieldLine
-    from fieldmap.magnet.expansion import OffAxis
+    from fieldmap.magnet.handover.expansion import OffAxis
 
 __all__ = ["export_table"]
 
@@ -73,7 +73,7 @@ def export_table(
         Index of the line.
     off_axis : float, optional
         Distance from the axis of a solenoid, or from the median plane of a dipole, m: adds
-        columns with the field there, see `fieldmap.magnet.expansion`.
+        columns with the field there, see `fieldmap.magnet.handover.expansion`.
 
     Returns
     -------

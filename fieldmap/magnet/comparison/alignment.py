@@ -22,7 +22,7 @@ from fieldmap.errors import RefusedError
 
 if TYPE_CHECKING:
     from fieldmap.estimate.fieldline import FieldLine
-    from fieldmap.magnet.position_errors import PositionErrors
+    from fieldmap.magnet.comparison.position_errors import PositionErrors
 
 __all__ = ["Alignment", "Pair", "align", "band_factor", "first_shift"]
 

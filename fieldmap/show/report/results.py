@@ -8,7 +8,7 @@ from fieldmap.magnet.budget import budget
 from fieldmap.show.budget import TYPES, budget_html, correlation_html
 from fieldmap.show.budget_rows import with_unit
 from fieldmap.show.numbers import rounded, scale_for
-from fieldmap.show.report_parts import Column, Section, paragraph, safe, table
+from fieldmap.show.report.parts import Column, Section, paragraph, safe, table
 from fieldmap.show.rows import (
     coverage_words,
     label,

@@ -8,9 +8,9 @@ from fieldmap.estimate.map import map_lines
 from fieldmap.show.budget_plots import budget_figure
 from fieldmap.show.figures import profile_figure, residuals_figure
 from fieldmap.show.picture import blank_figure
-from fieldmap.show.report_fringe import fringe_figure, fringe_part
-from fieldmap.show.report_parts import Section, figure
-from fieldmap.show.report_results import budget_parts, charted, results_part
+from fieldmap.show.report.fringe import fringe_figure, fringe_part
+from fieldmap.show.report.parts import Section, figure
+from fieldmap.show.report.results import budget_parts, charted, results_part
 from fieldmap.show.vector import inline_svg
 
 if TYPE_CHECKING:

@@ -1,7 +1,7 @@
 """Tails: the integral that lies beyond the limits, and the total with both of them.
 
 Where the map reaches beyond a limit, that part is measured; what lies beyond the map follows
-from the law by which the field dies away before its end (`fieldmap.magnet.decay`).
+from the law by which the field dies away before its end (`fieldmap.magnet.tails.decay`).
 """
 
 from __future__ import annotations
@@ -13,8 +13,8 @@ from typing import TYPE_CHECKING, Final, Literal
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.magnet.decay import Decay, Stretches, decay_of
 from fieldmap.magnet.functional import Functional, functional
+from fieldmap.magnet.tails.decay import Decay, Stretches, decay_of
 
 if TYPE_CHECKING:
     from collections.abc import Mapping

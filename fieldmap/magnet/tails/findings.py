@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Final
 
 from fieldmap.estimate.findings import Finding
-from fieldmap.magnet.tail import SIDES, MapEnd, map_end
+from fieldmap.magnet.tails.tail import SIDES, MapEnd, map_end
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence

@@ -16,10 +16,10 @@ import numpy.typing as npt
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.map import map_axis, map_magnet
 from fieldmap.estimate.provenance import map_evidence, map_joint
-from fieldmap.magnet.enge import EngeCurve
-from fieldmap.magnet.fringe_ends import End, locate
-from fieldmap.magnet.fringe_joint import JointFit, fit_ends
-from fieldmap.magnet.fringe_orders import HIGHEST, probability
+from fieldmap.magnet.fringe.ends import End, locate
+from fieldmap.magnet.fringe.enge import EngeCurve
+from fieldmap.magnet.fringe.joint import JointFit, fit_ends
+from fieldmap.magnet.fringe.orders import HIGHEST, probability
 from fieldmap.magnet.quantity import Quantity
 from fieldmap.magnet.sampling import chosen_line
 
@@ -28,7 +28,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-    from fieldmap.magnet.fringe_orders import Trial
+    from fieldmap.magnet.fringe.orders import Trial
     from fieldmap.readings.passes import Axis
 
 __all__ = ["REACH", "Fringe", "fringe", "fringes"]

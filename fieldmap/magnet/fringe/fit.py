@@ -17,13 +17,13 @@ import numpy as np
 import numpy.typing as npt
 from scipy import linalg
 
-from fieldmap.magnet.enge import EngeCurve
+from fieldmap.magnet.fringe.enge import EngeCurve
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
     from fieldmap.estimate.spline import UniformSpline
-    from fieldmap.magnet.fringe_information import Whitened
+    from fieldmap.magnet.fringe.information import Whitened
 
 __all__ = ["Solution", "Stretch", "first_curve", "fit_curves", "own_factor"]
 

@@ -20,11 +20,11 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.magnet.fringe_fit import Solution, first_curve, fit_curves
+from fieldmap.magnet.fringe.fit import Solution, first_curve, fit_curves
 
 if TYPE_CHECKING:
-    from fieldmap.magnet.fringe_fit import Stretch
-    from fieldmap.magnet.fringe_information import Whitened
+    from fieldmap.magnet.fringe.fit import Stretch
+    from fieldmap.magnet.fringe.information import Whitened
 
 __all__ = ["HIGHEST", "POOR", "TURNS", "Trial", "departures", "probability", "try_orders"]
 

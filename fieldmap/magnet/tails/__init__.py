@@ -1,0 +1,1 @@
+"""What lies beyond the limits of the integral."""

@@ -1,0 +1,89 @@
+"""What is chosen by hand in a reduction, in the words in which it is kept."""
+
+from __future__ import annotations
+
+import math
+from typing import TYPE_CHECKING, Any, Literal
+
+from fieldmap.errors import InputError
+from fieldmap.show.panels.departures import reference_words, same_spans
+
+if TYPE_CHECKING:
+    from fieldmap.show.panels.state import Reduction
+
+__all__ = ["remember_choices"]
+
+
+def remember_choices(state: Reduction) -> None:
+    """Name passes and references that are left out, limits and flat window, to be kept.
+
+    They are set without solving: that is done once all are set.
+    """
+    state.remember(
+        "passes_off", lambda: _passes_off(state), lambda value: _put_passes_off(state, value)
+    )
+    state.remember(
+        "references_off",
+        lambda: _references_off(state),
+        lambda value: _put_references_off(state, value),
+    )
+    for key in ("integrate", "flat"):
+        _remember_span(state, key)  # type: ignore[arg-type]
+
+
+def _remember_span(state: Reduction, key: Literal["integrate", "flat"]) -> None:
+    def get() -> list[float] | None:
+        campaign, axis = state.campaign, state.axis
+        if campaign is None or axis is None or same_spans(axis, campaign.axis):
+            return None
+        own = getattr(axis, key)
+        return None if own == getattr(campaign.axis, key) else list(own)
+
+    def put(value: Any) -> None:
+        if value is not None and state.axis is not None:
+            ends = _ends(value)
+            state.axis = state.axis.moved(**{key: ends})
+
+    state.remember(key, get, put)
+
+
+def _ends(value: Any) -> tuple[float, float]:
+    """Two positions, m."""
+    number = isinstance(value, list) and len(value) == 2
+    if not number or not all(
+        isinstance(end, int | float) and not isinstance(end, bool) and math.isfinite(end)
+        for end in value
+    ):
+        raise InputError("limits", repr(value)[:60], "two positions in m")
+    if not value[0] < value[1]:
+        raise InputError("limits", repr(value)[:60], "a first limit below the second")
+    return float(value[0]), float(value[1])
+
+
+def _passes_off(state: Reduction) -> list[str]:
+    passes = state.campaign.passes if state.campaign else ()
+    return [one.name for one, used in zip(passes, state.active, strict=False) if not used]
+
+
+def _put_passes_off(state: Reduction, value: Any) -> None:
+    names = _texts(value, "names of passes")
+    passes = state.campaign.passes if state.campaign else ()
+    state.active = tuple(one.name not in names for one in passes)
+
+
+def _references_off(state: Reduction) -> list[str]:
+    references = state.campaign.references if state.campaign else ()
+    pairs = zip(references, state.trusted, strict=False)
+    return [reference_words(one) for one, used in pairs if not used]
+
+
+def _put_references_off(state: Reduction, value: Any) -> None:
+    words = _texts(value, "references in words")
+    references = state.campaign.references if state.campaign else ()
+    state.trusted = tuple(reference_words(one) not in words for one in references)
+
+
+def _texts(value: Any, expected: str) -> set[str]:
+    if not isinstance(value, list) or not all(isinstance(one, str) for one in value):
+        raise InputError("list", repr(value)[:60], expected)
+    return set(value)
