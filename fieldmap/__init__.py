@@ -10,10 +10,11 @@
 from fieldmap.errors import FieldmapError, InputError, RefusedError
 from fieldmap.estimate.stitch import reconstruct, stitch
 from fieldmap.estimate.store import load_map, save_map
+from fieldmap.magnet.budget import budget
+from fieldmap.magnet.comparison import compare
 from fieldmap.magnet.evaluate import evaluate
-from fieldmap.magnet.quantity import Quantity
-from fieldmap.magnet.results import Results
-from fieldmap.readings import Campaign, Pass, load, make_pass
+from fieldmap.magnet.handover import export_table
+from fieldmap.readings import Campaign, load, make_pass
 from fieldmap.show.handover import save_reduction
 from fieldmap.version import __version__
 
@@ -21,12 +22,12 @@ __all__ = [
     "Campaign",
     "FieldmapError",
     "InputError",
-    "Pass",
-    "Quantity",
     "RefusedError",
-    "Results",
     "__version__",
+    "budget",
+    "compare",
     "evaluate",
+    "export_table",
     "load",
     "load_map",
     "make_pass",

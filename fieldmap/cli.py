@@ -20,6 +20,7 @@ from fieldmap.units import si
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
+    from fieldmap.bench.confirmation import Confirmation
     from fieldmap.magnet.results import Results
     from fieldmap.readings import Limit
 
@@ -93,11 +94,28 @@ def _parser() -> argparse.ArgumentParser:
     reduce = verbs.add_parser("reduce", help="reduce a campaign to a map, results and a report")
     reduce.add_argument("campaign", metavar="CAMPAIGN", help="campaign.toml, or its folder")
     reduce.add_argument("--out", required=True, metavar="DIR", help="folder for the files")
+    reduce.add_argument(
+        "--confirm",
+        type=int,
+        metavar="TRIALS",
+        help="check the uncertainties by that many trials of the whole chain (JCGM 101); 100 take "
+        "a minute or more",
+    )
     reduce.set_defaults(run=_reduce)
 
     report = verbs.add_parser("report", help="write the report again, from the map alone")
     report.add_argument("map", metavar="MAP", help="map.nc, or the folder that holds it")
     report.add_argument("--out", required=True, metavar="DIR", help="folder for report.html")
+    report.add_argument(
+        "--against",
+        metavar="OTHER",
+        help="compare with another map, or a design profile in .csv or .nc",
+    )
+    report.add_argument(
+        "--same-bench",
+        action="store_true",
+        help="the other map was taken with the same probes and stage: their errors are common",
+    )
     report.set_defaults(run=_report)
 
     export = verbs.add_parser("export", help="write a plain table of a map: CSV or NetCDF")
@@ -120,24 +138,34 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _reduce(chosen: argparse.Namespace) -> None:
-    _reduce_campaign(Path(chosen.campaign), Path(chosen.out), truth=None)
+    _reduce_campaign(Path(chosen.campaign), Path(chosen.out), trials=chosen.confirm)
 
 
-def _reduce_campaign(source: Path, out: Path, truth: Path | None) -> None:
+def _reduce_campaign(
+    source: Path, out: Path, truth: Path | None = None, trials: int | None = None
+) -> None:
     """Reduce, write, and print what a person wants to read."""
     from fieldmap.show.cautions import caution_text
+    from fieldmap.show.confirmation import confirmation_text
     from fieldmap.show.tables import summary_text
 
-    results, limits, files = _with_progress(source, out)
+    results, limits, confirmation, files = _with_progress(source, out, trials)
     known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
     print(summary_text(results, limits, truth=known))
+    if confirmation is not None:
+        print(f"\n{confirmation_text(confirmation)}")
     print(f"\nWritten: {', '.join(str(file) for file in files)}\n")
     print(caution_text())
 
 
-def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...], tuple[Path, ...]]:
+def _with_progress(
+    source: Path, out: Path, trials: int | None
+) -> tuple[Results, tuple[Limit, ...], Confirmation | None, tuple[Path, ...]]:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
+
+    from fieldmap.bench.trials import confirm
+    from fieldmap.show.report import confirmation_section
 
     with tqdm(delay=2, leave=False, disable=None, dynamic_ncols=True, bar_format=BAR) as bar:
 
@@ -151,15 +179,25 @@ def _with_progress(source: Path, out: Path) -> tuple[Results, tuple[Limit, ...],
         bar.reset(total=STEPS_OF_A_SOLVE * len({(one.x, one.y) for one in campaign.passes}))
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
-        files = fieldmap.save_reduction(fmap, results, out)
-    return results, campaign.limits, files
+        confirmation = None if trials is None else confirm(campaign, fmap, trials=trials, tell=tell)
+        extra = [] if confirmation is None else [confirmation_section(confirmation)]
+        files = fieldmap.save_reduction(fmap, results, out, extra=extra)
+    return results, campaign.limits, confirmation, files
 
 
 def _report(chosen: argparse.Namespace) -> None:
-    from fieldmap.show.report.page import FILE_NAME, save_report
+    from fieldmap.magnet.comparison import compare
+    from fieldmap.show.comparison import comparison_text
+    from fieldmap.show.report import comparison_section, save_report
+    from fieldmap.show.report.page import FILE_NAME
 
     fmap = fieldmap.load_map(_map_file(chosen.map))
-    print(f"Written: {save_report(fmap, Path(chosen.out) / FILE_NAME)}")
+    extra = []
+    if chosen.against is not None:
+        comparison = compare(fmap, _map_file(chosen.against), same_bench=chosen.same_bench)
+        extra = [comparison_section(comparison)]
+        print(f"{comparison_text(comparison)}\n")
+    print(f"Written: {save_report(fmap, Path(chosen.out) / FILE_NAME, extra=extra)}")
 
 
 def _map_file(given: str) -> Path:
@@ -196,7 +234,8 @@ def _demo(chosen: argparse.Namespace) -> None:
     source = folder / "demo_data" / SHOWN_DEMO
     print(f"Demo campaigns and notebooks: {folder}")
     print(f"$ fieldmap reduce {source / 'campaign.toml'} --out {source / 'reduced'}\n")
-    _reduce_campaign(source / "campaign.toml", source / "reduced", source / "truth.json")
+    truth = source / "truth.json"
+    _reduce_campaign(source / "campaign.toml", source / "reduced", truth)
 
 
 def _copy_demo(folder: Path) -> Path:

@@ -8,7 +8,7 @@ import pytest
 from fieldmap.bench.sources import TanhMagnet, Uniform
 from fieldmap.errors import RefusedError
 from fieldmap.estimate.fieldline import FieldLine
-from fieldmap.magnet.comparison.alignment import Pair, align, band_factor, first_shift
+from fieldmap.magnet.comparison.alignment import CommonErrors, Pair, align, band_factor, first_shift
 from fieldmap.magnet.comparison.design_profile import design_profile
 from fieldmap.magnet.comparison.position_errors import position_errors
 from tests.pairs import SOFT, map_of, plain_map
@@ -38,7 +38,7 @@ def drawn(line, root, rng):
 @pytest.mark.parametrize(("shift", "scale"), [(0.0, 0.0), (3e-3, -0.02), (-0.05, 0.1)])
 def test_exact_profiles_give_exact_values(shift, scale):
     first = line_of((1 + scale) * SOFT.shifted(shift), np.eye(163) * 1e-6)
-    pair = Pair(first, line_of(SOFT), np.zeros((163, 163)))
+    pair = Pair(first, line_of(SOFT))
     s = S[(S - shift > -0.4) & (S - shift < 0.4)]
     found = align(pair, s, first_shift(pair, -0.4, 0.4))
     assert found.shift == pytest.approx(shift, abs=2e-7)
@@ -53,7 +53,6 @@ def test_errors_are_those_stated():
     for _ in range(150):
         pair = Pair(
             *(replace(drawn(one, root, rng), covariance=root @ root.T) for one in truth),
-            np.zeros((163, 163)),
         )
         found = align(pair, S, 0.0)
         u = np.sqrt(np.diagonal(found.covariance))
@@ -70,8 +69,8 @@ def test_common_errors_cancel():
     line = line_of(SOFT)
     gain = 4e-4 * line.b
     shared = replace(line, covariance=np.outer(gain, gain) + 1e-12 * np.eye(163))
-    apart = align(Pair(shared, shared, np.zeros((163, 163))), S, 0.0)
-    together = align(Pair(shared, shared, np.outer(gain, gain)), S, 0.0)
+    apart = align(Pair(shared, shared), S, 0.0)
+    together = align(Pair(shared, shared, CommonErrors(gain[:, None], gain[:, None])), S, 0.0)
     assert np.sqrt(apart.covariance[1, 1]) == pytest.approx(4e-4 * np.sqrt(2), rel=1e-3)
     assert np.sqrt(together.covariance[1, 1]) < 1e-6
 
@@ -81,8 +80,7 @@ def test_the_offset_of_the_stage_is_no_shift_that_a_fit_could_tell():
     for knots, most in ((0.006, 0.99), (0.012, 0.3)):
         maps = [map_of(SOFT, seed, knots=knots) for seed in (1, 2)]
         lines = [position_errors(one, 0).line for one in maps]
-        size = [len(one.b) for one in lines]
-        pair = Pair(*lines, np.zeros(size), moves=tuple(position_errors(m, 0) for m in maps))
+        pair = Pair(*lines, moves=tuple(position_errors(m, 0) for m in maps))
         s = np.linspace(-0.39, 0.39, 66)
         u = np.sqrt(align(pair, s, 0.0).covariance[0, 0])
         assert u == pytest.approx(np.sqrt(2) * STAGE.u_offset, rel=0.05)
@@ -104,7 +102,7 @@ def test_what_does_not_determine_a_shift_is_refused():
     flat = line_of(Uniform(0.5), np.eye(163) * 1e-5)
     for other in (line_of(Uniform(0.5)), line_of(Uniform(0.0))):
         with pytest.raises(RefusedError) as caught:
-            align(Pair(flat, other, np.zeros((163, 163))), S, 0.0)
+            align(Pair(flat, other), S, 0.0)
         assert caught.value.code == "not-aligned"
 
 
@@ -126,7 +124,7 @@ def test_points_that_move_together_count_once():
 def test_the_same_profiles_give_the_same_digits():
     line = line_of(TanhMagnet(0.5, 0.3, 0.02), np.eye(163) * 1e-5)
     assert isinstance(line, FieldLine)
-    pair = Pair(line, line_of(SOFT), np.zeros((163, 163)))
+    pair = Pair(line, line_of(SOFT))
     first, again = (band_factor(align(pair, S, 0.0).spread) for _ in range(2))
     np.testing.assert_array_equal(first[0], again[0])
     assert first[1] == again[1]

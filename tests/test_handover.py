@@ -14,8 +14,8 @@ from fieldmap.estimate.map import map_axis
 from fieldmap.estimate.store import load_map
 from fieldmap.magnet import evaluate
 from fieldmap.show import handover
-from fieldmap.show.report import page as report_module
 from fieldmap.show.handover import save_reduction
+from fieldmap.show.report import page as report_module
 from fieldmap.show.report.page import report_html
 from tests.shop import measured, planned
 

@@ -14,7 +14,7 @@ import pytest
 import fieldmap
 from fieldmap.shipped import notebook_folder
 
-NAMES = ("check_magnetic_length", "map_fringe_field")
+NAMES = ("check_magnetic_length", "map_fringe_field", "explore_passes")
 WRITTEN = {"check_magnetic_length": ["fieldmap-results/by_calls/report.html"]}
 LOGIC = (
     *(ast.FunctionDef, ast.ClassDef, ast.Lambda, ast.If, ast.IfExp, ast.For, ast.While),

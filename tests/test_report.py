@@ -16,8 +16,8 @@ from fieldmap.magnet import evaluate
 from fieldmap.magnet.budget import budget
 from fieldmap.readings import Limit
 from fieldmap.readings.passes import FlipReference, PointReference, ZeroReference
-from fieldmap.show.report import page as report_module
 from fieldmap.show.budget_rows import budget_rows
+from fieldmap.show.report import page as report_module
 from fieldmap.show.report.page import report_html, save_report
 from fieldmap.show.rows import result_rows
 from tests.shop import RECT, measured, planned

@@ -149,7 +149,7 @@ def test_a_line_without_results_says_so():
 
 def test_unknown_keys_are_shown_too():
     row = results_text(one_line({"sextupole_share": Quantity(2.0, 0.1, "1")})).splitlines()[-1]
-    assert row.split() == ["Sextupole", "share", "20000", "2000", "1e-4"]
+    assert row.split() == ["Sextupole", "share", "2.00", "0.20"]
 
 
 @pytest.mark.parametrize(

@@ -2,14 +2,17 @@
 
 A wire tells the field itself, a coil only how it varies under its window, each up to the drift
 of its integrator, its gain and its position errors. So they are compared by what they say of one
-field: both read B, and the first reads B + δ, with δ a coarse spline over the stretch that both
-travelled. B follows the smoothness prior of the map and is otherwise left to the two passes;
-references and other passes have no say. If the passes agree, δ is zero within its covariance.
+field: one reads B, the other B + δ, with δ a coarse spline over the stretch that both travelled.
+B may everywhere be as rough as the map found it at its roughest, and is otherwise left to the two
+passes; references and other passes have no say. B is what the pass reads that tells more, so that
+the prior, which has its weight where readings tell little, does not bear on δ. If the passes
+agree, δ is zero within its covariance.
 
 * The *test* is χ² = δᵀ cov(δ)⁻¹ δ with everything free at once, so that a drift, a gain or a lag
   within its prior is no disagreement.
-* The *curve* is δ with those nuisances set to what explains both passes best with δ = 0: what the
-  best offset and drift leave over, with the band of the noise.
+* The *curve* is δ with those nuisances set to what explains both passes best with δ = 0, but not
+  more than two prior uncertainties off: what the best offset and drift leave over, with the band
+  of the noise.
 * Where one of the two is a coil the level of δ is told by no reading; it is then taken such that
   the mean of δ is zero, and the curve shows its shape.
 
@@ -49,6 +52,7 @@ FEWEST_PIECES: Final = 4
 KNOTS: Final = 4.0  # δ is no finer than this many knots of the map
 WINDOWS: Final = 2.0  # … or this many windows of the longer probe
 POINTS: Final = 401
+FARTHEST: Final = 2.0  # prior uncertainties that a nuisance may explain a difference by
 SAFE: Final = 0.01  # probability below which chance is no explanation
 
 
@@ -159,7 +163,8 @@ def pass_agreement(
     about = evidence.recorded(map_joint(fmap, pair.line).values)
     system = _system(evidence, pair, shapes, about)
     delta, spread, freedom = system.test()
-    nuisances = system.nuisances_alone()
+    found = about[line.spline.size :]
+    nuisances = _within(found + system.nuisances_alone(), evidence.prior) - found
     curve, curve_spread = system.given(nuisances)
     s = np.linspace(pair.low, pair.high, POINTS)
     rows = line.spline.field_rows(s) @ shapes
@@ -175,7 +180,7 @@ def pass_agreement(
         resolution=coarse.spacing,
         chi_square=float(delta @ np.linalg.solve(spread, delta)),
         freedom=freedom,
-        removed=_removed(fmap, pair, about[line.spline.size :] + nuisances),
+        removed=_removed(fmap, pair, found + nuisances),
     )
 
 
@@ -227,12 +232,16 @@ def _shapes(coarse: UniformSpline, fine: UniformSpline, *, level_known: bool) ->
     Beyond the overlap a shape goes on as it ends, which readings there cannot tell from B.
     """
     inside = np.clip(fine.middles(), coarse.start, coarse.stop)
-    shapes = coarse.field_rows(inside)
+    # the outermost functions have little of themselves inside: they go with their neighbours
+    ends = np.eye(coarse.size)[:, 1:-1]
+    ends[0, 0] = ends[-1, -1] = 1.0
+    shapes = coarse.field_rows(inside) @ ends
+    count = shapes.shape[1]
     if level_known:
-        return shapes
+        return np.asarray(shapes)
     # all coefficients alike are a level: what is orthogonal to it has none
-    basis = np.linalg.qr(np.column_stack([np.ones(coarse.size), np.eye(coarse.size)[:, 1:]]))[0]
-    return shapes @ basis[:, 1:]
+    basis = np.linalg.qr(np.column_stack([np.ones(count), np.eye(count)[:, 1:]]))[0]
+    return np.asarray(shapes @ basis[:, 1:])
 
 
 @dataclass(frozen=True, eq=False)
@@ -259,7 +268,8 @@ class _System:
     def nuisances_alone(self) -> Floats:
         """Nuisances that explain both passes best without any difference."""
         n = self.size + self.others
-        return NormalSystem(self.matrix[:n, :n]).solve(self.right[:n])[self.size :]
+        joint: Floats = NormalSystem(self.matrix[:n, :n]).solve(self.right[:n])
+        return joint[self.size :]
 
     def given(self, nuisances: Floats) -> tuple[Floats, Floats]:
         """The difference and its covariance with the nuisances set."""
@@ -283,8 +293,10 @@ def _system(evidence: Evidence, pair: _Pair, shapes: Floats, about: Floats) -> _
         matrix += spread.T @ one.matrix @ spread
         right += spread.T @ one.right
     smooth = evidence.smoothness(recorded=True)
-    matrix[: n + m, : n + m] += smooth.rows.T @ smooth.rows
-    right[: n + m] += smooth.rows.T @ (smooth.target - smooth.rows @ about)
+    ease = np.sqrt(evidence.roughness / evidence.roughness.max())
+    rows = ease[:, None] * smooth.rows
+    matrix[: n + m, : n + m] += rows.T @ rows
+    right[: n + m] += rows.T @ (ease * smooth.target - rows @ about)
     right[n : n + m] += evidence.prior - about[n:]
     loose = float(np.abs(about[:n]).max() or 1.0) ** -2
     each = np.arange(n + m + k)
@@ -311,6 +323,11 @@ def _on(shapes: Floats, told: _Told) -> float:
     """How much a pass tells of the shapes of the difference, summed over them."""
     n = len(shapes)
     return float(np.einsum("ik,ij,jk->", shapes, told.matrix[:n, :n], shapes, optimize=True))
+
+
+def _within(nuisances: Floats, prior: Floats) -> Floats:
+    """Nuisances, in units of their prior uncertainties, not further off than some of these."""
+    return np.asarray(np.clip(nuisances, prior - FARTHEST, prior + FARTHEST))
 
 
 def _removed(fmap: xr.Dataset, pair: _Pair, values: Floats) -> tuple[tuple[Nuisance, float], ...]:

@@ -20,6 +20,7 @@ if TYPE_CHECKING:
 
 __all__ = [
     "Joint",
+    "ReferenceFit",
     "line_reference_numbers",
     "map_evidence",
     "map_integrators",
@@ -28,6 +29,7 @@ __all__ = [
     "map_references",
     "map_stage",
     "map_unknowns",
+    "reference_fits",
 ]
 
 Floats = npt.NDArray[np.float64]
@@ -46,6 +48,28 @@ class Joint(NamedTuple):
 
     values: Floats
     covariance: Floats
+
+
+class ReferenceFit(NamedTuple):
+    """How the map agrees with one reference on one line.
+
+    Parameters
+    ----------
+    number : int
+        Of the reference, from 1.
+    line : int
+        Index of the line.
+    difference : float
+        Map less reference, in standard uncertainties of the reference.
+    told : float
+        Variance expected of that difference: about 1 where the rest of the campaign tells the
+        same much better, about 0 where the reference alone tells it.
+    """
+
+    number: int
+    line: int
+    difference: float
+    told: float
 
 
 def map_joint(fmap: xr.Dataset, line: int = 0) -> Joint:
@@ -101,6 +125,39 @@ def map_evidence(fmap: xr.Dataset, line: int = 0) -> Evidence:
     except (KeyError, IndexError, ValueError) as error:
         found = f"evidence of the readings that is missing or damaged ({error})"
         raise InputError("map", found, "a whole map", "reduce the campaign again") from error
+
+
+def reference_fits(fmap: xr.Dataset) -> list[ReferenceFit]:
+    """How the map agrees with the absolute references it was made with.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+
+    Returns
+    -------
+    list of ReferenceFit
+        Line by line.
+
+    Raises
+    ------
+    InputError
+        The map keeps no evidence.
+    """
+    found = []
+    for line in range(len(json.loads(fmap.attrs["lines"]))):
+        evidence, joint = map_evidence(fmap, line), map_joint(fmap, line)
+        rows = evidence.references
+        differences = rows @ evidence.recorded(joint.values) - evidence.reference_target
+        true = rows.copy()  # rows on the unknowns at true positions
+        true[:, evidence.size :] -= rows[:, : evidence.size] @ evidence.frame
+        told = 1 - np.einsum("ij,jk,ik->i", true, joint.covariance, true)
+        for number, difference, share in zip(
+            line_reference_numbers(fmap, line), differences, told, strict=True
+        ):
+            found.append(ReferenceFit(number, line, float(difference), max(float(share), 0.0)))
+    return found
 
 
 def map_unknowns(fmap: xr.Dataset, line: int = 0) -> list[Nuisance]:

@@ -105,7 +105,7 @@ def voltage_spectrum(dwell: Dwell, segments: int = SEGMENTS) -> Spectrum:
     >>> hum = np.sin(2 * np.pi * 50 * time)
     >>> (dwell,) = find_dwells(make_pass(0 * time, hum, time, probe=Wire("w", 1, 1)))
     >>> found = voltage_spectrum(dwell)
-    >>> abs(found.frequency[found.density.argmax()] - 50) <= found.width / 2
+    >>> bool(abs(found.frequency[found.density.argmax()] - 50) <= found.width / 2)
     True
 
     Notes
@@ -149,8 +149,8 @@ def noise_density(frequency: Floats, walk: float, read: float, step: float) -> F
 
     Examples
     --------
-    >>> noise_density(np.array([10.0]), 2e-7, 0.0, 0.01).tolist()
-    [8e-14]
+    >>> noise_density(np.array([10.0]), 0.5, 0.0, 0.01).tolist()
+    [0.5]
     """
     differenced = 2 - 2 * np.cos(2 * np.pi * np.asarray(frequency) * step)
     return np.asarray(2 * walk**2 + 2 * read**2 * differenced / step)

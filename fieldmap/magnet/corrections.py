@@ -129,7 +129,7 @@ def corrections(
     >>> found = corrections(fmap)
     >>> first = found.largest_first("integrated_field")[0]
     >>> first.cause, first.where
-    ('integrator drift', 'pass_02.csv')
+    ('integrator drift', 'pass_03.csv')
     """
     axis = axis or map_axis(fmap)
     results = line_functionals(map_lines(fmap)[line], axis, map_magnet(fmap).gap)

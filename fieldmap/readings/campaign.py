@@ -5,32 +5,28 @@ from __future__ import annotations
 import hashlib
 import re
 import tomllib
-from dataclasses import dataclass, replace
+from collections.abc import Callable
+from dataclasses import dataclass
 from pathlib import Path, PureWindowsPath
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 from fieldmap.errors import InputError
 from fieldmap.progress import Tell, silent
 from fieldmap.readings import sections
 from fieldmap.readings.checks import FEWEST_READINGS
+from fieldmap.readings.entries import of_kind, read_limits, read_references
 from fieldmap.readings.layout import TableLayout, read_layout
 from fieldmap.readings.passes import (
     Axis,
     Campaign,
-    FlipReference,
-    Limit,
     Magnet,
     Pass,
     PlannedPass,
-    Reference,
-    ZeroReference,
 )
-from fieldmap.readings.probe import Coil, Integrator, Probe, Stage
+from fieldmap.readings.probe import Integrator, Probe, Stage
 from fieldmap.readings.records import SAMPLES, cumulative_flux
 from fieldmap.readings.schema import (
-    Key,
     as_table,
-    choice,
     key_place,
     listed,
     one_of,
@@ -41,11 +37,10 @@ from fieldmap.readings.tables import read_bytes, read_table
 from fieldmap.units import quoted
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
-    from fieldmap.readings.sections import Kind
 
-__all__ = ["load"]
+__all__ = ["PartCampaign", "Take", "load", "load_part"]
 
 _FILE_NAME: Final = "campaign.toml"
 _LARGEST_FILE: Final = 4_000_000  # bytes of a campaign file
@@ -82,6 +77,57 @@ def load(path: str | Path, *, tell: Tell = silent) -> Campaign:
     ...     print(error.found)
     no such file
     """
+    return load_part(path, _at_once, tell=tell).campaign
+
+
+class PartCampaign(NamedTuple):
+    """A campaign with the passes that could be had, and the files of those that could not."""
+
+    campaign: Campaign
+    awaited: tuple[str, ...]
+
+
+Take = Callable[[Path, Callable[[], Pass]], Pass | None]
+"""Called with the file of a pass and what reads it; gives the pass, or None to go without it."""
+
+
+def load_part(
+    path: str | Path,
+    take: Take,
+    *,
+    extra: Sequence[Mapping[str, object]] = (),
+    tell: Tell = silent,
+) -> PartCampaign:
+    """Read a campaign file while its passes are still being measured.
+
+    Parameters
+    ----------
+    path : str or Path
+        As for `load`.
+    take : callable
+        Decides on each pass; see `Take`.
+    extra : sequence of mapping, optional
+        More entries of [[passes]], behind those of the file.
+    tell : callable, optional
+        As for `load`.
+
+    Returns
+    -------
+    PartCampaign
+
+    Raises
+    ------
+    InputError
+        As for `load`.
+
+    Examples
+    --------
+    >>> from fieldmap.shipped import demo_folder
+    >>> slot = demo_folder() / "slot"
+    >>> part = load_part(slot, lambda file, read: read() if "1" in file.name else None)
+    >>> len(part.campaign.passes) + len(part.awaited) == len(load(slot).passes)
+    True
+    """
     path = Path(path)
     if path.is_dir():
         path = path / _FILE_NAME
@@ -89,20 +135,27 @@ def load(path: str | Path, *, tell: Tell = silent) -> Campaign:
     raw = _parse_toml(data, path.name)
     _check_format(raw, path.name)
     top = read_section(raw, sections.TOP, path.name)
-    rig = _rig(top, path)
-    passes, planned = _passes(top["passes"], rig, tell)
-    return Campaign(
+    rig = _rig(top, path, take)
+    passes, planned, awaited = _passes([*top["passes"], *extra], rig, tell)
+    campaign = Campaign(
         name=top["name"],
         magnet=Magnet(**read_section(top["magnet"], sections.MAGNET, f"{path.name}, [magnet]")),
         axis=_axis(top["axis"], f"{path.name}, [axis]"),
         stage=Stage(**read_section(top.get("stage", {}), sections.STAGE, f"{path.name}, [stage]")),
         passes=passes,
         planned=planned,
-        references=_references(top.get("references", []), rig),
-        limits=_limits(top.get("limits", []), path.name),
+        references=read_references(top.get("references", []), rig.probes, path.name),
+        limits=read_limits(top.get("limits", []), path.name),
         path=path,
         sha256=hashlib.sha256(data).hexdigest(),
     )
+    return PartCampaign(campaign, awaited)
+
+
+def _at_once(path: Path, read: Callable[[], Pass]) -> Pass:
+    """Read every pass that is named."""
+    del path
+    return read()
 
 
 @dataclass(frozen=True)
@@ -114,6 +167,7 @@ class _Rig:
     probes: Mapping[str, Probe]
     integrators: Mapping[str, Integrator]
     layout: TableLayout
+    take: Take
 
 
 def _parse_toml(data: bytes, file: str) -> dict[str, Any]:
@@ -146,11 +200,11 @@ def _check_format(raw: Mapping[str, Any], file: str) -> None:
     raise InputError(place, stands, f"'{sections.FORMAT}'", remedy)
 
 
-def _rig(top: Mapping[str, Any], path: Path) -> _Rig:
+def _rig(top: Mapping[str, Any], path: Path, take: Take) -> _Rig:
     """Read probes, integrators and the layout that holds for all passes."""
     file = path.name
     probes = {
-        name: _of_kind(raw, sections.PROBES, f"{file}, [probes.{name}]", name=name)
+        name: of_kind(raw, sections.PROBES, f"{file}, [probes.{name}]", name=name)
         for name, raw in top["probes"].items()
     }
     if not probes:
@@ -164,21 +218,7 @@ def _rig(top: Mapping[str, Any], path: Path) -> _Rig:
         for name, raw in raw_integrators.items()
     }
     layout = read_layout(top.get("table", {}), f"{file}, [table]")
-    return _Rig(file, path.parent, probes, integrators, layout)
-
-
-def _of_kind(raw: object, kinds: Mapping[str, Kind], place: str, **extra: object) -> Any:
-    """Build a record of one of several kinds from its section."""
-    named = as_table(raw, place).get(sections.KIND)
-    kind_key = Key(sections.KIND, choice(*kinds), required=True)
-    kind = kind_key.read(named, key_place(place, sections.KIND)) if named is not None else ""
-    keys = kinds[kind].keys if kind else ()
-    if not kind:
-        expected = f"kind = one of {listed(kinds)}"
-        raise InputError(place, f"no key {sections.KIND!r}", expected, "add it")
-    values = read_section(raw, (kind_key, *keys), place)
-    del values[sections.KIND]
-    return kinds[kind].build(**values, **extra)
+    return _Rig(file, path.parent, probes, integrators, layout, take)
 
 
 def _axis(raw: object, place: str) -> Axis:
@@ -204,13 +244,14 @@ def _check_pair(axis: Axis, key: str, place: str) -> None:
 
 def _passes(
     raw: list[Any], rig: _Rig, tell: Tell
-) -> tuple[tuple[Pass, ...], tuple[PlannedPass, ...]]:
-    """Read the passes in their order: those measured and those planned."""
+) -> tuple[tuple[Pass, ...], tuple[PlannedPass, ...], tuple[str, ...]]:
+    """Read the passes in their order: those measured, those planned, names of those awaited."""
     if not raw:
         expected = "at least one entry under [[passes]]"
         raise InputError(f"{rig.file}, [[passes]]", "no pass", expected, "add the passes")
     measured: list[Pass] = []
     planned: list[PlannedPass] = []
+    awaited: list[str] = []
     places: dict[Path, str] = {}
     for index, entry in enumerate(raw, 1):
         place = f"{rig.file}, [[passes]] {index}"
@@ -218,8 +259,12 @@ def _passes(
             planned.append(_planned_pass(entry, rig, f"planned pass {index}", place))
         else:
             tell(f"reading pass {index} of {len(raw)}")
-            measured.append(_measured_pass(entry, rig, place, places))
-    return tuple(measured), tuple(planned)
+            one = _measured_pass(entry, rig, place, places)
+            if isinstance(one, Pass):
+                measured.append(one)
+            else:
+                awaited.append(one)
+    return tuple(measured), tuple(planned), tuple(awaited)
 
 
 def _is_planned(entry: Mapping[str, Any], place: str) -> bool:
@@ -232,8 +277,8 @@ def _is_planned(entry: Mapping[str, Any], place: str) -> bool:
     return bool(travel)
 
 
-def _measured_pass(entry: object, rig: _Rig, place: str, places: dict[Path, str]) -> Pass:
-    """Read one pass and its table."""
+def _measured_pass(entry: object, rig: _Rig, place: str, places: dict[Path, str]) -> Pass | str:
+    """Take one pass and its table; its name if it is to be gone without."""
     values = read_section(entry, sections.MEASURED, place)
     name = values.pop("file")
     path = _inside(name, rig.folder, key_place(place, "file"))
@@ -243,6 +288,11 @@ def _measured_pass(entry: object, rig: _Rig, place: str, places: dict[Path, str]
     places[path] = f"[[passes]] {place.rpartition(' ')[2]}"
     layout = read_layout(values.pop("table", {}), f"{place}, [table]", rig.layout)
     values.update(_instruments(values, rig, place))
+    return rig.take(path, lambda: _read_pass(path, name, layout, values)) or str(name)
+
+
+def _read_pass(path: Path, name: str, layout: TableLayout, values: dict[str, Any]) -> Pass:
+    """Read the table of a pass."""
     record = values.setdefault("record", "cumulative")
     table = read_table(path, layout, samples=SAMPLES[record][0], name=name)
     flux = cumulative_flux(table.samples, table.time, record, values["integrator"], table.place)
@@ -306,66 +356,3 @@ def _inside(text: str, folder: Path, place: str) -> Path:
     if not path.is_relative_to(root):
         raise InputError(place, f"{quoted(text)}, a link that leads out of it", expected, remedy)
     return path
-
-
-def _references(raw: list[Any], rig: _Rig) -> tuple[Reference, ...]:
-    """Read the absolute references."""
-    references: list[Reference] = []
-    for index, entry in enumerate(raw, 1):
-        place = f"{rig.file}, [[references]] {index}"
-        reference = _of_kind(entry, sections.REFERENCES, place)
-        if isinstance(reference, FlipReference):
-            reference = replace(reference, probe=_coil(str(reference.probe), rig, place))
-        if isinstance(reference, ZeroReference) and not reference.start < reference.stop:
-            found = f"'from' {reference.start:g} m and 'to' {reference.stop:g} m"
-            raise InputError(place, found, "'from' below 'to'", "exchange or mend the two")
-        references.append(reference)
-    return tuple(references)
-
-
-def _coil(name: str, rig: _Rig, place: str) -> Coil:
-    """Find the coil that a flip names."""
-    where = key_place(place, "probe")
-    probe = rig.probes[one_of(name, list(rig.probes), where, "a probe among")]
-    if not isinstance(probe, Coil):
-        raise InputError(where, f"{quoted(name)}, which is no coil", "a coil", "name a coil")
-    return probe
-
-
-def _limits(raw: list[Any], file: str) -> tuple[Limit, ...]:
-    """Read the limits; one result has one entry."""
-    limits: list[Limit] = []
-    for index, entry in enumerate(raw, 1):
-        place = f"{file}, [[limits]] {index}"
-        limit = _limit(as_table(entry, place), place)
-        if limit.result in {other.result for other in limits}:
-            where = key_place(place, "result")
-            raise InputError(where, f"{limit.result!r} again", "each result once", "join the two")
-        limits.append(limit)
-    return tuple(limits)
-
-
-def _limit(entry: Mapping[str, Any], place: str) -> Limit:
-    """Read one limit: nominal and tolerance, or lower and upper or one of them."""
-    where = key_place(place, "result")
-    result = entry.get("result")
-    known = list(sections.RESULT_UNITS)
-    if not isinstance(result, str):
-        stands = "no such key" if result is None else shown(result)
-        raise InputError(where, stands, f"a result among {listed(known)}", "name the result")
-    unit = sections.RESULT_UNITS[one_of(result, known, where, "a result among")]
-    values = read_section(entry, sections.limit_keys(unit), place)
-    rule = {key: values[key] for key in ("k", "guard") if key in values}
-    given = set(values) - {"result"} - set(rule)
-    if given == {"nominal", "tolerance"}:
-        lower = values["nominal"] - values["tolerance"]
-        return Limit(result, lower, values["nominal"] + values["tolerance"], **rule)
-    if not given or given - {"lower", "upper"}:
-        found = f"the keys {listed(sorted(given))}" if given else "no limit"
-        expected = "'nominal' and 'tolerance', or 'lower' or 'upper' or both"
-        raise InputError(place, found, expected, "write one of these")
-    lower, upper = values.get("lower"), values.get("upper")
-    if lower is not None and upper is not None and not lower < upper:
-        found = f"'lower' {lower:g} and 'upper' {upper:g}"
-        raise InputError(place, found, "'lower' below 'upper'", "exchange or mend the two")
-    return Limit(result, lower, upper, **rule)

@@ -106,7 +106,7 @@ class TableGuess:
 
 
 def read_head(path: str | Path) -> tuple[bytes, bool]:
-    """The head of a text file, cut at a line, or a NetCDF file as a whole.
+    r"""The head of a text file, cut at a line, or a NetCDF file as a whole.
 
     Parameters
     ----------

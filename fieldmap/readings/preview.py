@@ -81,10 +81,7 @@ def open_head(path: str | Path, layout: TableLayout) -> OpenedHead:
     path = Path(path)
     data, whole = read_head(path)
     source: Source
-    if is_netcdf(data):
-        source = open_netcdf(data, path.name)
-    else:
-        source = open_text(data, path.name, layout)
+    source = open_netcdf(data, path.name) if is_netcdf(data) else open_text(data, path.name, layout)
     return OpenedHead(tuple(source.headings), whole, source, layout)
 
 

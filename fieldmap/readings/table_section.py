@@ -187,9 +187,7 @@ def _sections(text: str) -> list[_Span]:
         place, depth, content = _to_line_end(text, place, depth)
         if content:
             ends[-1] = place
-    return [
-        _Span(path, start, stop) for (start, path), stop in zip(heads, ends[1:], strict=True)
-    ]
+    return [_Span(path, start, stop) for (start, path), stop in zip(heads, ends[1:], strict=True)]
 
 
 def _behind_blanks(text: str, place: int) -> int:
@@ -270,7 +268,9 @@ def _comments(section: str, end: str) -> list[str]:
     while place < len(section):
         first = _behind_blanks(section, place)
         if section.startswith("#", first):
-            found.append(section[place : _line_end(section, first)].removesuffix(end).rstrip("\r\n"))
+            found.append(
+                section[place : _line_end(section, first)].removesuffix(end).rstrip("\r\n")
+            )
         place, _, _ = _to_line_end(section, first, 0)
     return found
 

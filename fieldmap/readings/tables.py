@@ -23,7 +23,15 @@ from fieldmap.readings.text_table import open_text, plain_text
 if TYPE_CHECKING:
     from fieldmap.readings.passes import Floats
 
-__all__ = ["Samples", "Table", "TablePreview", "preview_table", "read_bytes", "read_table", "table_columns"]
+__all__ = [
+    "Samples",
+    "Table",
+    "TablePreview",
+    "preview_table",
+    "read_bytes",
+    "read_table",
+    "table_columns",
+]
 
 Samples = Literal["flux", "dflux", "voltage"]
 

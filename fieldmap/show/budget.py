@@ -71,7 +71,7 @@ def budget_text(one: Budget, *, k: float = 2.0) -> str:
     rows = budget_rows(one, k)
     if not rows.rows:
         return f"{rows.title}\n{NOTHING}"
-    head = ("cause", "where", "type", f"u / {rows.unit}", "share / %")
+    head = ("cause", "where", "type", f"u / {rows.unit or 1}", "share / %")
     columns = [list(column) for column in zip(*_cells(rows), strict=True)]
     columns[3:] = [aligned_text(column) for column in columns[3:]]
     return "\n".join([rows.title, *_lines(head, columns, left=3)])
@@ -104,7 +104,7 @@ def budget_html(one: Budget, *, k: float = 2.0) -> str:
         return f'<p class="fm-remark">{title}. {NOTHING}</p>'
     head = (
         '<th scope="col">Cause</th><th scope="col">Where</th><th scope="col">Type</th>'
-        f'<th scope="col" class="fm-right">u ({escape(rows.unit)})</th>'
+        f'<th scope="col" class="fm-right">u ({escape(rows.unit or "1")})</th>'
         '<th scope="col" class="fm-right">Share of u² (%)</th>'
     )
     cells = _cells(rows)

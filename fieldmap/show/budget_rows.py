@@ -156,6 +156,8 @@ def with_unit(number: str, unit: str) -> str:
     >>> with_unit("0.013 ± 0.018", "1e-4"), with_unit("0.018", "mm")
     ('(0.013 ± 0.018)·1e-4', '0.018 mm')
     """
+    if not unit:
+        return number
     if not unit.startswith("1"):
         return f"{number} {one_line(unit)}"
     return f"({number})·{unit}" if " " in number else f"{number}·{unit}"

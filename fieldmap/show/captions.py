@@ -18,12 +18,14 @@ if TYPE_CHECKING:
 
     from fieldmap.magnet.quantity import Quantity
     from fieldmap.readings.passes import Axis, Pass
+    from fieldmap.show.overlaps import Overlap
     from fieldmap.show.profile import Profile
 
 __all__ = [
     "cursor_words",
     "decay_words",
     "field_words",
+    "overlaps_words",
     "passes_words",
     "profile_words",
     "residuals_words",
@@ -107,6 +109,26 @@ def residuals_words(fmap: xr.Dataset) -> str:
         f"{len(residual)} increments: {within:.1f} % within ±2 (95.4 % expected), "
         f"largest {residual[i]:+.1f} in {names[int(fmap['residual_pass'].values[i])]} "
         f"at {_mm(fmap['residual_position'].values[i])}."
+    )
+
+
+def overlaps_words(overlaps: Sequence[Overlap]) -> str:
+    """What the figure of each pass against the map of all shows."""
+    if not overlaps:
+        return "No overlaps: nothing but references."
+    far = max(overlaps, key=lambda one: float(np.abs(one.difference).max()))
+    i = int(np.abs(far.difference).argmax())
+    value = float(far.difference[i])
+    scale = scale_for("V s", [value])
+    ranked = sorted(overlaps, key=lambda one: -one.ratio)[:MOST_NAMED]
+    told = ", ".join(f"{one_line(one.name)} {one.ratio:.2f}" for one in ranked)
+    more = f" and {len(overlaps) - MOST_NAMED} more" if len(overlaps) > MOST_NAMED else ""
+    return (
+        f"Recorded less predicted flux of {len(overlaps)} "
+        f"{'pass' if len(overlaps) == 1 else 'passes'} against the map of all, each levelled: "
+        f"largest {value * scale.factor:+.3f} {scale.unit} in {one_line(far.name)} at "
+        f"{_mm(far.position[i])}. Size over what its noise explains, 1 or less if sound: "
+        f"{told}{more}."
     )
 
 

@@ -6,6 +6,7 @@ import textwrap
 from html import escape
 from typing import TYPE_CHECKING, Final
 
+from fieldmap.show.budget_rows import with_unit
 from fieldmap.show.display import Shown
 from fieldmap.show.look import MM
 from fieldmap.show.numbers import plain, rounded, scale_for
@@ -160,9 +161,7 @@ def _verdict(comparison: Comparison) -> list[str]:
 def _with_u(one: Quantity) -> str:
     scale = scale_for(one.unit, [one.value])
     value, half = rounded(one.value * scale.factor, one.expanded(K) * scale.factor)
-    if one.unit == "1":
-        return f"({value} ± {half})·{scale.unit}"
-    return f"{value} ± {half} {scale.unit}"
+    return with_unit(f"{value} ± {half}", scale.unit)
 
 
 def _result_cells(key: str, one: ComparedResult) -> tuple[str, ...]:

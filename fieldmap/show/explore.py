@@ -176,4 +176,3 @@ def mains_words(frequency: float, rate: float, width: float) -> str:
                 folded = "" if seen == true else f" seen at {seen:g} Hz"
                 return f"mains, {true:g} Hz{folded}"
     return ""
-

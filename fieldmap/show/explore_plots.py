@@ -129,10 +129,10 @@ def draw_readings(
     --------
     >>> from matplotlib.figure import Figure
     >>> from fieldmap.readings import Wire, make_pass
-    >>> one = make_pass([0, 0.1, 0.3], [5, 6, 8], rate=1.0, probe=Wire("w", 1, 0.05), name="a")
+    >>> one = make_pass([0, 0.125, 0.375], [5, 6, 8], rate=1.0, probe=Wire("w", 1, 0.05), name="a")
     >>> (line,) = draw_readings(Figure().subplots(), [one], "speed", "time")
     >>> line.get_ydata().tolist()
-    [100.0, 200.0]
+    [125.0, 250.0]
     """
     curves = [_readings(one, quantity, against) for one in passes]
     name, unit = _NAMES[quantity]
@@ -213,9 +213,7 @@ def draw_spectrum(ax: Axes, heard: Heard, found: Spectrum) -> list[Line2D]:
     names = ["spectrum of the dwell"]
     for level, (colour, dash) in zip(heard.levels, _LEVELS, strict=False):
         density = noise_density(found.frequency, level.walk, level.read, heard.dwell.step)
-        drawn += ax.loglog(
-            found.frequency, density, color=colour, linestyle=dash, linewidth=1.5
-        )
+        drawn += ax.loglog(found.frequency, density, color=colour, linestyle=dash, linewidth=1.5)
         names.append(f"noise: {level.name}")
     for line in heard.noise.lines:
         ax.axvline(line.frequency, color=PINK, linewidth=1.1, linestyle=":")

@@ -94,7 +94,7 @@ def dwell_table(one: Pass, dwell: int = 1, fmap: xr.Dataset | None = None) -> Sh
     >>> from fieldmap.shipped import demo_folder
     >>> one = load(demo_folder() / "slot").passes[0]
     >>> print(dwell_table(one).text.splitlines()[1])
-    quantity    this dwell (k = 2)  stated
+    quantity    this dwell (k = 2)     stated
     """
     return dwell_shown(hear(one, dwell, fmap))
 
@@ -205,7 +205,7 @@ def corrections_table(
     >>> from fieldmap.shipped import demo_folder
     >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "foreign_tables"))
     >>> corrections_table(fmap, "boundary_in").text.splitlines()[3].split()[:2]
-    ['position', 'offset']
+    ['trigger', 'lag']
     """
     return corrections_shown(corrections(fmap, campaign, axis=axis, line=line), result)
 
@@ -270,9 +270,7 @@ def _table(
     told = "\n".join(remarks)
     notes = "".join(f'<p class="fm-remark">{escape(one)}</p>' for one in remarks)
     if not rows:
-        return Shown(
-            f"{title}\n{told}", f'<p class="fm-remark"><b>{escape(title)}</b></p>{notes}'
-        )
+        return Shown(f"{title}\n{told}", f'<p class="fm-remark"><b>{escape(title)}</b></p>{notes}')
     columns = [list(column) for column in zip(*rows, strict=True)]
     first = len(columns) - numbers
     text = [c if i < first else aligned_text(c) for i, c in enumerate(columns)]
@@ -285,9 +283,7 @@ def _table(
     return Shown(f"{title}\n{lines}\n{told}", html + notes)
 
 
-def _text_lines(
-    head: Sequence[str], columns: Sequence[Sequence[str]], first: int
-) -> list[str]:
+def _text_lines(head: Sequence[str], columns: Sequence[Sequence[str]], first: int) -> list[str]:
     padded = []
     for i, (word, column) in enumerate(zip(head, columns, strict=True)):
         width = max(len(word), *(len(cell) for cell in column))

@@ -43,7 +43,7 @@ def with_u(value: float, u: float, unit: str) -> str:
     Examples
     --------
     >>> with_u(2.04e-7, 1.1e-8, "V s s^-0.5")
-    '204 ± 22 nV·s/√s'
+    '0.204 ± 0.022 µV·s/√s'
     """
     scale = scale_for(unit, [value, K * u])
     shown, half = rounded(value * scale.factor, K * u * scale.factor)

@@ -34,9 +34,12 @@ __all__ = [
     "UncertaintyArtists",
     "WindowArtists",
     "field_factor",
+    "field_label",
     "field_unit",
     "outline_of",
     "profile_reach",
+    "uncertainty_factor",
+    "uncertainty_label",
 ]
 
 Floats = npt.NDArray[np.float64]
@@ -70,9 +73,18 @@ class ProfileArtists:
 
     line: Line2D
     band: PolyCollection
-    limits: tuple[Line2D, Line2D]
-    flat: Rectangle
+    windows: WindowArtists
     equivalent: Line2D | None
+
+    @property
+    def limits(self) -> tuple[Line2D, Line2D]:
+        """Marks of the limits of integration."""
+        return self.windows.limits
+
+    @property
+    def flat(self) -> Rectangle:
+        """Shade of the flat window."""
+        return self.windows.flat
 
     def show(self, profile: Profile) -> None:
         """Show another profile in the unit that suits it; labels and limits stay."""
@@ -93,7 +105,7 @@ class UncertaintyArtists:
         """Show that of another profile, and set the scale that suits it."""
         ax = self.line.axes
         assert ax is not None
-        half = K * profile.u * scale_for("T", [float(K * profile.u.max())]).factor
+        half = K * profile.u * uncertainty_factor(profile)
         low, scale = 0.0, "linear"
         if half.min() > 0:  # in a fringe it rises by decades
             low, scale = 0.6 * float(half.min()), "log"
@@ -183,6 +195,21 @@ def field_unit(profile: Profile) -> str:
 def field_factor(profile: Profile) -> float:
     """From tesla to the unit that the profile is drawn in."""
     return scale_for("T", [float(np.abs(profile.b).max())]).factor
+
+
+def field_label(profile: Profile, component: str) -> str:
+    """Label of the axis of the field."""
+    return f"{component} ({field_unit(profile)})"
+
+
+def uncertainty_factor(profile: Profile) -> float:
+    """From tesla to the unit that the half width of the band is drawn in."""
+    return scale_for("T", [float(K * profile.u.max())]).factor
+
+
+def uncertainty_label(profile: Profile, component: str) -> str:
+    """Label of the axis of the half width."""
+    return f"2u({component}) ({scale_for('T', [float(K * profile.u.max())]).unit})"
 
 
 def _area(s: Floats, low: Floats, high: Floats) -> Floats:

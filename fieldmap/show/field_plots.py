@@ -12,14 +12,15 @@ from typing import TYPE_CHECKING
 from fieldmap.show.field_artists import (
     CursorArtists,
     DecayArtists,
-    K,
     ProfileArtists,
     UncertaintyArtists,
     WindowArtists,
     field_factor,
+    field_label,
     field_unit,
     outline_of,
     profile_reach,
+    uncertainty_label,
 )
 from fieldmap.show.look import (
     BLUE,
@@ -32,7 +33,6 @@ from fieldmap.show.look import (
     legend_above,
     position_words,
 )
-from fieldmap.show.numbers import scale_for
 
 if TYPE_CHECKING:
     from collections.abc import Mapping
@@ -62,6 +62,8 @@ def draw_profile(
     axis: MapAxis,
     results: Mapping[str, Quantity] | None = None,
     component: str = "B",
+    *,
+    grips: bool = False,
 ) -> ProfileArtists:
     """The field along the line with its ±2u band, and where results are taken from.
 
@@ -78,6 +80,8 @@ def draw_profile(
         and that length is outlined.
     component : str
         Name of the field component.
+    grips : bool
+        Also mark that limits and window can be dragged.
 
     Returns
     -------
@@ -98,12 +102,12 @@ def draw_profile(
     """
     (line,) = ax.plot([], [], color=BLUE, linewidth=1.8)
     band = ax.fill_between([], [], color=BLUE, alpha=0.3, linewidth=0)
-    windows = mark_windows(ax, axis)
+    windows = mark_windows(ax, axis, grips=grips)
     equivalent = _equivalent(ax, results or {}, field_factor(profile))
-    drawn = ProfileArtists(line, band, windows.limits, windows.flat, equivalent)
+    drawn = ProfileArtists(line, band, windows, equivalent)
     drawn.show(profile)
     ax.set_ylim(*profile_reach(profile))
-    dress(ax, position_words(axis.travel), f"{component} ({field_unit(profile)})")
+    dress(ax, position_words(axis.travel), field_label(profile, component))
     named: list[tuple[Artist, str]] = [
         (line, f"{component} ± 2u"),
         (windows.limits[0], "limits of integration"),
@@ -194,8 +198,8 @@ def draw_uncertainty(
     drawn.show(profile)
     if axis is not None:
         mark_windows(ax, axis)
-    unit = scale_for("T", [float(K * profile.u.max())]).unit
-    dress(ax, position_words(axis.travel if axis else "z"), f"2u({component}) ({unit})")
+    travel = axis.travel if axis else "z"
+    dress(ax, position_words(travel), uncertainty_label(profile, component))
     return drawn
 
 

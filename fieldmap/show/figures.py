@@ -6,43 +6,46 @@ alternative; each ``…_picture`` function makes the figure too and returns the 
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING
 
-from fieldmap.estimate.map import map_axis, map_magnet, map_passes
+from fieldmap.estimate.map import map_axis, map_magnet
 from fieldmap.magnet.evaluate import evaluate
-from fieldmap.show.captions import (
-    cursor_words,
-    decay_words,
-    passes_words,
-    profile_words,
-    residuals_words,
-    uncertainty_words,
-)
-from fieldmap.show.field_plots import (
-    draw_cursor,
-    draw_decay,
-    draw_profile,
-    draw_uncertainty,
-    mark_windows,
-)
+from fieldmap.show.captions import overlaps_words, passes_words, residuals_words
+from fieldmap.show.overlaps import overlaps_of
 from fieldmap.show.picture import Picture, blank_figure, paint
-from fieldmap.show.plots import draw_passes, draw_residuals
+from fieldmap.show.plots import draw_overlaps, draw_passes, draw_residuals
 from fieldmap.show.profile import field_at, profile_of
+from fieldmap.show.scenes import (
+    BOTTOM,
+    LEFT,
+    LEGEND_ROW,
+    RIGHT,
+    DecayScene,
+    ProfileScene,
+    ReadingsScene,
+    UncertaintyScene,
+)
 
 if TYPE_CHECKING:
     from collections.abc import Mapping, Sequence
 
     import xarray as xr
-    from matplotlib.axes import Axes
     from matplotlib.figure import Figure
 
     from fieldmap.magnet.quantity import Quantity
     from fieldmap.readings.passes import Axis as MapAxis
     from fieldmap.readings.passes import Campaign, Pass
+    from fieldmap.show.scenes import Cursor
 
 __all__ = [
+    "BOTTOM",
+    "LEFT",
+    "LEGEND_ROW",
+    "RIGHT",
     "decay_figure",
     "decay_picture",
+    "overlaps_figure",
+    "overlaps_picture",
     "passes_figure",
     "passes_picture",
     "profile_figure",
@@ -53,21 +56,12 @@ __all__ = [
     "uncertainty_picture",
 ]
 
-# inches around the axes: tick labels, axis labels, legend
-LEFT: Final = 0.85
-RIGHT: Final = 0.12
-BOTTOM: Final = 0.48
-LEGEND_ROW: Final = 0.2
-COLUMNS: Final = 4
-MOST_ROWS: Final = 3
-
 
 def passes_figure(
     figure: Figure, passes: Sequence[Pass], travel: str = "z", marks: Sequence[int] | None = None
 ) -> str:
     """Draw the passes as recorded; parameters as for `draw_passes`."""
-    ax = _single(figure, "passes", len(passes))
-    draw_passes(ax, passes, travel, marks)
+    ReadingsScene(figure).show(lambda ax: draw_passes(ax, passes, travel, marks))
     return passes_words(passes, travel)
 
 
@@ -75,9 +69,17 @@ def residuals_figure(
     figure: Figure, fmap: xr.Dataset, travel: str = "z", marks: Sequence[int] | None = None
 ) -> str:
     """Draw the normalised residuals; parameters as for `draw_residuals`."""
-    ax = _single(figure, "residuals", len(map_passes(fmap)))
-    draw_residuals(ax, fmap, travel, marks)
+    ReadingsScene(figure).show(lambda ax: draw_residuals(ax, fmap, travel, marks))
     return residuals_words(fmap)
+
+
+def overlaps_figure(
+    figure: Figure, fmap: xr.Dataset, travel: str = "z", marks: Sequence[int] | None = None
+) -> str:
+    """Draw each pass against the map of all; parameters as for `draw_residuals`."""
+    found = overlaps_of(fmap)
+    ReadingsScene(figure).show(lambda ax: draw_overlaps(ax, found, travel, marks))
+    return overlaps_words(found)
 
 
 def profile_figure(
@@ -113,20 +115,9 @@ def profile_figure(
     str
         The text alternative.
     """
-    profile = profile_of(fmap, line, span)
-    component = map_magnet(fmap).component
-    upper, lower = _stacked(figure, "profile")
-    draw_profile(upper, profile, axis, results, component)
-    draw_uncertainty(lower, profile, axis, component)
-    upper.set_xlabel("")
-    upper.tick_params(labelbottom=False)
-    _narrow((upper, lower), profile.s[0], profile.s[-1])
-    words = profile_words(profile, axis, results, component)
-    if cursor is None:
-        return words
-    value, u = field_at(fmap, cursor, line)
-    draw_cursor(upper, profile, cursor, value)
-    return f"{words} {cursor_words(cursor, value, u, component)}"
+    profile, component = profile_of(fmap, line, span), map_magnet(fmap).component
+    marked = _cursor(fmap, cursor, line)
+    return ProfileScene(figure).show(profile, axis, results, component, marked)
 
 
 def uncertainty_figure(
@@ -137,12 +128,8 @@ def uncertainty_figure(
     span: tuple[float, float] | None = None,
 ) -> str:
     """Draw the half width of the band alone; parameters as for `profile_figure`."""
-    profile = profile_of(fmap, line, span)
-    component = map_magnet(fmap).component
-    ax = _single(figure, "uncertainty", 0)
-    draw_uncertainty(ax, profile, axis, component)
-    _narrow((ax,), profile.s[0], profile.s[-1])
-    return uncertainty_words(profile, component)
+    profile, component = profile_of(fmap, line, span), map_magnet(fmap).component
+    return UncertaintyScene(figure).show(profile, axis, component)
 
 
 def decay_figure(
@@ -154,18 +141,8 @@ def decay_figure(
     cursor: float | None = None,
 ) -> str:
     """Draw the size of the field on a logarithmic scale; parameters as for `profile_figure`."""
-    profile = profile_of(fmap, line, span)
-    component = map_magnet(fmap).component
-    ax = _single(figure, "decay", 2)
-    draw_decay(ax, profile, axis.travel, component)
-    mark_windows(ax, axis)
-    _narrow((ax,), profile.s[0], profile.s[-1])
-    words = decay_words(profile, component)
-    if cursor is None:
-        return words
-    value, u = field_at(fmap, cursor, line)
-    draw_cursor(ax, profile, cursor, value)
-    return f"{words} {cursor_words(cursor, value, u, component)}"
+    profile, component = profile_of(fmap, line, span), map_magnet(fmap).component
+    return DecayScene(figure).show(profile, axis, component, _cursor(fmap, cursor, line))
 
 
 def passes_picture(campaign: Campaign) -> Picture:
@@ -223,6 +200,12 @@ def residuals_picture(fmap: xr.Dataset) -> Picture:
     return paint(figure, residuals_figure(figure, fmap, map_axis(fmap).travel))
 
 
+def overlaps_picture(fmap: xr.Dataset) -> Picture:
+    """Each pass of a map against the map of all: which one disagrees, and where."""
+    figure = blank_figure()
+    return paint(figure, overlaps_figure(figure, fmap, map_axis(fmap).travel))
+
+
 def decay_picture(
     fmap: xr.Dataset, line: int = 0, span: tuple[float, float] | None = None
 ) -> Picture:
@@ -231,50 +214,6 @@ def decay_picture(
     return paint(figure, decay_figure(figure, fmap, map_axis(fmap), line, span))
 
 
-def _single(figure: Figure, kind: str, entries: int) -> Axes:
-    """One axes with room for a legend of so many entries above it."""
-    rows = min(-(-entries // COLUMNS), MOST_ROWS)
-    if not _wiped(figure, kind):
-        figure.subplots(subplot_kw={"label": kind})
-    _margins(figure, rows)
-    return figure.axes[0]
-
-
-def _stacked(figure: Figure, kind: str) -> tuple[Axes, Axes]:
-    """A tall axes above a low one, with common positions."""
-    if not _wiped(figure, kind):
-        figure.subplots(2, 1, sharex=True, height_ratios=(2.6, 1), subplot_kw={"label": kind})
-    _margins(figure, 1)
-    return figure.axes[0], figure.axes[1]
-
-
-def _wiped(figure: Figure, kind: str) -> bool:
-    """Empty the figure; keep its axes if they are of the same kind: they are slow to make."""
-    if not figure.axes or figure.axes[0].get_label() != kind:
-        figure.clear()
-        return False
-    for ax in figure.axes:
-        legend = ax.get_legend()
-        for artist in (*ax.lines, *ax.collections, *ax.patches, *([legend] if legend else [])):
-            artist.remove()
-        ax.relim()
-        ax.autoscale(enable=True)
-    return True
-
-
-def _margins(figure: Figure, legend_rows: int) -> None:
-    width, height = figure.get_size_inches()
-    figure.subplots_adjust(
-        left=LEFT / width,
-        right=1 - RIGHT / width,
-        bottom=BOTTOM / height,
-        top=1 - (0.12 + LEGEND_ROW * legend_rows) / height,
-        hspace=0.08,
-    )
-
-
-def _narrow(axes: Sequence[Axes], low: float, high: float) -> None:
-    """Show exactly the stretch that was sampled, with a little air."""
-    air = 0.015 * (high - low)
-    for ax in axes:
-        ax.set_xlim((low - air) * 1e3, (high + air) * 1e3)
+def _cursor(fmap: xr.Dataset, at: float | None, line: int) -> Cursor | None:
+    """The field at a position to mark."""
+    return None if at is None else (at, *field_at(fmap, at, line))

@@ -25,7 +25,8 @@ _PREFIXED: Final = {
     "V s s^-0.5": "V·s/√s",
     "V s/s": "V·s/s",
 }
-_FIXED: Final = {"m": ("mm", 1e3), "1": ("1e-4", 1e4), "s": ("s", 1.0)}
+_FIXED: Final = {"m": ("mm", 1e3), "s": ("s", 1.0)}
+_LARGE_RATIO: Final = 0.01  # from here on a ratio is shown as it is
 
 
 @dataclass(frozen=True)
@@ -57,7 +58,8 @@ def scale_for(unit: str, values: Iterable[float]) -> Scale:
     Returns
     -------
     Scale
-        Lengths are always in mm and plain ratios in 1e-4, so that they compare at a glance.
+        Lengths are always in mm, so that they compare at a glance; small ratios are in 1e-4,
+        others have no unit.
 
     Examples
     --------
@@ -66,10 +68,12 @@ def scale_for(unit: str, values: Iterable[float]) -> Scale:
     """
     if unit in _FIXED:
         return Scale(*_FIXED[unit])
-    if unit not in _PREFIXED:
-        return Scale(unit, 1.0)
     finite = [abs(value) for value in values if math.isfinite(value)]
     largest = max(finite, default=0.0)
+    if unit == "1":
+        return Scale("", 1.0) if largest >= _LARGE_RATIO else Scale("1e-4", 1e4)
+    if unit not in _PREFIXED:
+        return Scale(unit, 1.0)
     if largest == 0:
         return Scale(_PREFIXED[unit], 1.0)
     prefix, factor = next((p, f) for least, p, f in _PREFIXES if largest >= least)

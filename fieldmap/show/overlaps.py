@@ -21,7 +21,6 @@ if TYPE_CHECKING:
 __all__ = ["Overlap", "overlaps_of"]
 
 Floats = npt.NDArray[np.float64]
-K = 2.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,15 +47,9 @@ class Overlap:
     sd: Floats
 
     @property
-    def worst(self) -> int:
-        """Index of the reading that differs most, counted in its standard deviation."""
-        return int(np.abs(self.difference / self.sd).argmax())
-
-    @property
-    def excess(self) -> float:
-        """Largest difference as a share of what the noise allows (k = 2)."""
-        i = self.worst
-        return float(abs(self.difference[i]) / (K * self.sd[i]))
+    def ratio(self) -> float:
+        """Size of the difference over what the noise gives, rms: about 1 or less if all is well."""
+        return float(np.sqrt(np.mean((self.difference / self.sd) ** 2)))
 
 
 def overlaps_of(fmap: xr.Dataset) -> list[Overlap]:
@@ -83,7 +76,7 @@ def overlaps_of(fmap: xr.Dataset) -> list[Overlap]:
     >>> import fieldmap
     >>> from fieldmap.shipped import demo_folder
     >>> fmap = fieldmap.stitch(fieldmap.load(demo_folder() / "slot" / "campaign.toml"))
-    >>> all(one.excess < 2 for one in overlaps_of(fmap))
+    >>> all(one.ratio < 1.3 for one in overlaps_of(fmap))
     True
 
     Notes

@@ -24,8 +24,9 @@ if TYPE_CHECKING:
     from matplotlib.lines import Line2D
 
     from fieldmap.readings.passes import Pass
+    from fieldmap.show.overlaps import Overlap
 
-__all__ = ["draw_passes", "draw_residuals", "thinned"]
+__all__ = ["draw_overlaps", "draw_passes", "draw_residuals", "thinned"]
 
 Floats = npt.NDArray[np.float64]
 
@@ -164,4 +165,47 @@ def draw_residuals(
     reach = float(np.abs(fmap["residual"].values).max(initial=0))
     ax.set_ylim(-1.1 * max(reach, 3.0), 1.1 * max(reach, 3.0))
     legend_above(ax, drawn, [short(name) for name in names])
+    return drawn
+
+
+def draw_overlaps(
+    ax: Axes, overlaps: Sequence[Overlap], travel: str = "z", marks: Sequence[int] | None = None
+) -> list[Line2D]:
+    """Recorded less predicted flux of each pass, against position.
+
+    Parameters
+    ----------
+    ax : matplotlib.axes.Axes
+        Where to draw.
+    overlaps : sequence of Overlap
+        From `overlaps_of`.
+    travel : str
+        Name of the position axis.
+    marks : sequence of int, optional
+        Index of each pass of the map in its campaign; counted from 0 if not given.
+
+    Returns
+    -------
+    list of matplotlib.lines.Line2D
+        One a pass; where passes overlap, one that disagrees departs from the others.
+    """
+    scale = scale_for("V s", [float(np.abs(one.difference).max(initial=0)) for one in overlaps])
+    drawn = []
+    ax.axhline(0, color=SOFT, linewidth=0.8)
+    for index, one in zip(marks or range(len(overlaps)), overlaps, strict=True):
+        style = pass_style(index)
+        (line,) = ax.plot(
+            one.position * MM,
+            one.difference * scale.factor,
+            color=style.colour,
+            linestyle=style.dash,
+            linewidth=1.2,
+            marker=style.marker,
+            markersize=4.5,
+            markevery=(len(one.position) // 20, max(len(one.position) // 10, 1)),
+            label=one.name,
+        )
+        drawn.append(line)
+    dress(ax, position_words(travel), f"recorded − predicted ({scale.unit})")
+    legend_above(ax, drawn, [short(one.name) for one in overlaps])
     return drawn

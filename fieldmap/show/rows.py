@@ -56,6 +56,14 @@ _WORDS: Final[Mapping[str, tuple[str, str]]] = {
 }
 
 
+_APART: Final = {
+    "tail_in": "tail",
+    "tail_out": "tail",
+    "fringe_integral_in": "fringe",
+    "fringe_integral_out": "fringe",
+}
+
+
 @dataclass(frozen=True)
 class ResultRow:
     """One result ready to print; `truth` and `difference` are empty where nothing is known."""
@@ -146,18 +154,22 @@ def result_rows(
     InputError
         A known value that is no number, or in a unit of another kind.
     """
-    scales = _scales(line.results.values())
+    scales = _scales(line.results)
     return [
-        _row(key, one, scales[one.unit], (truth or {}).get(key), k)
-        for key, one in line.results.items()
+        _row(key, one, scales[key], (truth or {}).get(key), k) for key, one in line.results.items()
     ]
 
 
-def _scales(quantities: Iterable[Quantity]) -> dict[str, Scale]:
-    values: dict[str, list[float]] = {}
-    for one in quantities:
-        values.setdefault(one.unit, []).append(one.value)
-    return {unit: scale_for(unit, those) for unit, those in values.items()}
+def _scales(results: Mapping[str, Quantity]) -> dict[str, Scale]:
+    """Scale of each result: one for all of a unit, save for those of another size altogether."""
+    groups: dict[tuple[str, str], list[str]] = {}
+    for key, one in results.items():
+        groups.setdefault((one.unit, _APART.get(key, "")), []).append(key)
+    return {
+        key: scale_for(unit, [results[other].value for other in keys])
+        for (unit, _), keys in groups.items()
+        for key in keys
+    }
 
 
 def _row(
@@ -232,10 +244,10 @@ def _between(limit: Limit, low: float | None, high: float | None, step: float = 
         for bound in (low, high)
     )
     if lower is None:
-        return f"at most {upper} {scale.unit}"
+        return f"at most {upper} {scale.unit}".rstrip()
     if upper is None:
-        return f"at least {lower} {scale.unit}"
-    return f"{lower} to {upper} {scale.unit}"
+        return f"at least {lower} {scale.unit}".rstrip()
+    return f"{lower} to {upper} {scale.unit}".rstrip()
 
 
 def _bound(value: float, step: float) -> str:

@@ -24,7 +24,7 @@ if TYPE_CHECKING:
     from fieldmap.estimate.fieldline import FieldLine
     from fieldmap.magnet.comparison.position_errors import PositionErrors
 
-__all__ = ["Alignment", "Pair", "align", "band_factor", "first_shift"]
+__all__ = ["Alignment", "CommonErrors", "Pair", "align", "band_factor", "first_shift"]
 
 Floats = npt.NDArray[np.float64]
 
@@ -39,6 +39,24 @@ SEED: Final = 7_411  # the same profiles give the same digits
 
 
 @dataclass(frozen=True, eq=False)
+class CommonErrors:
+    """Errors that two maps of one bench share, each of unit variance.
+
+    Parameters
+    ----------
+    first, second : (size, k) arrays
+        What each does to the coefficients of the two profiles, T.
+    first_moves, second_moves : (m, k) arrays, optional
+        What each does to the position errors in `Pair.moves`.
+    """
+
+    first: Floats
+    second: Floats
+    first_moves: Floats | None = None
+    second_moves: Floats | None = None
+
+
+@dataclass(frozen=True, eq=False)
 class Pair:
     """Two profiles with the errors that they share.
 
@@ -46,8 +64,8 @@ class Pair:
     ----------
     first, second : FieldLine
         The profiles.
-    crossed : (size of first, size of second) array
-        Covariance between their coefficients, T^2.
+    common : CommonErrors, optional
+        Errors that both have in common.
     loose : float
         How far the second may be off beyond its covariance, T: for the weights only.
     moves : tuple of PositionErrors or None
@@ -56,7 +74,7 @@ class Pair:
 
     first: FieldLine
     second: FieldLine
-    crossed: Floats
+    common: CommonErrors | None = None
     loose: float = 0.0
     moves: tuple[PositionErrors | None, PositionErrors | None] = (None, None)
 
@@ -75,19 +93,30 @@ class Pair:
         """Covariance of the differences, T^2."""
         one = self.first.spline.field_rows(s)
         other = self.second.spline.field_rows(s - shift)
-        two = (1 + scale) * other
-        spread = self.between(one, two, one, two)
-        if self.moves[0] is not None:
-            spread = spread + self.moves[0].correction(one, s)
-        if self.moves[1] is not None:
-            spread = spread + (1 + scale) ** 2 * self.moves[1].correction(other, s - shift)
-        return spread
+        spread = one @ self.first.covariance @ one.T
+        spread += (1 + scale) ** 2 * other @ self.second.covariance @ other.T
+        mine, theirs = self.moves
+        if mine is not None:
+            spread += mine.correction(one, s)
+        if theirs is not None:
+            spread += (1 + scale) ** 2 * theirs.correction(other, s - shift)
+        if self.common is None:
+            return np.asarray(spread)
+        first, second = one @ self.common.first, (1 + scale) * other @ self.common.second
+        if mine is not None and self.common.first_moves is not None:
+            first += mine.mismatch(one, s) @ self.common.first_moves
+        if theirs is not None and self.common.second_moves is not None:
+            moved = theirs.mismatch(other, s - shift) @ self.common.second_moves
+            second += (1 + scale) * moved
+        mixed = first @ second.T
+        return np.asarray(spread - mixed - mixed.T)
 
-    def between(self, one: Floats, two: Floats, other_one: Floats, other_two: Floats) -> Floats:
-        """Covariance of differences of functionals given by rows on both profiles."""
-        own = one @ self.first.covariance @ other_one.T + two @ self.second.covariance @ other_two.T
-        mixed = one @ self.crossed @ other_two.T + two @ self.crossed.T @ other_one.T
-        return np.asarray(own - mixed)
+    def variance(self, one: Floats, two: Floats) -> float:
+        """Variance of the difference of two results, by their gradients on either profile."""
+        own = one @ self.first.covariance @ one + two @ self.second.covariance @ two
+        if self.common is None:
+            return float(own)
+        return float(own - 2 * (one @ self.common.first) @ (two @ self.common.second))
 
 
 @dataclass(frozen=True, eq=False)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 import os
 from dataclasses import dataclass
 from pathlib import Path
@@ -13,11 +12,19 @@ import numpy.typing as npt
 
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.map import FORMAT, map_axis, map_magnet, map_title
+from fieldmap.estimate.provenance import map_joint, map_unknowns
 from fieldmap.estimate.store import load_map
-from fieldmap.magnet.comparison.alignment import Alignment, Pair, align, band_factor, first_shift
+from fieldmap.magnet.comparison.alignment import (
+    Alignment,
+    CommonErrors,
+    Pair,
+    align,
+    band_factor,
+    first_shift,
+)
 from fieldmap.magnet.comparison.design_profile import design_profile, read_design
 from fieldmap.magnet.comparison.outcome import ComparedResult, Comparison, DifferenceProfile
-from fieldmap.magnet.comparison.position_errors import position_errors
+from fieldmap.magnet.comparison.position_errors import POSITIONS, position_errors
 from fieldmap.magnet.length import length_results
 from fieldmap.magnet.quantity import Quantity
 from fieldmap.magnet.sampling import chosen_line
@@ -28,6 +35,7 @@ if TYPE_CHECKING:
     import xarray as xr
 
     from fieldmap.estimate.fieldline import FieldLine
+    from fieldmap.estimate.parameters import Nuisance
     from fieldmap.magnet.comparison.design_profile import DesignProfile
     from fieldmap.magnet.comparison.position_errors import PositionErrors
 
@@ -117,10 +125,9 @@ def compare(
     first = chosen_line(fmap, line)
     second = _other(other, line)
     _check_same_kind(fmap, second)
-    size = len(second.line.b)
-    crossed, shared = _crossed(fmap, second.fmap, line, size, same_bench=same_bench)
+    common, shared = _common_errors(fmap, second.fmap if same_bench else None, line)
     moves = position_errors(fmap, line), second.moves(line)
-    pair = Pair(first, second.line, crossed, second.loose, moves)
+    pair = Pair(first, second.line, common, second.loose, moves)
     spacing = max(first.spline.spacing, second.spacing)
     low, high = _common(first, second.line, span)
     before = _difference(pair, _points(low, high, spacing))
@@ -211,31 +218,39 @@ def _check_same_kind(fmap: xr.Dataset, other: _Other) -> None:
         )
 
 
-def _crossed(
-    fmap: xr.Dataset, other: xr.Dataset | None, line: int, size: int, *, same_bench: bool
-) -> tuple[Floats, list[str]]:
-    """Covariance between the coefficients of two maps of one bench, and what they share.
+def _common_errors(
+    fmap: xr.Dataset, other: xr.Dataset | None, line: int
+) -> tuple[CommonErrors | None, list[str]]:
+    """Errors common to two maps of one bench, and their names.
 
-    An error η of a prior that both used moves either solution by its covariance with η, over
-    the variance of the prior; nuisances are kept in units of their prior's uncertainty.
+    An error of a prior that both used moves either solution by its covariance with the nuisance,
+    over the variance of the prior; nuisances are kept in units of their prior's uncertainty.
     """
-    mine, own = _sensitivities(fmap, line)
-    theirs, others = (np.zeros((0, 0)), []) if other is None else _sensitivities(other, line)
-    both = [one for one in own if one in others] if same_bench else []
-    crossed = np.zeros((len(mine), size))
-    for one in both:
-        crossed += np.outer(mine[:, own.index(one)], theirs[:, others.index(one)])
-    return crossed, [f"{kind} {where}".strip() for kind, where, _ in both]
+    if other is None:
+        return None, []
+    own, others = ([_known(one) for one in map_unknowns(each, line)] for each in (fmap, other))
+    both = [one for one in own if one in others and one[0] in COMMON]
+    if not both:
+        return None, []
+    mine, theirs = (
+        _sensitivities(each, line, [names.index(one) for one in both])
+        for each, names in ((fmap, own), (other, others))
+    )
+    names = [f"{kind} {where}".strip() for kind, where, _ in both]
+    return CommonErrors(mine[0], theirs[0], mine[1], theirs[1]), names
 
 
-def _sensitivities(fmap: xr.Dataset, line: int) -> tuple[Floats, list[tuple[str, str, float]]]:
-    """Covariance of the coefficients with the nuisances, and kind, place and u of those shared."""
-    facts = json.loads(fmap.attrs["lines"])[line]
-    shared = fmap["shared_covariance"].sel(x=facts["x"], y=facts["y"]).values
-    size = len(chosen_line(fmap, line).b)
-    names = [(one["kind"], one["where"], float(one["sd"])) for one in facts["unknowns"]]
-    kept = [i for i, (kind, _, _) in enumerate(names) if kind in COMMON]
-    return np.asarray(shared[:size, kept]), [names[i] for i in kept]
+def _known(unknown: Nuisance) -> tuple[str, str, float]:
+    return unknown.kind, unknown.where, unknown.sd
+
+
+def _sensitivities(fmap: xr.Dataset, line: int, kept: list[int]) -> tuple[Floats, Floats]:
+    """Covariance of some nuisances with the coefficients and with the position errors."""
+    joint, unknowns = map_joint(fmap, line), map_unknowns(fmap, line)
+    size = len(joint.values) - len(unknowns)
+    columns = joint.covariance[:, [size + i for i in kept]]
+    positions = [size + i for i, one in enumerate(unknowns) if one.kind in POSITIONS]
+    return columns[:size], columns[positions]
 
 
 def _common(
@@ -307,8 +322,7 @@ def _results(fmap: xr.Dataset, pair: Pair) -> tuple[dict[str, ComparedResult], s
     found: dict[str, ComparedResult] = {}
     for key in RESULTS:
         if key in one and key in two:
-            rows = np.atleast_2d(one[key].gradient), np.atleast_2d(two[key].gradient)
-            variance = float(pair.between(*rows, *rows)[0, 0])
+            variance = pair.variance(one[key].gradient, two[key].gradient)
             difference = one[key].value - two[key].value
             u = float(np.sqrt(max(variance, 0.0)))
             first, second = (Quantity(x.value, x.u, x.unit) for x in (one[key], two[key]))

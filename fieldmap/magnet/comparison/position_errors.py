@@ -24,12 +24,13 @@ if TYPE_CHECKING:
 
     from fieldmap.estimate.fieldline import FieldLine
 
-__all__ = ["PositionErrors", "position_errors"]
+__all__ = ["POSITIONS", "PositionErrors", "position_errors"]
 
 Floats = npt.NDArray[np.float64]
 
 ALIKE: Final = ("offset", "lag", "backlash")  # move all points of a map alike
 STRETCH: Final = "scale"  # moves each by a share of its position
+POSITIONS: Final = (*ALIKE, STRETCH)
 
 
 @dataclass(frozen=True, eq=False)
@@ -69,11 +70,11 @@ class PositionErrors:
         (n, n) array
             T^2.
         """
-        off = self._mismatch(rows, s)
+        off = self.mismatch(rows, s)
         mixed = rows @ self.shared @ off.T
         return np.asarray(mixed + mixed.T + off @ self.spread @ off.T)
 
-    def _mismatch(self, rows: Floats, s: Floats) -> Floats:
+    def mismatch(self, rows: Floats, s: Floats) -> Floats:
         """Movement by the slope less movement by the differences of coefficients: (n, m)."""
         spline = self.line.spline
         steps = np.gradient(self.line.b, spline.spacing)
@@ -109,7 +110,7 @@ def position_errors(fmap: xr.Dataset, line: int) -> PositionErrors:
     facts = json.loads(fmap.attrs["lines"])[line]
     at = fmap.sel(x=facts["x"], y=facts["y"])
     kinds = [one["kind"] for one in facts["unknowns"]]
-    kept = [i for i, kind in enumerate(kinds) if kind in {*ALIKE, STRETCH}]
+    kept = [i for i, kind in enumerate(kinds) if kind in POSITIONS]
     mapped = chosen_line(fmap, line)
     return PositionErrors(
         mapped,

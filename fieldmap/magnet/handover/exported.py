@@ -29,8 +29,8 @@ class TableIntegral:
     u : float
         Its standard uncertainty.
     expected : float
-        What the trapezoids are expected to add: the sum of h²/12·(change of b′) over all
-        intervals.
+        What the trapezoids are expected to add: two thirds of what they differ by from the
+        midpoint rule, whose error is half as large and of opposite sign.
     rounding : float
         The most that the decimals of the field can add or take away.
 

@@ -7,8 +7,10 @@ from typing import TYPE_CHECKING, Any, ClassVar
 from fieldmap.show.panels.campaign import CampaignPanel, demo_campaigns
 from fieldmap.show.panels.figure import FigurePanel
 from fieldmap.show.panels.limits import LimitsPanel
-from fieldmap.show.panels.parts import column, hooked
+from fieldmap.show.panels.live import LivePanel
+from fieldmap.show.panels.parts import column, hooked, remembered, titled
 from fieldmap.show.panels.passes import PassesPanel
+from fieldmap.show.panels.references import ReferencesPanel
 from fieldmap.show.panels.results import ResultsPanel
 from fieldmap.show.panels.save import SavePanel
 from fieldmap.show.panels.state import Reduction
@@ -40,15 +42,18 @@ class Panel:
     def __init__(self) -> None:
         import ipywidgets
 
-        self.state = Reduction()
+        self.state = Reduction(keeps=True)
         self.heading = hooked(ipywidgets.HTML(title_html(self.title, None)), "fm-heading-box")
         self.campaign = CampaignPanel(self.state)
         self.passes = PassesPanel(self.state)
+        self.references = ReferencesPanel(self.state)
         self.limits = LimitsPanel(self.state)
         self.results = ResultsPanel(self.state)
         self.figure = FigurePanel(self.state)
         self.save = SavePanel(self.state)
+        self.live = LivePanel(self.state)
         self.state.listen(self._on_change)
+        remembered(self.state, "figure", self.figure.kind)
         layout = self._layout()
         self.status = StatusPanel(self.state)
         head = (
@@ -56,12 +61,24 @@ class Panel:
             self.heading,
             self.campaign.widget,
             self.status.widget,
+            self.status.controls,
         )
         self.widget = column((*head, *layout), "fm", "fm-panel")
 
     def _layout(self) -> tuple[Any, ...]:
         """Widgets below the status line."""
         raise NotImplementedError
+
+    def _readings(self) -> Any:
+        """What the map rests on: passes, references, and the folder they come from."""
+        return column(
+            (
+                titled("Passes", (self.passes.widget,)),
+                titled("References", (self.references.widget,)),
+                titled("While measuring", (self.live.widget,)),
+            ),
+            "fm-readings",
+        )
 
     def open(self, source: str | os.PathLike[str] | Campaign | None = None) -> None:
         """Open a campaign.
@@ -75,7 +92,10 @@ class Panel:
         self.state.open(next(iter(demo_campaigns().values())) if source is None else source)
 
     def show(self, source: str | os.PathLike[str] | Campaign | None = None) -> None:
-        """Show the panel in a notebook, and open a campaign in it.
+        """Show the panel in a notebook, and open a campaign in it; comes back once it is solved.
+
+        What is changed later is solved in the background; `wait` for it where code goes on with
+        ``state.results``.
 
         Parameters
         ----------
@@ -85,13 +105,36 @@ class Panel:
         from IPython.display import display
 
         display(self.widget)  # type: ignore[no-untyped-call]
+        self.state.background = True
         if source is not None or self.state.campaign is None:
             self.open(source)
+        self.wait()
+
+    def wait(self, timeout: float | None = None) -> bool:
+        """Wait until the map and the results are those of what is set.
+
+        Parameters
+        ----------
+        timeout : float, optional
+            s. An interrupt stops the solving as well as the waiting.
+
+        Returns
+        -------
+        bool
+            Whether nothing is left to do.
+        """
+        try:
+            return self.state.wait(timeout)
+        except KeyboardInterrupt:
+            self.state.stop()
+            raise
 
     def close(self) -> None:
-        """Take the panel off the page."""
+        """Take the panel off the page, and end what it does in the background."""
+        self.live.close()
+        self.state.stop()
         self.widget.close()
 
     def _on_change(self, topic: Topic) -> None:
-        if topic == "campaign":
+        if topic in {"campaign", "passes"}:
             self.heading.value = title_html(self.title, self.state.campaign)

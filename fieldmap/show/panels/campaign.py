@@ -52,6 +52,8 @@ class CampaignPanel:
         The campaign file; what stands there is what is open.
     again : ipywidgets.Button
         Reads the file again.
+    reset : ipywidgets.Button
+        Undoes all that was set by hand.
     widget : ipywidgets.Box
         To show.
     """
@@ -73,12 +75,18 @@ class CampaignPanel:
             style={"description_width": "70px"},
         )
         self.again = button("Read again", "Open the campaign file again", "fm-again")
+        self.reset = button(
+            "All as in the file",
+            "All passes, references, limits and views as at first; forgets what was kept",
+            "fm-reset",
+        )
         hooked(self.demo, "fm-demo")
         hooked(self.path, "fm-path")
-        self.widget = row((self.demo, self.path, self.again), "fm-chooser")
+        self.widget = row((self.demo, self.path, self.again, self.reset), "fm-chooser")
         self.demo.observe(self._on_demo, names="value")
         self.path.observe(self._on_path, names="value")
         self.again.on_click(self._on_again)
+        self.reset.on_click(self._on_reset)
         state.listen(self._on_change)
 
     def _on_demo(self, change: dict[str, Any]) -> None:
@@ -94,6 +102,9 @@ class CampaignPanel:
     def _on_again(self, _: Any) -> None:
         if self.path.value.strip():
             self.state.open(self.path.value.strip())
+
+    def _on_reset(self, _: Any) -> None:
+        self.state.reset()
 
     def _on_change(self, topic: Topic) -> None:
         """Follow what was opened by other means."""

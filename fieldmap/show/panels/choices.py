@@ -1,17 +1,55 @@
-"""What is chosen by hand in a reduction, in the words in which it is kept."""
+"""What is chosen by hand in a reduction, and the words in which it is kept."""
 
 from __future__ import annotations
 
 import math
-from typing import TYPE_CHECKING, Any, Literal
+from dataclasses import replace
+from typing import TYPE_CHECKING, Any, Final, Literal, NamedTuple
 
 from fieldmap.errors import InputError
 from fieldmap.show.panels.departures import reference_words, same_spans
 
 if TYPE_CHECKING:
+    from fieldmap.readings.passes import Campaign
     from fieldmap.show.panels.state import Reduction
 
-__all__ = ["remember_choices"]
+__all__ = ["NOTHING", "Choice", "changed", "remember_choices"]
+
+
+class Choice(NamedTuple):
+    """What a map is made from: the campaign, and which of its passes and references."""
+
+    campaign: Campaign | None
+    active: tuple[bool, ...]
+    trusted: tuple[bool, ...]
+
+    @property
+    def marks(self) -> tuple[int, ...]:
+        """Index of each pass in use."""
+        return tuple(i for i, used in enumerate(self.active) if used)
+
+    def reduced(self) -> Campaign:
+        """The campaign with what is in use alone."""
+        assert self.campaign is not None
+        references = zip(self.campaign.references, self.trusted, strict=True)
+        return replace(
+            self.campaign,
+            passes=tuple(self.campaign.passes[i] for i in self.marks),
+            references=tuple(one for one, used in references if used),
+        )
+
+    @property
+    def whole(self) -> bool:
+        """Whether nothing is left out."""
+        return all(self.active) and all(self.trusted)
+
+
+NOTHING: Final = Choice(None, (), ())
+
+
+def changed(flags: tuple[bool, ...], index: int, *, to: bool) -> tuple[bool, ...]:
+    """Flags with one of them changed."""
+    return (*flags[:index], to, *flags[index + 1 :])
 
 
 def remember_choices(state: Reduction) -> None:
@@ -27,8 +65,9 @@ def remember_choices(state: Reduction) -> None:
         lambda: _references_off(state),
         lambda value: _put_references_off(state, value),
     )
-    for key in ("integrate", "flat"):
-        _remember_span(state, key)  # type: ignore[arg-type]
+    keys: tuple[Literal["integrate", "flat"], ...] = ("integrate", "flat")
+    for key in keys:
+        _remember_span(state, key)
 
 
 def _remember_span(state: Reduction, key: Literal["integrate", "flat"]) -> None:

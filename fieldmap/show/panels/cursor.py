@@ -63,12 +63,14 @@ class CursorPanel:
         self.at.observe(self._on_move, names="value")
         self.bar.observe(self._on_move, names="value")
         figure.line.observe(self._on_line, names="value")
+        figure.on_cursor(self._on_cursor)
+        figure.at.place.layout.display = "none"  # the field of the figure is this one's twin
         state.listen(self._on_change)
 
     def move(self, to: float) -> None:
         """Put the cursor somewhere, m, and read the field there."""
-        with self.state.lock:
-            self.state.attempt("reading the field", lambda: self._move(to))
+        self._show_position(to)
+        self.figure.move_cursor(to)
 
     def _on_move(self, change: dict[str, Any]) -> None:
         with self.state.lock:
@@ -80,13 +82,10 @@ class CursorPanel:
             if self.figure.cursor is not None and self.state.fmap is not None:
                 self.state.attempt("reading the field", self._read)
 
-    def _move(self, to: float) -> None:
-        if self.state.fmap is None:
-            return
-        self._show_position(to)
-        self.figure.cursor = to
+    def _on_cursor(self) -> None:
+        if self.figure.cursor is not None:
+            self._show_position(self.figure.cursor)
         self._read()
-        self.figure.draw()
 
     def _read(self) -> None:
         at, line, fmap = self.figure.cursor, self.figure.line.value or 0, self.state.fmap
@@ -115,7 +114,6 @@ class CursorPanel:
 
     def _on_change(self, topic: Topic) -> None:
         if topic == "campaign":
-            self.figure.cursor = None
             self.readout.value = ""
         if topic == "map" and self.state.fmap is not None:
             self._follow_map()

@@ -19,7 +19,11 @@ MM = 1e3
 
 
 def departures(
-    campaign: Campaign, active: tuple[bool, ...], trusted: tuple[bool, ...], axis: Axis
+    campaign: Campaign,
+    active: tuple[bool, ...],
+    trusted: tuple[bool, ...],
+    axis: Axis,
+    added: tuple[str, ...] = (),
 ) -> list[Finding]:
     """Notes of every departure from the campaign file.
 
@@ -31,6 +35,8 @@ def departures(
         Which of its passes and of its references are in use.
     axis : Axis
         Limits and flat window in use.
+    added : tuple of str, optional
+        Passes that the campaign file does not name.
 
     Returns
     -------
@@ -43,6 +49,9 @@ def departures(
             f"{len(left_out)} of {len(active)} passes left out by hand; results rest on the rest."
         )
         notes.append(Finding("passes-left-out", "note", ", ".join(left_out), text))
+    if added:
+        text = "taken in from the folder by hand; the campaign file does not name them yet."
+        notes.append(Finding("passes-added", "note", ", ".join(added), text))
     unused = [i for i, used in enumerate(trusted) if not used]
     if unused:
         names = ", ".join(reference_words(campaign.references[i]) for i in unused)

@@ -300,7 +300,7 @@ class ExplorePanel:
         if topic == "campaign":
             self._corrections = None
             self.heading.value = title_html(TITLE, self.state.campaign)
-        if topic in {"campaign", "results"}:  # results come after every map
+        if topic in {"campaign", "passes", "results"}:  # results come after every map
             self.state.attempt("drawing", self._follow)
 
 

@@ -4,29 +4,34 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any, Final, Literal
 
-from fieldmap.show import figures
-from fieldmap.show.budget_plots import budget_figure
+from fieldmap.show.panels.canvas import FigureView
+from fieldmap.show.panels.drawing import Drawing, Kind
+from fieldmap.show.panels.mouse import Mouse
 from fieldmap.show.panels.parts import column, hooked, row
-from fieldmap.show.picture import blank_figure, paint
+from fieldmap.show.panels.view_bar import ViewBar
+from fieldmap.show.profile import field_at
 from fieldmap.show.rows import label, line_title
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Callable, Sequence
 
+    import xarray as xr
     from matplotlib.figure import Figure
 
+    from fieldmap.readings.passes import Axis
     from fieldmap.show.panels.state import Reduction, Topic
 
 __all__ = ["FigurePanel", "Kind", "Part"]
 
-Kind = Literal["profile", "passes", "residuals", "uncertainty", "budget"]
 Part = Literal["", "in", "out"]
 GAPS_INSIDE: Final = 3.0  # of a fringe, from its boundary towards the middle
 GAPS_OUTSIDE: Final = 6.0
+SHORTEST: Final = 1e-3  # part that is shown, of the whole line
 NAMES: Final[dict[Kind, str]] = {
     "profile": "Profile",
     "passes": "Raw passes",
     "residuals": "Residuals",
+    "overlaps": "Overlaps",
     "uncertainty": "Uncertainty",
     "budget": "Budget",
 }
@@ -35,12 +40,19 @@ NOTHING: Final = '<p class="fm-remark fm-empty">No picture: there is no map.</p>
 
 
 class FigurePanel:
-    """Choose what to look at.
+    """Choose what to look at, and where.
+
+    Where the figure is live, limits and flat window can be dragged on it, and the cursor set.
+    Part and cursor stay when another figure along the line is chosen.
 
     Parameters
     ----------
     state : Reduction
         What is drawn.
+    kinds : sequence of str
+        Figures to choose from.
+    static : bool, optional
+        Whether the figure stays a picture; as for `FigureView`.
 
     Attributes
     ----------
@@ -50,51 +62,96 @@ class FigurePanel:
         Which line of the map; only shown where there are several.
     result : ipywidgets.Dropdown
         Which result the budget is of; only shown beside the budget.
-    figure : matplotlib.figure.Figure
-        The figure that is drawn on, again and again.
-    picture : ipywidgets.HTML
-        What was drawn.
-    part : {"", "in", "out"}
-        Part of the line to show: all of it, or one of its fringes; set it, then call `draw`.
+    view : FigureView
+        The figure.
+    drawing : Drawing
+        What draws on it.
+    at : ViewBar
+        Which part of the line it shows, and its cursor.
+    mouse : Mouse
+        What the mouse does on it.
     cursor : float or None
-        Position to mark, m; likewise.
+        Position that is marked, m.
     decades : bool
-        Whether the profile is shown on a logarithmic scale; likewise.
+        Whether the profile is shown on a logarithmic scale; set it, then call `draw`.
     widget : ipywidgets.VBox
         To show.
     """
 
-    def __init__(self, state: Reduction, kinds: Sequence[Kind] = tuple(NAMES)) -> None:
+    def __init__(
+        self,
+        state: Reduction,
+        kinds: Sequence[Kind] = tuple(NAMES),
+        *,
+        static: bool | None = None,
+    ) -> None:
         import ipywidgets
 
         self.state = state
-        self.part: Part = ""
         self.cursor: float | None = None
         self.decades = False
-        self.figure: Figure = blank_figure()
+        self._zoom: tuple[float, float] | None = None
+        self._restored: set[str] = set()  # what was taken up for the campaign that is opened
+        self._cursor_listeners: list[Callable[[], None]] = []
         self._following = False
         self.kind = hooked(
             ipywidgets.ToggleButtons(options=[(NAMES[kind], kind) for kind in kinds]), "fm-kind"
         )
-        self.line = hooked(
-            ipywidgets.Dropdown(description="Line", style={"description_width": "36px"}), "fm-line"
-        )
-        self.line.layout.display = "none"
-        self.result = hooked(
-            ipywidgets.Dropdown(description="Of", style={"description_width": "24px"}), "fm-of"
-        )
-        self.result.layout.display = "none"
-        self.picture = hooked(ipywidgets.HTML(NOTHING), "fm-picture-box")
+        self.line = _choice("Line", "36px", "fm-line")
+        self.result = _choice("Of", "24px", "fm-of")
+        self.view = FigureView(static=static)
+        self.view.blank(NOTHING)
+        self.drawing = Drawing(self.view)
+        self.at = ViewBar()
+        self.mouse = Mouse(self.view, self, self._guarded)
         self.bar = row((self.kind, self.line, self.result), "fm-figure-bar")
-        self.widget = column((self.bar, self.picture), "fm-figure")
-        self.kind.observe(self._on_choice, names="value")
-        self.line.observe(self._on_choice, names="value")
-        self.result.observe(self._on_choice, names="value")
+        self.widget = column(
+            (self.bar, self.at.upper, self.view.widget, self.at.lower), "fm-figure"
+        )
+        for choice in (self.kind, self.line, self.result):
+            choice.observe(self._on_choice, names="value")
+        self.at.listen(self._on_part, self._on_span, self.move_cursor)
+        self.at.mode.observe(self._on_mode, names="value")
+        self.view.when_live(self._on_live)
+        self.view.connect("resize_event", self._on_resize)
         state.listen(self._on_change)
+        state.remember("part", self._kept_part, self._restore_part)
+        state.remember("cursor", lambda: self.cursor, self._restore_cursor)
+
+    @property
+    def figure(self) -> Figure:
+        """The figure that is drawn on, again and again."""
+        return self.view.figure
+
+    @property
+    def picture(self) -> Any:
+        """Picture with its text alternative, or the caption of the live figure."""
+        return self.view.picture
+
+    @property
+    def part(self) -> Part | None:
+        """Part of the line: all of it, or one of its fringes; None for any other."""
+        return None if self._zoom is not None else self.at.parts.value
+
+    @property
+    def axis(self) -> Axis | None:
+        """Limits and window in use."""
+        return self.state.axis
+
+    @property
+    def mapped(self) -> tuple[float, float] | None:
+        """Ends of the line that is shown, m; None where the figure shows no line."""
+        profiles = self.state.profiles
+        if self.kind.value == "budget" or not profiles or self.state.fmap is None:
+            return None
+        one = profiles[min(self.line.value or 0, len(profiles) - 1)]
+        return one.low, one.high
 
     @property
     def span(self) -> tuple[float, float] | None:
         """Ends of the part that is shown, m; None for all of the line."""
+        if self._zoom is not None:
+            return self._zoom
         line = self.line.value or 0
         if self.state.campaign is None or line >= len(self.state.lines):
             return None
@@ -106,14 +163,75 @@ class FigurePanel:
         before, after = (outside, inside) if self.part == "in" else (inside, outside)
         return boundary.value - before, boundary.value + after
 
+    @property
+    def shown(self) -> tuple[float, float]:
+        """Ends of what is shown, m, within the line."""
+        low, high = self.mapped or (0.0, 0.0)
+        span = self.span or (low, high)
+        return max(low, span[0]), min(high, span[1])
+
+    @property
+    def grips_shown(self) -> bool:
+        """Whether the figure shows limits and window to drag."""
+        return self.drawing.shows_windows and self.state.fmap is not None
+
     def draw(self) -> None:
         """Draw what is chosen."""
-        with self.state.lock:
+        with self.state.lock, self.view.lock:
             self.result.layout.display = "" if self.kind.value == "budget" else "none"
             if not self._drawable():
-                self.picture.value = NOTHING
+                self.drawing.clear()
+                self.view.blank(NOTHING)
                 return
-            self.picture.value = paint(self.figure, self._drawn()).html
+            self.view.refresh(self._drawn())
+            self._follow()
+
+    def set_axis(self, axis: Axis) -> None:
+        """Evaluate with other limits."""
+        before = self.state.axis
+        self.state.move(integrate=axis.integrate, flat=axis.flat)
+        if self.state.axis == before:
+            self.draw()  # nobody else does: it may have been moved on the figure alone
+
+    def preview(self, axis: Axis) -> None:
+        """Move the marks of limits and window on the figure alone."""
+        self.drawing.move_windows(axis)
+
+    def set_span(self, span: tuple[float, float] | None) -> None:
+        """Show a part of the line (m); None for all of it."""
+        with self.state.lock:
+            if self.mapped is None:
+                return
+            self._zoom = None if span is None else _inside(span, self.mapped)
+            if span is None:
+                self.at.show("", self.mapped, self.cursor, self.mapped[1] - self.mapped[0])
+            self.draw()
+
+    def set_cursor(self, at: float | None) -> None:
+        """Mark a position (m) within the line; None takes the mark away."""
+        with self.state.lock:
+            self.cursor = at
+            self.draw()
+            for listener in self._cursor_listeners:
+                listener()
+
+    def move_cursor(self, to: float) -> None:
+        """Mark a position (m); one outside the line is said to be so, and none is marked."""
+        with self.state.lock:
+            if self.state.fmap is None:
+                return
+            line, found = self.line.value or 0, self.state.fmap
+            known = self.state.attempt("reading the field", lambda: _check(found, to, line))
+            self.set_cursor(to if known else None)
+            self.settled()
+
+    def settled(self) -> None:
+        """Keep part and cursor with the campaign."""
+        self.state.keep()
+
+    def on_cursor(self, listener: Callable[[], None]) -> None:
+        """Call something whenever the cursor has moved."""
+        self._cursor_listeners.append(listener)
 
     def _drawable(self) -> bool:
         """Whether there is what the chosen figure shows."""
@@ -126,38 +244,103 @@ class FigurePanel:
 
     def _drawn(self) -> str:
         """Draw on the figure; its text alternative."""
-        state = self.state
-        assert state.axis is not None
-        if self.kind.value == "passes":
-            return figures.passes_figure(self.figure, state.passes, state.axis.travel, state.marks)
-        assert state.fmap is not None
-        if self.kind.value == "residuals":
-            return figures.residuals_figure(
-                self.figure, state.fmap, state.axis.travel, state.map_marks
-            )
-        line = self.line.value or 0
-        if self.kind.value == "uncertainty":
-            return figures.uncertainty_figure(self.figure, state.fmap, state.axis, line, self.span)
-        if self.kind.value == "budget":
-            return budget_figure(self.figure, state.fmap, self.result.value, state.axis, line)
-        if self.decades:
-            return figures.decay_figure(
-                self.figure, state.fmap, state.axis, line, self.span, self.cursor
-            )
-        results = state.lines[line].results if line < len(state.lines) else None
-        return figures.profile_figure(
-            self.figure, state.fmap, state.axis, results, line, self.span, self.cursor
+        return self.drawing.draw(
+            self.state,
+            self.kind.value,
+            line=self.line.value or 0,
+            span=self.span,
+            cursor=self.cursor,
+            result=self.result.value,
+            decades=self.decades,
         )
+
+    def _follow(self) -> None:
+        """Let the fields beside the figure show what it shows."""
+        mapped = self.mapped
+        for part in (self.at.upper, self.at.lower):
+            part.layout.visibility = "hidden" if mapped is None else "visible"
+        if mapped is not None:
+            self.at.show(self.part, self.shown, self.cursor, mapped[1] - mapped[0])
+
+    def _guarded(self, work: Callable[[], None]) -> None:
+        """Run what an event of the figure asks for; what goes wrong is said."""
+        with self.state.lock:
+            try:
+                work()
+            except Exception as error:  # noqa: BLE001 no error of a handler reaches anybody
+                self.state.attempt("moving on the figure", _raiser(error))
+
+    def _kept_part(self) -> str | list[float]:
+        return self.at.parts.value or "" if self._zoom is None else list(self._zoom)
+
+    def _restore_part(self, kept: str | list[float]) -> None:
+        """Take up a part that was kept: a name, the two ends of another, or nothing for all."""
+        self._restored.add("part")
+        if not kept or isinstance(kept, str):
+            self.at.parts.value, self._zoom = kept or "", None
+            return
+        low, high = (float(end) for end in kept)
+        if not low < high:
+            raise ValueError(f"found the ends {low:g} and {high:g}, expected rising ones")
+        self._zoom = (low, high)
+
+    def _restore_cursor(self, kept: float | None) -> None:
+        self._restored.add("cursor")
+        self.cursor = None if kept is None else float(kept)
+
+    def _on_part(self, part: str | None) -> None:
+        if part is None:
+            return
+        with self.state.lock:
+            self._zoom = None
+            span, at = self.span, self.cursor
+            if span is not None and at is not None and not span[0] <= at <= span[1]:
+                self.set_cursor(0.5 * (span[0] + span[1]))  # into sight; draws too
+            else:
+                self.state.attempt("drawing", self.draw)
+            self.settled()
+
+    def _on_span(self, low: float, high: float) -> None:
+        with self.state.lock:
+            self.state.attempt("drawing", lambda: self._show_typed(low, high))
+
+    def _show_typed(self, low: float, high: float) -> None:
+        self.set_span((min(low, high), max(low, high)))
+        self.settled()
+
+    def _on_mode(self, change: dict[str, Any]) -> None:
+        self.mouse.mode = change["new"]
+
+    def _on_live(self) -> None:
+        with self.state.lock:
+            self.at.mode.layout.display = ""
+            self.drawing.clear()  # drawn anew with marks of what can be dragged
+            self.state.attempt("drawing", self.draw)
+
+    def _on_resize(self, _: Any) -> None:
+        with self.view.lock:
+            self.drawing.margins()
 
     def _on_choice(self, _: dict[str, Any]) -> None:
         if not self._following:
             self.state.attempt("drawing", self.draw)
 
     def _on_change(self, topic: Topic) -> None:
-        if topic in {"campaign", "results"}:  # results come after every map
+        if topic == "campaign":
+            self._begin()
+        if topic in {"campaign", "passes", "results"}:  # results come after every map
             self._offer_lines()
             self._offer_results()
             self.draw()
+
+    def _begin(self) -> None:
+        """Another campaign: another line, of which all is shown unless a part was kept."""
+        if "part" not in self._restored:
+            self._zoom = None
+        if "cursor" not in self._restored:
+            self.cursor = None
+        self._restored.clear()
+        self.drawing.clear()
 
     def _offer_lines(self) -> None:
         """Offer the lines of the map where there is a choice."""
@@ -183,3 +366,32 @@ class FigurePanel:
         self.result.options = [(label(key), key) for key in keys]
         self.result.value = chosen
         self._following = False
+
+
+def _check(fmap: xr.Dataset, at: float, line: int) -> None:
+    """Refuse a position outside the line, in words."""
+    field_at(fmap, at, line)
+
+
+def _choice(description: str, width: str, hook: str) -> Any:
+    """A list to choose from; not shown before there is a choice."""
+    import ipywidgets
+
+    choice = ipywidgets.Dropdown(description=description, style={"description_width": width})
+    choice.layout.display = "none"
+    return hooked(choice, hook)
+
+
+def _inside(span: tuple[float, float], whole: tuple[float, float]) -> tuple[float, float]:
+    """A part as long as was asked for, moved into the whole; not shorter than can be shown."""
+    longest = whole[1] - whole[0]
+    length = min(max(span[1] - span[0], SHORTEST * longest), longest)
+    low = min(max(span[0], whole[0]), whole[1] - length)
+    return low, low + length
+
+
+def _raiser(error: Exception) -> Callable[[], None]:
+    def work() -> None:
+        raise error
+
+    return work

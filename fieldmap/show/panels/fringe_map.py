@@ -2,15 +2,13 @@
 
 from __future__ import annotations
 
-from typing import Any, ClassVar, Final
+from typing import Any, ClassVar
 
 from fieldmap.show.panels.base import Panel
 from fieldmap.show.panels.cursor import CursorPanel
-from fieldmap.show.panels.parts import column, hooked, row, titled
+from fieldmap.show.panels.parts import column, hooked, remembered, row, titled
 
 __all__ = ["FringeMapPanel"]
-
-PARTS: Final = (("whole line", ""), ("entry fringe", "in"), ("exit fringe", "out"))
 
 
 class FringeMapPanel(Panel):
@@ -18,7 +16,7 @@ class FringeMapPanel(Panel):
 
     Attributes
     ----------
-    part : ipywidgets.Dropdown
+    part : ipywidgets.ToggleButtons
         Part of the line to look at.
     decades : ipywidgets.Checkbox
         Logarithmic scale.
@@ -40,18 +38,13 @@ class FringeMapPanel(Panel):
     def _layout(self) -> tuple[Any, ...]:
         import ipywidgets
 
-        self.part = hooked(
-            ipywidgets.Dropdown(
-                description="Show", options=PARTS, style={"description_width": "40px"}
-            ),
-            "fm-part",
-        )
+        self.part = self.figure.at.parts
         self.decades = hooked(
             ipywidgets.Checkbox(description="logarithmic", indent=False), "fm-decades"
         )
+        remembered(self.state, "decades", self.decades)
         self.cursor = CursorPanel(self.state, self.figure)
-        self.figure.bar.children = (*self.figure.bar.children, self.part, self.decades)
-        self.part.observe(self._on_view, names="value")
+        self.figure.bar.children = (*self.figure.bar.children, self.decades)
         self.decades.observe(self._on_view, names="value")
         numbers = column(
             (
@@ -61,7 +54,7 @@ class FringeMapPanel(Panel):
             ),
             "fm-side",
         )
-        pictures = column((self.figure.widget, titled("Passes", (self.passes.widget,))), "fm-main")
+        pictures = column((self.figure.widget, self._readings()), "fm-main")
         return (
             row((numbers, pictures), "fm-columns"),
             titled("Findings", (self.results.findings,)),
@@ -70,9 +63,5 @@ class FringeMapPanel(Panel):
 
     def _on_view(self, _: dict[str, Any]) -> None:
         with self.state.lock:
-            self.figure.part, self.figure.decades = self.part.value, self.decades.value
-            span, at = self.figure.span, self.figure.cursor
-            if span is not None and at is not None and not span[0] <= at <= span[1]:
-                self.cursor.move(0.5 * (span[0] + span[1]))  # into sight; draws too
-            else:
-                self.state.attempt("drawing", self.figure.draw)
+            self.figure.decades = self.decades.value
+            self.state.attempt("drawing", self.figure.draw)

@@ -6,7 +6,6 @@ import functools
 import math
 from typing import TYPE_CHECKING, Any, Final, Literal
 
-from fieldmap.estimate.map import map_lines
 from fieldmap.show.panels.parts import button, column, hooked, number_field, row
 
 if TYPE_CHECKING:
@@ -145,12 +144,11 @@ class LimitsPanel:
             self.state.move(integrate=campaign.axis.integrate, flat=campaign.axis.flat)
 
     def _on_change(self, topic: Topic) -> None:
-        axis, fmap = self.state.axis, self.state.fmap
-        if topic not in {"campaign", "map", "results"} or axis is None:
+        axis, lines = self.state.axis, self.state.profiles
+        if topic not in {"campaign", "passes", "map", "results"} or axis is None:
             return
         within = None
-        if fmap is not None:
-            lines = map_lines(fmap)
+        if lines:
             within = (
                 round(min(line.low for line in lines) * MM, 6),
                 round(max(line.high for line in lines) * MM, 6),

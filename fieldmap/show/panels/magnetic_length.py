@@ -32,7 +32,7 @@ class MagneticLengthPanel(Panel):
             ),
             "fm-side",
         )
-        pictures = column((self.figure.widget, titled("Passes", (self.passes.widget,))), "fm-main")
+        pictures = column((self.figure.widget, self._readings()), "fm-main")
         return (
             row((numbers, pictures), "fm-columns"),
             titled("Findings", (self.results.findings,)),

@@ -10,7 +10,9 @@ if TYPE_CHECKING:
 
     import ipywidgets
 
-__all__ = ["button", "column", "hooked", "number_field", "row", "titled"]
+    from fieldmap.show.panels.state import Reduction
+
+__all__ = ["button", "column", "hooked", "number_field", "remembered", "row", "titled"]
 
 LABEL_WIDTH: Final = "86px"
 
@@ -59,3 +61,9 @@ def button(text: str, tooltip: str, *names: str) -> ipywidgets.Button:
     import ipywidgets
 
     return hooked(ipywidgets.Button(description=text, tooltip=tooltip), "fm-button", *names)
+
+
+def remembered(state: Reduction, name: str, widget: Any) -> None:
+    """Keep the value of a widget with the campaign."""
+    state.remember(name, lambda: widget.value, lambda value: setattr(widget, "value", value))
+    widget.observe(lambda _: state.keep(), names="value")

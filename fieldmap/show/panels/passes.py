@@ -8,7 +8,9 @@ from html import escape
 from typing import TYPE_CHECKING, Any, Final
 
 from fieldmap.estimate.map import map_findings, map_passes
+from fieldmap.readings.probe import Wire
 from fieldmap.show.look import pass_style, short
+from fieldmap.show.numbers import plain
 from fieldmap.show.panels.parts import hooked, row
 from fieldmap.show.rows import one_line
 
@@ -60,9 +62,9 @@ class PassesPanel:
         state.listen(self._on_change)
 
     def _on_change(self, topic: Topic) -> None:
-        if topic == "campaign":
+        if topic in {"campaign", "passes"}:
             self._rebuild()
-        elif topic == "map":
+        elif topic in {"map", "stale"}:
             self._refresh()
 
     def _rebuild(self) -> None:
@@ -72,10 +74,10 @@ class PassesPanel:
         passes = self.state.campaign.passes if self.state.campaign else ()
         self.boxes = tuple(
             hooked(
-                ipywidgets.Checkbox(value=True, description=short(one.name), indent=False),
+                ipywidgets.Checkbox(value=used, description=short(one.name), indent=False),
                 "fm-pass",
             )
-            for one in passes
+            for one, used in zip(passes, self.state.active, strict=True)
         )
         self.notes = tuple(ipywidgets.HTML() for _ in passes)
         pairs = zip(self.boxes, self.notes, strict=True)
@@ -93,7 +95,8 @@ class PassesPanel:
 
     def _refresh(self) -> None:
         """Show which passes are in use, and what the map says of them."""
-        assert self.state.campaign is not None
+        if self.state.campaign is None:
+            return
         self._following = True
         health = self._health()
         for index, one in enumerate(self.state.campaign.passes):
@@ -106,6 +109,8 @@ class PassesPanel:
         fmap = self.state.fmap
         if fmap is None:
             return dict.fromkeys(self.state.marks, ("–", "no map"))
+        if self.state.stale:
+            return dict.fromkeys(self.state.marks, ("…", "to be solved"))
         warned = {finding.where for finding in map_findings(fmap) if finding.severity == "warn"}
         found = {}
         for index, facts in zip(self.state.map_marks, map_passes(fmap), strict=True):
@@ -121,8 +126,44 @@ def _note(index: int, one: Pass, mark: str, words: str) -> str:
     about = f"{one_line(one.probe.name)}, {one.record}"
     return (
         f'<span class="fm-pass-note">{_swatch(index)} <span>{escape(about)}</span> '
-        f'<span class="{state}"><b aria-hidden="true">{mark}</b> {escape(words)}</span></span>'
+        f'<span class="{state}"><b aria-hidden="true">{mark}</b> {escape(words)}</span>'
+        f"{_provenance(one)}</span>"
     )
+
+
+def _provenance(one: Pass) -> str:
+    """Where a pass comes from, folded away; the keyboard reaches and opens it."""
+    facts = {
+        "file": str(one.source) if one.source else one.name,
+        "SHA-256": f"{one.sha256[:12]}…" if one.sha256 else "none: not from a file",
+        "readings": str(len(one.time)),
+        "duration": f"{plain(float(one.time[-1] - one.time[0]), 4)} s",
+        "travel": f"{_mm(one.position[0])} to {_mm(one.position[-1])} mm",
+        "line": f"x = {_mm(one.x)} mm, y = {_mm(one.y)} mm",
+        "probe": _probe_words(one),
+        "integrator": one.integrator.name,
+    }
+    rows = "".join(
+        f"<dt>{escape(key)}</dt><dd>{escape(one_line(value))}</dd>" for key, value in facts.items()
+    )
+    label = escape(f"about {one_line(one.name)}", quote=True)
+    return (
+        f'<details class="fm-provenance"><summary aria-label="{label}">about</summary>'
+        f"<dl>{rows}</dl></details>"
+    )
+
+
+def _probe_words(one: Pass) -> str:
+    probe = one.probe
+    if isinstance(probe, Wire):
+        about = f"{probe.turns} turns, {_mm(probe.active_length)} mm long"
+        return f"wire '{probe.name}', {about}"
+    about = f"{plain(probe.effective_area, 6)} m², window {_mm(probe.window)} mm"
+    return f"{probe.shape} coil '{probe.name}', {about}"
+
+
+def _mm(length: float) -> str:
+    return plain(float(length) * 1e3, 6)
 
 
 def _swatch(index: int) -> str:

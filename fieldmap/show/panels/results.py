@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Final
 
 from fieldmap.show.markup import findings_html, results_html, verdicts_html
 from fieldmap.show.panels.parts import hooked
@@ -11,6 +11,11 @@ if TYPE_CHECKING:
     from fieldmap.show.panels.state import Reduction, Topic
 
 __all__ = ["ResultsPanel"]
+
+OUT_OF_DATE: Final = (
+    '<p class="fm-remark fm-stale"><b>Out of date</b>: of an earlier choice of passes or '
+    "references.</p>"
+)
 
 
 class ResultsPanel:
@@ -34,20 +39,23 @@ class ResultsPanel:
         self.verdicts = hooked(ipywidgets.HTML(), "fm-verdicts-box")
         self.table = hooked(ipywidgets.HTML(), "fm-results-box")
         self.findings = hooked(ipywidgets.HTML(), "fm-findings-box")
+        self._old = False
         self._show()
         state.listen(self._on_change)
 
     def _on_change(self, topic: Topic) -> None:
-        if topic in {"campaign", "map", "results"}:
+        if topic in {"campaign", "stale", "results"} or (topic == "map" and self._old):
             self._show()
 
     def _show(self) -> None:
         results, campaign = self.state.results, self.state.campaign
+        self._old = self.state.stale
         if results is None or campaign is None:
             self.verdicts.value = ""
             self.table.value = '<p class="fm-remark">No results.</p>'
             self.findings.value = ""
             return
-        self.verdicts.value = verdicts_html(results, campaign.limits)
-        self.table.value = results_html(results)
+        note = OUT_OF_DATE if self._old else ""
+        self.verdicts.value = note + verdicts_html(results, campaign.limits)
+        self.table.value = note + results_html(results)
         self.findings.value = findings_html(results.findings)

@@ -3,17 +3,15 @@
 from __future__ import annotations
 
 from html import escape
-from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Any
 
 from fieldmap.show.panels.parts import button, column, hooked, row
+from fieldmap.show.panels.places import results_folder
 
 if TYPE_CHECKING:
     from fieldmap.show.panels.state import Reduction, Topic
 
 __all__ = ["SavePanel"]
-
-FOLDER: Final = "fieldmap-results"
 
 
 class SavePanel:
@@ -50,8 +48,20 @@ class SavePanel:
         self.told = hooked(ipywidgets.HTML(), "fm-written")
         self.widget = column((row((self.folder, self.write)), self.told), "fm-save")
         self._propose()
+        state.remember("folder", self._chosen, self._choose)
+        self.folder.observe(self._on_folder, names="value")
         self.write.on_click(self._on_write)
         state.listen(self._on_change)
+
+    def _chosen(self) -> str | None:
+        """The folder, where it is not the proposed one."""
+        return None if self.folder.value == self._proposed else str(self.folder.value)
+
+    def _choose(self, folder: Any) -> None:
+        self.folder.value = self._proposed if folder is None else folder
+
+    def _on_folder(self, _: Any) -> None:
+        self.state.keep()
 
     def _on_write(self, _: Any) -> None:
         self.state.save(self.folder.value)
@@ -59,7 +69,7 @@ class SavePanel:
     def _on_change(self, topic: Topic) -> None:
         if topic == "campaign":
             self._propose()
-        if topic in {"campaign", "map", "results"}:
+        if topic in {"campaign", "passes", "stale", "map", "results"}:
             self.told.value = ""  # what is shown is not what was written any more
         if topic == "saved":
             names = ", ".join(str(file) for file in self.state.saved)
@@ -70,6 +80,5 @@ class SavePanel:
         if self.folder.value != self._proposed:
             return
         campaign = self.state.campaign
-        path = campaign.path if campaign else None
-        self._proposed = str(Path.cwd() / FOLDER / (path.resolve().parent.name if path else ""))
+        self._proposed = str(results_folder(campaign.path if campaign else None))
         self.folder.value = self._proposed

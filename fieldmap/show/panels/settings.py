@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Callable, Mapping
-from pathlib import Path
-from typing import Any, Final, NamedTuple
+from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 from fieldmap.atomic import output_folder, replacing
 from fieldmap.errors import FieldmapError
 from fieldmap.readings.schema import shown
 from fieldmap.readings.tables import read_bytes
 from fieldmap.show.panels.places import settings_file
+
+if TYPE_CHECKING:
+    from collections.abc import Callable, Mapping
+    from pathlib import Path
 
 __all__ = ["FORMAT", "Settings"]
 
@@ -62,13 +64,17 @@ class Settings:
         values = {name: _plain(entry.get()) for name, entry in self._entries.items()}
         return {name: v for name, v in values.items() if v != self._entries[name].usual}
 
+    def usual(self) -> dict[str, Any]:
+        """The values before anything was set by hand."""
+        return {name: entry.usual for name, entry in self._entries.items()}
+
     def restore(self, values: Mapping[str, Any]) -> list[str]:
-        """Set values that were kept; those that are not named become the usual ones.
+        """Set values that were kept; what is not named stays as it is.
 
         Parameters
         ----------
         values : mapping
-            From `read`.
+            From `read`; names that nobody knows are passed over.
 
         Returns
         -------
@@ -77,11 +83,10 @@ class Settings:
         """
         told = []
         for name, entry in self._entries.items():
-            value = values.get(name, entry.usual)
-            if _plain(entry.get()) == value:
+            if name not in values or _plain(entry.get()) == values[name]:
                 continue
             try:
-                entry.put(value)
+                entry.put(values[name])
             except Exception as error:  # noqa: BLE001 - whatever stands in the file
                 reason = str(error).splitlines()[0] if str(error) else type(error).__name__
                 told.append(f"The setting '{name}' was not taken up ({reason}).")
@@ -134,18 +139,18 @@ class Settings:
         """
         # another kind of panel on the same campaign keeps names that this one does not know
         others = {n: v for n, v in (self._kept or {}).items() if n not in self._entries}
-        values = others | _plain(dict(values))
-        if values == self._kept or (not values and self._kept is None):
+        kept = others | _plain(dict(values))
+        if kept == self._kept or (not kept and self._kept is None):
             return ""
         file = settings_file(campaign_file)
-        whole = {"format": FORMAT, "campaign": str(campaign_file.resolve()), **values}
+        whole = {"format": FORMAT, "campaign": str(campaign_file.resolve()), **kept}
         try:
             output_folder(file.parent)
             with replacing(file) as aside:
                 aside.write_text(json.dumps(whole, indent=1) + "\n", encoding="utf-8")
         except FieldmapError as error:
             return f"Settings are not kept: {error}"
-        self._kept = values
+        self._kept = kept
         return ""
 
 

@@ -8,69 +8,40 @@ newer request ends an older one, and what is shown meanwhile is marked as out of
 
 from __future__ import annotations
 
-import functools
-import logging
-import threading
-import time
-from collections.abc import Callable
-from dataclasses import replace
 from pathlib import Path
-from typing import TYPE_CHECKING, Any, Final, Literal, NamedTuple
+from typing import TYPE_CHECKING, Any, Final
 
-from fieldmap.errors import FieldmapError, InputError
+from fieldmap.errors import FieldmapError
 from fieldmap.estimate.map import map_lines, with_axis
 from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.readings.campaign import load
 from fieldmap.readings.passes import Campaign
-from fieldmap.show.handover import save_reduction
-from fieldmap.show.panels.choices import remember_choices
+from fieldmap.show.panels.choices import NOTHING, Choice, changed, remember_choices
 from fieldmap.show.panels.departures import check_order, departures
-from fieldmap.show.panels.places import writable_folder
+from fieldmap.show.panels.desk import Desk, Listener, Topic
 from fieldmap.show.panels.settings import Settings
-from fieldmap.show.panels.worker import Stopped, Worker
+from fieldmap.show.panels.shown import Shown
 
 if TYPE_CHECKING:
     import os
+    from collections.abc import Callable, Mapping
 
     import xarray as xr
 
     from fieldmap.estimate.fieldline import FieldLine
+    from fieldmap.estimate.findings import Finding
     from fieldmap.magnet.results import LineResults, Results
     from fieldmap.progress import Tell
     from fieldmap.readings.passes import Axis, Pass
 
 __all__ = ["Listener", "Reduction", "Topic"]
 
-Topic = Literal["busy", "campaign", "passes", "stale", "map", "results", "saved"]
-Listener = Callable[[Topic], None]
-
 MAPS_KEPT: Final = 8
-LOG: Final = logging.getLogger("fieldmap")
+CAMPAIGN_FILE: Final = "campaign.toml"
 
 
-class Choice(NamedTuple):
-    """What a map is made from: the campaign, and which of its passes and references."""
-
-    campaign: Campaign | None
-    active: tuple[bool, ...]
-    trusted: tuple[bool, ...]
-
-    @property
-    def marks(self) -> tuple[int, ...]:
-        """Index of each pass in use."""
-        return tuple(i for i, used in enumerate(self.active) if used)
-
-    @property
-    def whole(self) -> bool:
-        """Whether nothing is left out."""
-        return all(self.active) and all(self.trusted)
-
-
-NOTHING: Final = Choice(None, (), ())
-
-
-class Reduction:
+class Reduction(Desk):
     """A campaign on its way to results.
 
     Parameters
@@ -113,18 +84,12 @@ class Reduction:
     """
 
     def __init__(self, *, background: bool = False, keeps: bool = False) -> None:
-        self.background, self.keeps = background, keeps
-        # handlers of widgets run in threads of their own; never held while a map is solved in
-        # the background, nor while waiting for that
-        self.lock = threading.RLock()
-        self._worker = Worker()
-        self._listeners: list[Listener] = []
-        self._errors: dict[str, str] = {}
-        self._quick = self._long = ""
-        self._since = 0.0
-        self._forget()
+        super().__init__(background=background)
+        self.keeps = keeps
         self.source: Path | None = None
         self.settings = Settings()
+        self._restoring = False
+        self._forget()
         remember_choices(self)
 
     def _forget(self) -> None:
@@ -138,30 +103,11 @@ class Reduction:
         self.results: Results | None = None
         self.saved: tuple[Path, ...] = ()
         self.notice = ""
+        self.added: tuple[str, ...] = ()
         self._mapped = NOTHING
         self._maps: dict[Choice, xr.Dataset] = {}
         self._spacing: float | None = None
         self._errors.clear()
-
-    @property
-    def error(self) -> str:
-        """What is wrong, in words; empty if nothing is."""
-        return " ".join(tuple(self._errors.values()))
-
-    @property
-    def busy(self) -> str:
-        """What is being done; empty if nothing is."""
-        return self._quick or self._long
-
-    @property
-    def solving(self) -> bool:
-        """Whether something is done or waits to be done in the background."""
-        return not self._worker.idle
-
-    @property
-    def elapsed(self) -> float:
-        """How long the work in the background has taken until now, s."""
-        return time.monotonic() - self._since if self._long else 0.0
 
     @property
     def stale(self) -> bool:
@@ -197,22 +143,12 @@ class Reduction:
         """Results line by line; empty where there are none."""
         return self.results.lines if self.results else ()
 
-    def listen(self, listener: Listener) -> None:
-        """Call a listener after every change, with what has changed; it may hold no thread up."""
-        self._listeners.append(listener)
-
     def remember(self, name: str, get: Callable[[], Any], put: Callable[[Any], None]) -> None:
-        """Name a value that is kept with the campaign; call `keep` when it has changed.
-
-        Parameters
-        ----------
-        name, get, put
-            As for `Settings.remember`.
-        """
+        """Name a value that is kept with the campaign, as `Settings.remember`; see `keep`."""
         self.settings.remember(name, get, put)
 
     def keep(self) -> None:
-        """Keep what is set by hand beside the campaign, if this state keeps anything."""
+        """Keep what is set by hand, if this state keeps anything; call it after every change."""
         with self.lock:
             path = self.campaign.path if self.campaign else None
             if not self.keeps or path is None or self._restoring:
@@ -232,21 +168,21 @@ class Reduction:
         """
         with self.lock:
             self._forget()
-            self._do(lambda tell: self._open(source, tell))
+            self._do(lambda tell: self._open(source, tell), "reading the campaign")
+            if self.background:
+                self._tell("campaign")  # nothing old stays while it is read
 
     def use(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
         """Use a pass, or leave it out, and solve again.
 
         Parameters
         ----------
-        index : int
-            Index of the pass in the campaign.
-        used : bool
-            Whether it is used.
+        index, used
+            Index of the pass in the campaign, and whether it is used.
         """
         with self.lock:
             if 0 <= index < len(self.active) and self.active[index] != used:
-                self.active = _with(self.active, index, used)
+                self.active = changed(self.active, index, to=used)
                 self.solve()
                 self.keep()
 
@@ -254,7 +190,7 @@ class Reduction:
         """Use a reference, or leave it out, and solve again; as for `use`."""
         with self.lock:
             if 0 <= index < len(self.trusted) and self.trusted[index] != used:
-                self.trusted = _with(self.trusted, index, used)
+                self.trusted = changed(self.trusted, index, to=used)
                 self.solve()
                 self.keep()
 
@@ -281,25 +217,28 @@ class Reduction:
             self._evaluate()
             self.keep()
 
-    def renew(self, campaign: Campaign) -> None:
+    def renew(self, campaign: Campaign, added: tuple[str, ...] = ()) -> None:
         """Take a campaign that has grown or lost a pass; what was chosen by hand stays, by name.
 
         Parameters
         ----------
         campaign : Campaign
             Read again.
+        added : tuple of str, optional
+            Passes of it that the campaign file does not name.
         """
         with self.lock:
-            first = self.campaign is None
-            kept = self.settings.changed()
-            if first:
+            if self.campaign is None:
                 self._forget()
-            self._take(campaign)
-            self._restored(self._kept(campaign) if first else kept)
-            self._maps.clear()
-            self._spacing = None
+                self._take(campaign)
+                self._tell("campaign")
+            else:
+                kept = self.settings.changed()
+                self._take(campaign)
+                self._restore(kept)
+                self._tell("passes")
+            self.added = added
             self._errors.clear()
-            self._tell("campaign" if first else "passes")
             self.solve()
 
     def reset(self) -> None:
@@ -309,8 +248,7 @@ class Reduction:
                 return
             before = self._choice
             self.axis = self.campaign.axis
-            self._restored({})
-            self.notice = ""
+            self._restore(self.settings.usual())
             if self._choice != before:
                 self.solve()
             else:
@@ -322,28 +260,9 @@ class Reduction:
         with self.lock:
             if self.campaign is None:
                 return
-            self._do(self._solve)
+            self._do(self._solve, "solving")
             if self.background:
                 self._tell("stale")
-
-    def stop(self) -> None:
-        """Give up what is solved in the background; the last good map stays."""
-        self._worker.stop()
-
-    def wait(self, timeout: float | None = None) -> bool:
-        """Wait until nothing is done in the background; never with the lock held.
-
-        Parameters
-        ----------
-        timeout : float, optional
-            s.
-
-        Returns
-        -------
-        bool
-            Whether that is so.
-        """
-        return self._worker.wait(timeout)
 
     def save(self, folder: str | os.PathLike[str]) -> None:
         """Write map.nc, results.json and report.html with the passes and limits in use.
@@ -355,9 +274,124 @@ class Reduction:
         """
         with self.lock:
             self.saved = ()
-            if self.stale or (self.fmap is None and self.solving):
-                self._errors["writing"] = str(_out_of_date())
-                self._tell("saved")
-                return
-            work = functools.partial(self._save, folder, self.fmap, self.results, self.axis)
-            self._do(work, lasting=True)
+            shown = Shown(self.campaign, self.axis, self.fmap, self.results, self.stale, self.notes)
+            self._do(lambda _: self._save(folder, shown), "writing", lasting=True)
+
+    @property
+    def notes(self) -> tuple[Finding, ...]:
+        """Every departure from the campaign file that what is shown rests on."""
+        campaign, active, trusted = self._mapped
+        if campaign is None or self.axis is None:
+            return ()
+        return tuple(departures(campaign, active, trusted, self.axis, self.added))
+
+    def _open(self, source: str | os.PathLike[str] | Campaign, tell: Tell) -> None:
+        if self._try("reading the campaign", lambda: self._read(source, tell)):
+            self._solve(tell)
+
+    def _read(self, source: str | os.PathLike[str] | Campaign, tell: Tell) -> None:
+        """Read a campaign; what was kept for it is taken up even where it cannot be read."""
+        try:
+            if isinstance(source, Campaign):
+                self.source, campaign = source.path, source
+            else:
+                path = Path(source).expanduser()
+                self.source = path / CAMPAIGN_FILE if path.is_dir() else path
+                campaign = load(path, tell=tell)
+            self._go_on()
+            with self.lock:
+                self._take(campaign)
+        except FieldmapError:
+            with self.lock:
+                self._restore_kept()
+            raise
+        finally:
+            with self.lock:
+                self._tell("campaign")
+
+    def _take(self, campaign: Campaign) -> None:
+        """Begin with all of a campaign, and with what was kept for it."""
+        first = self.campaign is None
+        self.campaign, self.axis = campaign, campaign.axis if first else self._axis_of(campaign)
+        self.active = (True,) * len(campaign.passes)
+        self.trusted = (True,) * len(campaign.references)
+        self.source = campaign.path
+        self._maps.clear()
+        self._spacing = None
+        if first:
+            self._restore_kept()
+
+    def _axis_of(self, campaign: Campaign) -> Axis:
+        """Its axis, unless another was set by hand."""
+        assert self.campaign is not None
+        assert self.axis is not None
+        return campaign.axis if self.axis == self.campaign.axis else self.axis
+
+    def _restore_kept(self) -> None:
+        """Take up what was kept for the campaign file, if this state keeps anything."""
+        if self.keeps and self.source is not None:
+            values, told = self.settings.read(self.source)
+            self.notice = " ".join(filter(None, [told, *self._restore(values)]))
+
+    def _restore(self, values: Mapping[str, Any]) -> list[str]:
+        """Set what was kept without keeping it anew at every step."""
+        self._restoring = True
+        try:
+            return self.settings.restore(values)
+        finally:
+            self._restoring = False
+
+    def _save(self, folder: str | os.PathLike[str], shown: Shown) -> None:
+        written: list[Path] = []
+        self._try("writing", lambda: written.extend(shown.write(folder)))
+        with self.lock:
+            self.saved = tuple(written)
+            self._tell("saved")
+
+    def _solve(self, tell: Tell) -> None:
+        with self.lock:
+            wanted = self._choice
+            self._errors.clear()
+            if not self.background:
+                self.fmap = self.results = None
+        found: list[xr.Dataset] = []
+        self._try("solving", lambda: found.append(self._map_of(wanted, tell)))
+        with self.lock:
+            self._go_on()  # under the lock: nobody asks for another one now
+            self.fmap = found[0] if found else None
+            self.profiles = map_lines(found[0]) if found else []
+            self._mapped = wanted if found else NOTHING
+            self._tell("map")
+            self._evaluate()
+
+    def _map_of(self, wanted: Choice, tell: Tell) -> xr.Dataset:
+        """The map of a choice, or the one made before."""
+        if wanted not in self._maps:
+            self._maps[wanted] = self._stitched(wanted, tell)
+            if len(self._maps) > MAPS_KEPT:
+                del self._maps[next(iter(self._maps))]
+        return self._maps[wanted]
+
+    def _stitched(self, wanted: Choice, tell: Tell) -> xr.Dataset:
+        """Solve; once a knot spacing has been found good, what is left out does not change it."""
+        spacing = None if wanted.whole else self._spacing
+        fmap = stitch(wanted.reduced(), knot_spacing=spacing, tell=tell)
+        if spacing is None:
+            self._spacing = float(fmap["knots"].values[..., 1].min())
+        return fmap
+
+    def _evaluate(self) -> None:
+        self.results = None
+        if self.fmap is not None:
+            self._errors.clear()
+            self.attempt("evaluating", self._take_results)
+        self._tell("results")
+
+    def _take_results(self) -> None:
+        assert self.fmap is not None
+        assert self.axis is not None
+        check_order(self.axis)
+        marked = with_axis(self.fmap, self.axis, self.notes)
+        self.results = evaluate(
+            marked, self.campaign, axis=self.axis, fringe=False, profiles=self.profiles
+        )

@@ -130,7 +130,10 @@ class LayoutFields:
         self._headings = tuple(headings)
         texts = [one.text for one in headings]
         options: list[tuple[str, str | int]] = [
-            (f"{i}: {short(text)}" if text else f"{i}", text if texts.count(text) == 1 and text else i)
+            (
+                f"{i}: {short(text)}" if text else f"{i}",
+                text if texts.count(text) == 1 and text else i,
+            )
             for i, text in enumerate(texts, start=1)
         ]
         values = [value for _, value in options]

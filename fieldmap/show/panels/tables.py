@@ -5,21 +5,22 @@ from __future__ import annotations
 import logging
 import threading
 from html import escape
+from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
-from fieldmap.errors import FieldmapError
+from fieldmap.errors import FieldmapError, InputError
 from fieldmap.progress import silent
 from fieldmap.readings.campaign import load
-from fieldmap.readings.guess import TableGuess, guess_table
+from fieldmap.readings.guess import guess_table
 from fieldmap.readings.layout import QUANTITIES, read_layout
 from fieldmap.readings.preview import open_head, raw_lines
 from fieldmap.readings.records import SAMPLES
 from fieldmap.readings.table_section import section_text, write_table_section
 from fieldmap.show.panels.parts import button, column, hooked, row, titled
 from fieldmap.show.panels.table_fields import LayoutFields
-from fieldmap.show.table_preview import parsed_html, raw_html
 from fieldmap.show.rows import one_line
 from fieldmap.show.stylesheet import stylesheet
+from fieldmap.show.table_preview import parsed_html, raw_html
 
 if TYPE_CHECKING:
     import os
@@ -176,6 +177,8 @@ class TablePanel:
             self.status.value = _status("", CHOOSE)
             return
         self._preview()  # what cannot be read is not written
+        if not self.campaign.value.strip():
+            raise InputError("campaign", "nothing", "the path of a campaign.toml", "name one")
         path = _path(self.campaign.value.strip())
         section = write_table_section(path, self.fields.raw())
         self.told.value = (
@@ -203,8 +206,8 @@ class TablePanel:
             work()
         except FieldmapError as error:
             self.error = str(error)
-        except Exception as error:  # noqa: BLE001 - an exception in a handler reaches no user
-            LOG.error("%s failed", what, exc_info=error)
+        except Exception as error:
+            LOG.exception("%s failed", what)  # an exception in a handler reaches no user
             kind = type(error).__name__
             self.error = f"{what}: found a failure of the kit's own ({kind}: {error})."
         if self.error:
@@ -218,8 +221,6 @@ class TablePanel:
 
 
 def _path(name: str) -> str:
-    from pathlib import Path
-
     return str(Path(name).expanduser())
 
 

@@ -53,6 +53,13 @@ class Worker:
         return bool(self._queue)
 
     @property
+    def stoppable(self) -> bool:
+        """Whether something runs or waits that can be given up."""
+        running = self._running
+        entries = (*self._queue, running) if running else tuple(self._queue)
+        return any(not entry.lasting for entry in entries)
+
+    @property
     def here(self) -> bool:
         """Whether the caller is a job."""
         return threading.current_thread() is self._thread

@@ -40,7 +40,11 @@ NOTHING_FROM_OUTSIDE: Final = "default-src 'none'; style-src 'unsafe-inline'; im
 
 
 def report_html(
-    fmap: xr.Dataset, *, axis: Axis | None = None, k: float = 2.0, extra: Sequence[str] = ()
+    fmap: xr.Dataset,
+    *,
+    axis: Axis | None = None,
+    k: float = 2.0,
+    extra: Sequence[Section | str] = (),
 ) -> str:
     """Report on a map: what was measured, results, verdicts, budgets, findings, provenance.
 
@@ -52,9 +56,9 @@ def report_html(
         Limits and flat window; those kept in the map if not given.
     k : float
         Coverage factor of everything that is shown with ±.
-    extra : sequence of str
-        Further sections as HTML that is safe already, each beginning with an ``<h2>``; they come
-        before the findings.
+    extra : sequence of Section or str
+        Further sections, from `fieldmap.show.report.besides` or as HTML that is safe already;
+        they come before the findings.
 
     Returns
     -------
@@ -81,7 +85,7 @@ def report_html(
 
 
 def report_of(
-    fmap: xr.Dataset, results: Results, axis: Axis, k: float, extra: Sequence[str] = ()
+    fmap: xr.Dataset, results: Results, axis: Axis, k: float, extra: Sequence[Section | str] = ()
 ) -> str:
     """The same where the map has been evaluated already, with this axis and this k."""
     names = (f"figure-{i}" for i in itertools.count(1))
@@ -159,7 +163,7 @@ def save_report(
     *,
     axis: Axis | None = None,
     k: float = 2.0,
-    extra: Sequence[str] = (),
+    extra: Sequence[Section | str] = (),
 ) -> Path:
     """Write the report on a map.
 
