@@ -71,9 +71,10 @@ def test_turned_round_the_difference_changes_its_sign(fmap):
 
 def test_where_both_were(fmap):
     found = pass_agreement(fmap, 0, 1)
-    assert found.position[0] == pytest.approx(-0.1, abs=5e-3)
-    assert found.position[-1] == pytest.approx(0.1, abs=5e-3)
     assert found.resolution == pytest.approx(4 * SPACING, rel=0.1)
+    half = found.resolution / 2
+    assert found.position[0] == pytest.approx(-0.1 + half, abs=5e-3)
+    assert found.position[-1] == pytest.approx(0.1 - half, abs=5e-3)
 
 
 def test_a_level_is_told_by_two_wires_only(fmap):
@@ -107,9 +108,9 @@ def test_what_one_pass_alone_saw_is_shown(pair):
     if not found.level_known:
         expected = expected - expected.mean()
     # drift and gain take their share of it, within their priors
+    assert np.corrcoef(found.difference, expected)[0, 1] > 0.9
     inside = slice(40, -40)
-    assert np.corrcoef(found.difference[inside], expected[inside])[0, 1] > 0.97
-    np.testing.assert_allclose(found.difference[inside], expected[inside], atol=0.35 * HEIGHT)
+    np.testing.assert_allclose(found.difference[inside], expected[inside], atol=0.25 * HEIGHT)
 
 
 def test_a_drift_within_its_prior_is_no_disagreement():

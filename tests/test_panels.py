@@ -229,7 +229,7 @@ def test_every_picture_has_a_text_alternative(either):
     for _, kind in either.figure.kind.options:
         either.figure.kind.value = kind
         words[kind] = either.figure.picture.value.split('alt="')[1].split('"')[0]
-    assert len(set(words.values())) == 5
+    assert len(set(words.values())) == 6
     assert all(len(text) > 40 for text in words.values())
 
 

@@ -65,7 +65,7 @@ class Agreement:
     first, second : str
         Names of the passes.
     position : (n,) array
-        Over the stretch that both travelled, m.
+        Over the stretch that both travelled less half a resolution at its ends, m.
     difference : (n,) array
         What the first says of the field less what the second says, T.
     u : (n,) array
@@ -166,7 +166,7 @@ def pass_agreement(
     found = about[line.spline.size :]
     nuisances = _within(found + system.nuisances_alone(), evidence.prior) - found
     curve, curve_spread = system.given(nuisances)
-    s = np.linspace(pair.low, pair.high, POINTS)
+    s = np.linspace(pair.low + 0.5 * coarse.spacing, pair.high - 0.5 * coarse.spacing, POINTS)
     rows = line.spline.field_rows(s) @ shapes
     if not level_known:
         rows = rows - rows.mean(axis=0)

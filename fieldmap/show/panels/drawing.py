@@ -145,14 +145,15 @@ class Drawing:
         self, state: Reduction, kind: Kind, span: Span | None, cursor: Cursor | None
     ) -> str:
         words, draw, *shown = self._readings_of(state, kind)
-        scene, key = self._scene, (kind, *shown)
-        if isinstance(scene, ReadingsScene) and _same(key, self._readings):
-            scene.view(span)
-            scene.move_cursor(cursor)
-            return words
-        self._scene = scene = ReadingsScene(self.view.figure)
-        scene.show(draw, span, cursor)
-        self._readings = key
+        key = (kind, *shown)
+        if not isinstance(self._scene, ReadingsScene):
+            self._scene, self._readings = ReadingsScene(self.view.figure), ()
+        if _same(key, self._readings):
+            self._scene.view(span)
+            self._scene.move_cursor(cursor)
+        else:
+            self._scene.show(draw, span, cursor)
+            self._readings = key
         return words
 
     def _readings_of(

@@ -129,6 +129,7 @@ class ExplorePanel:
                 self.heading,
                 self.campaign.widget,
                 self.status.widget,
+                self.status.controls,
                 row((self.view, *self._choices().values()), "fm-figure-bar"),
                 self.picture,
                 self.table,
@@ -153,12 +154,25 @@ class ExplorePanel:
         self.state.open(next(iter(demo_campaigns().values())) if source is None else source)
 
     def show(self, source: str | os.PathLike[str] | Campaign | None = None) -> None:
-        """Show the panel in a notebook, and open a campaign in it; as for `open`."""
+        """Show the panel in a notebook, and open a campaign in it; as for `open`.
+
+        It comes back once the campaign is solved; others are solved in the background.
+        """
         from IPython.display import display
 
         display(self.widget)  # type: ignore[no-untyped-call]
+        self.state.background = True
         if source is not None or self.state.campaign is None:
             self.open(source)
+        self.wait()
+
+    def wait(self, timeout: float | None = None) -> bool:
+        """Wait until nothing is solved in the background; whether that is so."""
+        try:
+            return self.state.wait(timeout)
+        except KeyboardInterrupt:
+            self.state.stop()
+            raise
 
     def close(self) -> None:
         """Take the panel off the page."""

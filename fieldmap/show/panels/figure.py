@@ -211,7 +211,8 @@ class FigurePanel:
         """Mark a position (m) within the line; None takes the mark away."""
         with self.state.lock:
             self.cursor = at
-            self.draw()
+            if self.mapped is not None:
+                self.draw()
             for listener in self._cursor_listeners:
                 listener()
 
