@@ -176,5 +176,7 @@ def test_passes_of_several_lines():
 @pytest.mark.parametrize(("chi_square", "agree"), [(10.0, True), (23.2, True), (23.3, False)])
 def test_one_percent_is_the_limit(chi_square, agree):
     # quantile of chi-square with 10 degrees of freedom at 99 %: 23.209 (tables, memory)
-    found = Agreement("a", "b", *(np.zeros(1),) * 3, True, 0.1, chi_square, 10.0, ())
+    zeros = (np.zeros(1),) * 3
+    found = Agreement("a", "b", *zeros, level_known=True, resolution=0.1,
+                      chi_square=chi_square, freedom=10.0, removed=())  # fmt: skip
     assert found.agree == agree

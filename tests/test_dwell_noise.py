@@ -35,7 +35,9 @@ def off(found):
 @pytest.mark.parametrize("rate", [20.0, 100.0])
 def test_errors_are_as_large_as_stated(rate):
     rng = np.random.default_rng(11)
-    errors = np.array([off(dwell_noise(only_dwell(flux_of(rng, 300, rate), rate))) for _ in range(120)])
+    errors = np.array(
+        [off(dwell_noise(only_dwell(flux_of(rng, 300, rate), rate))) for _ in range(120)]
+    )
     size = np.sqrt(np.mean(errors**2, axis=0))
     # the standard error of an rms of 120 is 6.5 %; levels near zero are skew
     assert np.all(size > 0.8)

@@ -141,7 +141,9 @@ def test_other_line_ends_and_a_byte_order_mark(tmp_path, ends):
     assert numbers(found)["time"] == "T"
 
 
-@pytest.mark.parametrize("text", ["hello\nworld\n", "1\n2\n3\n", '"a\n"b\n', "#\n#\n", ";;;\n;;;\n"])
+@pytest.mark.parametrize(
+    "text", ["hello\nworld\n", "1\n2\n3\n", '"a\n"b\n', "#\n#\n", ";;;\n;;;\n"]
+)
 def test_what_is_no_table_gives_the_usual_layout(tmp_path, text):
     found = guessed(tmp_path, text)
     assert how(found) == (",", ".", 0, True)

@@ -97,7 +97,7 @@ def test_or_to_the_end(old, gap):
 
 
 def test_comments_within_the_section_stay():
-    old = '[table]\n# as bench 2 writes\nskip_lines = 3 # goes\n\n# of the stage\n[stage]\n'
+    old = "[table]\n# as bench 2 writes\nskip_lines = 3 # goes\n\n# of the stage\n[stage]\n"
     heading, rest = NEW.split("\n", 1)
     expected = f"{heading}\n# as bench 2 writes\n{rest}\n# of the stage\n[stage]\n"
     assert replace_section(old, NEW) == expected
@@ -181,8 +181,8 @@ def test_any_file_keeps_what_is_not_the_section(pieces):
     assert after.pop("table") == RAW
     before.pop("table", None)
     assert after == before
-    assert "".join(line for line in new.splitlines(True) if line.startswith("#")) == "".join(
-        line for line in old.splitlines(True) if line.startswith("#")
+    assert "".join(line for line in new.splitlines(keepends=True) if line.startswith("#")) == "".join(
+        line for line in old.splitlines(keepends=True) if line.startswith("#")
     )
 
 

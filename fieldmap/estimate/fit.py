@@ -45,9 +45,13 @@ Key = tuple[str, str]
 # smoothness that each takes; START takes the smoothness afresh, one weight for all.
 START = -1
 STATED = (START, 8, 2, 2, 2)
+# The first solve knows no profile, and so no effect of a window on it; a ripple that the coil is
+# blind to explains a wrong window until the smoothness has settled.
+WINDOWED = (START, START, 8, 8, 8, 2, 2, 2)
 OPEN = (START, START, START, START, 8, 2, 2, 2, *[0] * 12)  # noise levels to be found on the way
 RESUMED = (1, 1)
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
+WIDENING_WORTH_REBINNING = 3e-4  # of a window: the square of it is lost in the noise
 
 
 @dataclass(frozen=True, eq=False)
@@ -215,6 +219,8 @@ class _Solver:
         self.covariance = np.zeros((0, 0))
         stated = not any(level.open for level in self.levels.values())
         self.schedule: tuple[int, ...] = STATED if stated else OPEN
+        if stated and any(unknown.kind == "window" for unknown in unknowns):
+            self.schedule = WINDOWED
 
     def resume(self, like: LineFit) -> None:
         """Start from another fit: its field, nuisances, noise levels and smoothness."""
@@ -342,12 +348,19 @@ class _Solver:
         return Fitted(model, rows, noise, rows.target - rows.design @ values)
 
     def _rebin(self) -> None:
-        """Move the readings to where they were taken, if that is more than a linear step."""
-        worth = SHIFT_WORTH_REBINNING * self.spline.spacing
+        """Take the readings where, and the windows as wide as, they are found to be.
+
+        Done where either is more than a linear step away from what was assumed.
+        """
         for i, model in enumerate(self.models):
             shift = model.reading_shift(self.state, self.frame)
-            if np.abs(shift).max() > worth:
-                self.models[i] = PassModel(model.one, self.spline, self.nominal_current, shift)
+            widened = self.state.value("window", model.one.probe.name)
+            moved = np.abs(shift).max() > SHIFT_WORTH_REBINNING * self.spline.spacing
+            if moved or abs(widened - model.widened) > WIDENING_WORTH_REBINNING:
+                applied = shift if moved else model.shift
+                self.models[i] = PassModel(
+                    model.one, self.spline, self.nominal_current, applied, widened
+                )
 
     def _settled(self, before: Floats, levels: dict[Key, NoiseLevel]) -> bool:
         """Whether field and noise levels stand still against their uncertainties."""

@@ -127,12 +127,15 @@ class PassModel:
         A.
     shift : (n,) array, optional
         Position correction of every reading already applied, m.
+    widened : float
+        How much longer the window is taken than stated, relative: where it is linearised.
     """
 
     one: Pass
     spline: UniformSpline
     nominal_current: float | None = None
     shift: Floats | None = None
+    widened: float = 0.0
     bins: Bins = field(init=False)
     flux_steps: sparse.csr_array = field(init=False)
     slope: sparse.csr_array = field(init=False)
@@ -142,10 +145,10 @@ class PassModel:
 
     def __post_init__(self) -> None:
         self.bins = bin_pass(self.one, self.spline.spacing / 2, self.nominal_current)
-        self.flux_steps, self.slope = self._steps(0.0)
+        self.flux_steps, self.slope = self._steps(self.widened)
         self.window_steps = sparse.csr_array(self.flux_steps.shape)
         if isinstance(self.one.probe, Coil) and self.one.probe.u_window > 0:
-            wider, narrower = self._steps(WIDER)[0], self._steps(-WIDER)[0]
+            wider, narrower = (self._steps(self.widened + by)[0] for by in (WIDER, -WIDER))
             self.window_steps = (wider - narrower) / (2 * WIDER)
         self.walk = walk_part(self.bins)
         starts, count = self.bins.starts, self.bins.count
@@ -211,7 +214,7 @@ class PassModel:
         columns = np.zeros((len(bins.time) - 1, len(state.eta)))
         if (index := state.index("window", self.one.probe.name)) is not None:
             columns[:, index] = gain * (self.window_steps @ state.b)
-            field_steps = field_steps + state.eta[index] * self.window_steps
+            field_steps = field_steps + (state.eta[index] - self.widened) * self.window_steps
         for kind, effect in self.own_effects(frame).items():
             if (index := state.index(kind)) is not None:
                 columns[:, index] = np.diff(swing * effect)

@@ -128,7 +128,7 @@ class UniformSpline:
         return rows
 
     def field_parts(self, s: Floats, derivative: int = 0) -> tuple[Ints, Floats]:
-        """What of the rows of `field_rows` is not zero: columns and values, (n, DEGREE + 1) each."""
+        """What is not zero in `field_rows`: columns and values, (n, DEGREE + 1) each."""
         piece, x = self.locate(np.atleast_1d(np.asarray(s, dtype=float)))
         table = piece_polynomials(DEGREE)
         for _ in range(derivative):

@@ -153,7 +153,7 @@ class Follower:
         InputError
             A name that leads elsewhere.
         """
-        if Path(name).name != name:
+        if Path(name).name != name or not name.strip("."):
             raise InputError("file", repr(name), "a file in the folder of the campaign")
         entry = {"probe": probe, **({"record": record} if record else {})}
         self._adopted = {**self._adopted, name: entry}  # a look may be going through the old one
@@ -172,7 +172,8 @@ class Follower:
             In the first `still` seconds without a campaign: nothing can have stood still yet.
         """
         now = self._clock()
-        self._begun = now if self._begun is None else self._begun
+        if self._begun is None:
+            self._begun, self._stamp = now, stamp_of(self.path)
         if not self._campaign_file_is_still():
             return News(None, (Waiting(self.path.name, "it is being written"),))
         self._why = {}
@@ -198,7 +199,8 @@ class Follower:
         if self._stamp == before:
             return True
         self._passes.clear()
-        return before is None
+        self.again()
+        return False
 
     def _take(self, path: Path, read: Callable[[], Pass]) -> Pass | None:
         """The pass of a file that is whole; None, with a reason, for one that is not."""

@@ -14,6 +14,9 @@ __all__ = ["Settling", "Stamp", "stamp_of"]
 
 TEXT: Final = frozenset({".csv", ".txt"})
 BREAKS: Final = (b"\n", b"\r")
+TAIL: Final = 64  # bytes at the end of a file by which it is known again
+WAIT: Final = "it has to stand still for a while"
+LONGEST: Final = 30.0  # s; what goes on later is a file that somebody has taken up again
 CAREFUL: Final = 2.0  # a pause is taken for the end only after so many times the longest one seen
 
 
@@ -35,12 +38,14 @@ def stamp_of(path: Path) -> Stamp | None:
     return Stamp(found.st_size, found.st_mtime_ns, found.st_ino) if regular else None
 
 
-@dataclass(frozen=True)
+@dataclass
 class _Sight:
-    """A file as it was seen, and since when it has been so, s."""
+    """A file as it was seen, since when it has been so, s, and its last bytes."""
 
     stamp: Stamp
     since: float
+    tail: bytes
+    whole: bool = False
 
 
 class Settling:
@@ -91,31 +96,51 @@ class Settling:
         sight = self._seen.get(path)
         if sight is None or sight.stamp != stamp:
             self._note(path, sight, stamp, now)
-            return "it is being written" if sight else "it has to stand still for a while"
-        if stamp.size == 0:
-            return "it is empty"
+            return "it is being written" if sight else WAIT
+        if sight.whole:
+            return ""
         if now - sight.since < max(self.still, CAREFUL * self._longest):
-            return "it has to stand still for a while"
-        return _unended(path)
+            return WAIT
+        why = _why_unended(path, stamp, sight.tail)
+        sight.whole = not why
+        return why
 
     def _note(self, path: Path, sight: _Sight | None, stamp: Stamp, now: float) -> None:
-        grown = sight is not None and stamp.identity == sight.stamp.identity
-        if sight is not None and grown and 0 < sight.stamp.size < stamp.size:
-            self._longest = max(self._longest, now - sight.since)
-        self._seen[path] = _Sight(stamp, now)
+        """Keep a new sight; a file that went on after it looked whole teaches patience."""
+        if sight is not None and _went_on(path, sight, stamp):
+            pause = now - sight.since
+            if pause <= LONGEST:
+                self._longest = max(self._longest, pause)
+        self._seen[path] = _Sight(stamp, now, _bytes_before(path, stamp.size))
 
 
-def _unended(path: Path) -> str:
-    """Why the end of a text file is none."""
-    if path.suffix.lower() not in TEXT:
-        return ""
+def _went_on(path: Path, sight: _Sight, stamp: Stamp) -> bool:
+    """Whether more stands behind what was a whole file to all appearances."""
+    before = sight.stamp
+    return (
+        before.identity == stamp.identity
+        and 0 < before.size < stamp.size
+        and not _why_unended(path, before, sight.tail)
+        and _bytes_before(path, before.size) == sight.tail
+    )
+
+
+def _bytes_before(path: Path, end: int) -> bytes:
+    """The bytes before a place of a file; fewer where it cannot be read."""
+    start = max(end - TAIL, 0)
     try:
         with path.open("rb") as file:
-            file.seek(-1, 2)
-            last = file.read(1)
-    except OSError as error:
-        return f"it cannot be read ({error.strerror or error})"
-    if last in BREAKS:
+            file.seek(start)
+            return file.read(end - start)
+    except OSError:
+        return b""
+
+
+def _why_unended(path: Path, stamp: Stamp, tail: bytes) -> str:
+    """Why the end of a file is none."""
+    if stamp.size == 0:
+        return "it is empty"
+    if path.suffix.lower() not in TEXT or tail.endswith(BREAKS):
         return ""
     return (
         "its last line has no end: it is being written, or the bench ended without a line break; "

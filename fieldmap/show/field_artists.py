@@ -96,10 +96,11 @@ class ProfileArtists:
 
 @dataclass(frozen=True, eq=False)
 class UncertaintyArtists:
-    """Half width of the band, and the area below it."""
+    """Half width of the band, the area below it, and limits and window where they are known."""
 
     line: Line2D
     area: PolyCollection
+    windows: WindowArtists | None = None
 
     def show(self, profile: Profile) -> None:
         """Show that of another profile, and set the scale that suits it."""

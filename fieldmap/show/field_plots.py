@@ -173,7 +173,12 @@ def _equivalent(ax: Axes, results: Mapping[str, Quantity], factor: float) -> Lin
 
 
 def draw_uncertainty(
-    ax: Axes, profile: Profile, axis: MapAxis | None = None, component: str = "B"
+    ax: Axes,
+    profile: Profile,
+    axis: MapAxis | None = None,
+    component: str = "B",
+    *,
+    grips: bool = False,
 ) -> UncertaintyArtists:
     """Half width of the ±2u band along the line, which is too narrow to see on the field itself.
 
@@ -187,6 +192,8 @@ def draw_uncertainty(
         Names the position axis and marks limits and window.
     component : str
         Name of the field component.
+    grips : bool
+        Also mark that limits and window can be dragged.
 
     Returns
     -------
@@ -194,10 +201,9 @@ def draw_uncertainty(
     """
     (line,) = ax.plot([], [], color=BLUE, linewidth=1.4)
     area = ax.fill_between([], [], color=BLUE, alpha=0.2, linewidth=0)
-    drawn = UncertaintyArtists(line, area)
+    windows = None if axis is None else mark_windows(ax, axis, grips=grips)
+    drawn = UncertaintyArtists(line, area, windows)
     drawn.show(profile)
-    if axis is not None:
-        mark_windows(ax, axis)
     travel = axis.travel if axis else "z"
     dress(ax, position_words(travel), uncertainty_label(profile, component))
     return drawn

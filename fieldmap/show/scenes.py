@@ -221,7 +221,8 @@ class ProfileScene(FieldScene):
             upper, self.profile, axis, results, self.component, grips=self.grips
         )
         self._below = draw_uncertainty(lower, self.profile, axis, self.component)
-        self.windows = (self._drawn.windows, mark_windows(lower, axis))
+        assert self._below.windows is not None
+        self.windows = (self._drawn.windows, self._below.windows)
         upper.set_xlabel("")
         upper.tick_params(labelbottom=False)
 
@@ -253,8 +254,9 @@ class UncertaintyScene(FieldScene):
         """Show that of a profile; parameters as for `draw_uncertainty`."""
         (ax,) = self.axes
         if self._begin(profile, component):
-            self._drawn = draw_uncertainty(ax, profile, axis, component)
-            self.windows = (mark_windows(ax, axis, grips=self.grips),)
+            self._drawn = draw_uncertainty(ax, profile, axis, component, grips=self.grips)
+            assert self._drawn.windows is not None
+            self.windows = (self._drawn.windows,)
         else:
             self._drawn.show(profile)
             ax.set_ylabel(uncertainty_label(profile, component))

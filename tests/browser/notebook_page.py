@@ -4,7 +4,8 @@ from __future__ import annotations
 
 RUN_MS = 180_000  # a loaded machine solves slowly
 APART = 0.01  # of the width of a picture: columns closer than that are one line
-PICTURE = ".fm-picture-box img"
+PICTURE = ".fm-live canvas, .fm-picture-box img"  # a live figure, or a picture where it is none
+WORDS = ".fm-picture-box"  # what the figure shows, in words
 
 READY = """async () => {
   const app = window.jupyterapp; await app.restored;
@@ -28,11 +29,13 @@ ERRORS = """() => [...window.jupyterapp.shell.currentWidget.content.widgets]
 # How many pixels of a picture have a colour, and, as shares of its width, the columns of which
 # a quarter has it: where vertical lines of that colour stand.
 COLOUR = """([selector, colour]) => {
-  const image = document.querySelector(selector);
-  if (!image || !image.complete || !image.naturalWidth) return {total: 0, columns: []};
-  const canvas = document.createElement('canvas');
-  const w = canvas.width = image.naturalWidth, h = canvas.height = image.naturalHeight;
-  const pen = canvas.getContext('2d'); pen.drawImage(image, 0, 0);
+  const image = document.querySelector(selector), live = image instanceof HTMLCanvasElement;
+  const size = live ? [image.width, image.height] : [image?.naturalWidth, image?.naturalHeight];
+  if (!image || !size[0] || !(live || image.complete)) return {total: 0, columns: []};
+  const canvas = live ? image : document.createElement('canvas');
+  const [w, h] = size;
+  if (!live) { canvas.width = w; canvas.height = h; }
+  const pen = canvas.getContext('2d'); if (!live) pen.drawImage(image, 0, 0);
   const data = pen.getImageData(0, 0, w, h).data;
   const counts = new Array(w).fill(0);
   for (let y = 0; y < h; y++) for (let x = 0; x < w; x++) {
@@ -83,6 +86,13 @@ def vertical_lines(page, colour, selector=PICTURE):
 
 def _colour(page, colour, selector):
     return page.evaluate(COLOUR, [selector, [int(colour[i : i + 2], 16) for i in (1, 3, 5)]])
+
+
+def words(page):
+    """What the figure of the panel is said to show: caption of a live one, or alternative text."""
+    return page.locator(WORDS).evaluate(
+        "e => e.querySelector('img')?.getAttribute('alt') ?? e.innerText.trim()"
+    )
 
 
 def eventually(page, ask, expected, seconds=30):

@@ -1,6 +1,6 @@
 """A figure in a panel: live where there is a page that can show it so, a picture where not.
 
-The figure is drawn in two layers. Frames, ticks, labels and legends are the ground; they are
+The figure is drawn in two layers. Grids, ticks, labels and legends are the ground; they are
 drawn again only when one of them changes. Curves, bands and marks lie on top: with these alone
 a new frame takes a few milliseconds, so that limits and cursor follow the mouse.
 """
@@ -178,17 +178,16 @@ class FigureView:
             artist.draw(renderer)
 
     def _top(self) -> Iterator[Artist]:
-        """Curves, areas and marks, from below to above."""
+        """Curves, areas, marks and texts, and the frame that lies over them; from below to above."""
         for ax in self.figure.axes:
-            yield from sorted(
-                (*ax.collections, *ax.patches, *ax.lines), key=lambda artist: artist.get_zorder()
-            )
+            there = (*ax.collections, *ax.patches, *ax.lines, *ax.texts, *ax.spines.values())
+            yield from sorted(there, key=lambda artist: artist.get_zorder())
         yield from self.extra
 
     def _frame_now(self) -> tuple[Any, ...] | None:
-        """All that the ground shows; None where it cannot be told."""
+        """All that the ground shows; None where there is nothing."""
         axes = self.figure.axes
-        if not axes or any(ax.texts for ax in axes):
+        if not axes:
             return None
         return (
             tuple(self.figure.get_size_inches()),
@@ -261,6 +260,12 @@ def _canvas_class() -> Callable[[Figure, FigureView], Any] | None:
                 super().draw()
             else:
                 view.draw_layers(super().draw)
+
+        def get_diff_image(self) -> bytes | None:
+            """Always the whole image: a page loses those that come too fast, and their changes."""
+            self._force_full = True
+            image: bytes | None = super().get_diff_image()
+            return image
 
     def make(figure: Figure, view: FigureView) -> Any:
         canvas = LiveCanvas(figure)

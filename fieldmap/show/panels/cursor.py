@@ -5,7 +5,7 @@ from __future__ import annotations
 from html import escape
 from typing import TYPE_CHECKING, Any
 
-from fieldmap.estimate.map import map_lines, map_magnet
+from fieldmap.estimate.map import map_magnet
 from fieldmap.show.captions import field_words
 from fieldmap.show.look import MM
 from fieldmap.show.numbers import plain
@@ -121,11 +121,8 @@ class CursorPanel:
             self._read()
 
     def _follow_map(self) -> None:
-        """Take the mapped range; begin in the middle of the flat window."""
-        fmap, axis = self.state.fmap, self.state.axis
-        assert fmap is not None
-        assert axis is not None
-        lines = map_lines(fmap)
+        """Take the mapped range, and the place that the figure's cursor begins at."""
+        lines = self.state.profiles
         one = lines[min(self.figure.line.value or 0, len(lines) - 1)]
         low, high = round(one.low * MM, 6), round(one.high * MM, 6)
         self._following = True
@@ -133,9 +130,5 @@ class CursorPanel:
         self.bar.min, self.bar.max = min(self.bar.min, low), max(self.bar.max, high)
         self.bar.min, self.bar.max = low, high
         self._following = False
-        at = self.figure.cursor
-        if at is None:
-            at = 0.5 * (axis.flat[0] + axis.flat[1])
-        at = min(max(at, one.low), one.high)
-        self.figure.cursor = at
-        self._show_position(at)
+        if self.figure.cursor is not None:
+            self._show_position(self.figure.cursor)

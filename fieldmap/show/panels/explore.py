@@ -108,7 +108,7 @@ class ExplorePanel:
         self.state = Reduction()
         self.figure = blank_figure()
         self._following = False
-        self._corrections: tuple[Any, Corrections] | None = None
+        self._corrections: tuple[Any, Any, Corrections] | None = None
         self.heading = hooked(ipywidgets.HTML(title_html(TITLE, None)), "fm-heading-box")
         self.campaign = CampaignPanel(self.state)
         self.view = hooked(ipywidgets.ToggleButtons(options=_VIEWS), "fm-kind", "fm-view")
@@ -237,11 +237,12 @@ class ExplorePanel:
         fmap = self.state.fmap
         assert fmap is not None
         line = self.line.value or 0
-        asked = (id(fmap), self.state.axis, line)
-        if self._corrections is None or self._corrections[0] != asked:
+        known, axis = self._corrections, self.state.axis
+        if known is None or known[0] is not fmap or known[1] != (axis, line):
             used = replace(self._campaign, passes=self.state.passes)
-            self._corrections = asked, corrections(fmap, used, axis=self.state.axis, line=line)
-        found = self._corrections[1]
+            known = fmap, (axis, line), corrections(fmap, used, axis=axis, line=line)
+            self._corrections = known
+        found = known[2]
         self._offer(self.result, [(label(key), key) for key in found.results], _FIRST_RESULT)
         self.table.value = corrections_shown(found, self.result.value).html
 

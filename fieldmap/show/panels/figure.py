@@ -8,6 +8,7 @@ from fieldmap.show.panels.canvas import FigureView
 from fieldmap.show.panels.drawing import Drawing, Kind
 from fieldmap.show.panels.mouse import Mouse
 from fieldmap.show.panels.parts import column, hooked, row
+from fieldmap.show.panels.sight import Sight
 from fieldmap.show.panels.view_bar import ViewBar
 from fieldmap.show.profile import field_at
 from fieldmap.show.rows import label, line_title
@@ -26,7 +27,6 @@ __all__ = ["FigurePanel", "Kind", "Part"]
 Part = Literal["", "in", "out"]
 GAPS_INSIDE: Final = 3.0  # of a fringe, from its boundary towards the middle
 GAPS_OUTSIDE: Final = 6.0
-SHORTEST: Final = 1e-3  # part that is shown, of the whole line
 NAMES: Final[dict[Kind, str]] = {
     "profile": "Profile",
     "passes": "Raw passes",
@@ -70,8 +70,8 @@ class FigurePanel:
         Which part of the line it shows, and its cursor.
     mouse : Mouse
         What the mouse does on it.
-    cursor : float or None
-        Position that is marked, m.
+    sight : Sight
+        Part and cursor.
     decades : bool
         Whether the profile is shown on a logarithmic scale; set it, then call `draw`.
     widget : ipywidgets.VBox
@@ -88,10 +88,7 @@ class FigurePanel:
         import ipywidgets
 
         self.state = state
-        self.cursor: float | None = None
         self.decades = False
-        self._zoom: tuple[float, float] | None = None
-        self._restored: set[str] = set()  # what was taken up for the campaign that is opened
         self._cursor_listeners: list[Callable[[], None]] = []
         self._following = False
         self.kind = hooked(
@@ -103,6 +100,7 @@ class FigurePanel:
         self.view.blank(NOTHING)
         self.drawing = Drawing(self.view)
         self.at = ViewBar()
+        self.sight = Sight(state, self.at.parts)
         self.mouse = Mouse(self.view, self, self._guarded)
         self.bar = row((self.kind, self.line, self.result), "fm-figure-bar")
         self.widget = column(
@@ -115,8 +113,6 @@ class FigurePanel:
         self.view.when_live(self._on_live)
         self.view.connect("resize_event", self._on_resize)
         state.listen(self._on_change)
-        state.remember("part", self._kept_part, self._restore_part)
-        state.remember("cursor", lambda: self.cursor, self._restore_cursor)
 
     @property
     def figure(self) -> Figure:
@@ -129,9 +125,14 @@ class FigurePanel:
         return self.view.picture
 
     @property
+    def cursor(self) -> float | None:
+        """Position that is marked, m."""
+        return self.sight.cursor
+
+    @property
     def part(self) -> Part | None:
         """Part of the line: all of it, or one of its fringes; None for any other."""
-        return None if self._zoom is not None else self.at.parts.value
+        return None if self.sight.zoom is not None else self.at.parts.value
 
     @property
     def axis(self) -> Axis | None:
@@ -141,8 +142,11 @@ class FigurePanel:
     @property
     def mapped(self) -> tuple[float, float] | None:
         """Ends of the line that is shown, m; None where the figure shows no line."""
+        return None if self.kind.value == "budget" else self._line_ends()
+
+    def _line_ends(self) -> tuple[float, float] | None:
         profiles = self.state.profiles
-        if self.kind.value == "budget" or not profiles or self.state.fmap is None:
+        if not profiles or self.state.fmap is None:
             return None
         one = profiles[min(self.line.value or 0, len(profiles) - 1)]
         return one.low, one.high
@@ -150,8 +154,8 @@ class FigurePanel:
     @property
     def span(self) -> tuple[float, float] | None:
         """Ends of the part that is shown, m; None for all of the line."""
-        if self._zoom is not None:
-            return self._zoom
+        if self.sight.zoom is not None:
+            return self.sight.zoom
         line = self.line.value or 0
         if self.state.campaign is None or line >= len(self.state.lines):
             return None
@@ -202,7 +206,7 @@ class FigurePanel:
         with self.state.lock:
             if self.mapped is None:
                 return
-            self._zoom = None if span is None else _inside(span, self.mapped)
+            self.sight.show(span, self.mapped)
             if span is None:
                 self.at.show("", self.mapped, self.cursor, self.mapped[1] - self.mapped[0])
             self.draw()
@@ -210,7 +214,7 @@ class FigurePanel:
     def set_cursor(self, at: float | None) -> None:
         """Mark a position (m) within the line; None takes the mark away."""
         with self.state.lock:
-            self.cursor = at
+            self.sight.mark(at)
             if self.mapped is not None:
                 self.draw()
             for listener in self._cursor_listeners:
@@ -271,29 +275,11 @@ class FigurePanel:
             except Exception as error:  # noqa: BLE001 no error of a handler reaches anybody
                 self.state.attempt("moving on the figure", _raiser(error))
 
-    def _kept_part(self) -> str | list[float]:
-        return self.at.parts.value or "" if self._zoom is None else list(self._zoom)
-
-    def _restore_part(self, kept: str | list[float]) -> None:
-        """Take up a part that was kept: a name, the two ends of another, or nothing for all."""
-        self._restored.add("part")
-        if not kept or isinstance(kept, str):
-            self.at.parts.value, self._zoom = kept or "", None
-            return
-        low, high = (float(end) for end in kept)
-        if not low < high:
-            raise ValueError(f"found the ends {low:g} and {high:g}, expected rising ones")
-        self._zoom = (low, high)
-
-    def _restore_cursor(self, kept: float | None) -> None:
-        self._restored.add("cursor")
-        self.cursor = None if kept is None else float(kept)
-
     def _on_part(self, part: str | None) -> None:
         if part is None:
             return
         with self.state.lock:
-            self._zoom = None
+            self.sight.zoom = None
             span, at = self.span, self.cursor
             if span is not None and at is not None and not span[0] <= at <= span[1]:
                 self.set_cursor(0.5 * (span[0] + span[1]))  # into sight; draws too
@@ -328,20 +314,16 @@ class FigurePanel:
 
     def _on_change(self, topic: Topic) -> None:
         if topic == "campaign":
-            self._begin()
+            self.sight.begin()
+            self.drawing.clear()
+        if topic == "map":
+            mapped, axis = self._line_ends(), self.state.axis
+            if mapped is not None and axis is not None:
+                self.sight.settle(mapped, axis.flat)
         if topic in {"campaign", "passes", "results"}:  # results come after every map
             self._offer_lines()
             self._offer_results()
             self.draw()
-
-    def _begin(self) -> None:
-        """Another campaign: another line, of which all is shown unless a part was kept."""
-        if "part" not in self._restored:
-            self._zoom = None
-        if "cursor" not in self._restored:
-            self.cursor = None
-        self._restored.clear()
-        self.drawing.clear()
 
     def _offer_lines(self) -> None:
         """Offer the lines of the map where there is a choice."""
@@ -381,14 +363,6 @@ def _choice(description: str, width: str, hook: str) -> Any:
     choice = ipywidgets.Dropdown(description=description, style={"description_width": width})
     choice.layout.display = "none"
     return hooked(choice, hook)
-
-
-def _inside(span: tuple[float, float], whole: tuple[float, float]) -> tuple[float, float]:
-    """A part as long as was asked for, moved into the whole; not shorter than can be shown."""
-    longest = whole[1] - whole[0]
-    length = min(max(span[1] - span[0], SHORTEST * longest), longest)
-    low = min(max(span[0], whole[0]), whole[1] - length)
-    return low, low + length
 
 
 def _raiser(error: Exception) -> Callable[[], None]:

@@ -26,6 +26,10 @@ __all__ = ["LivePanel"]
 
 EVERY: Final = 2.0  # s between two looks
 SOONEST: Final = 0.2
+HINT: Final = (
+    '<p role="status" class="fm-told">Are some passes not measured yet? Follow the folder to open '
+    "the campaign with those that are there.</p>"
+)
 LOG: Final = logging.getLogger("fieldmap")
 
 
@@ -140,7 +144,11 @@ class LivePanel:
     def _on_change(self, topic: Topic) -> None:
         """Follow the folder of the campaign that is open."""
         source = self.state.source
-        if topic != "campaign" or self._follower is None:
+        if topic != "campaign":
+            return
+        if self._follower is None:
+            there = source is not None and source.is_file()
+            self.told.value = HINT if there and self.state.campaign is None else ""
             return
         if self._follower.path == source:
             self._follower.again()  # it was opened by other means

@@ -94,6 +94,8 @@ class Mouse:
         self._pointer = ""
         self._ax: Any = None  # axes that the drag began in
         self._from = 0.0  # position where it began, m
+        self._off = 0.0  # of an end from the pointer that has taken it, m
+        self._origin: tuple[float, float] = (0.0, 0.0)  # pixel where it began, m in a pixel
         self._axis: Axis | None = None  # limits when it began
         self._now: Axis | None = None  # limits where the mouse is
         self._span = (0.0, 0.0)
@@ -114,11 +116,14 @@ class Mouse:
             self.target.set_span(None)
             return
         self._ax, self._from = event.inaxes, event.xdata / MM
-        self._span = self.target.shown
+        self._span, self._next = self.target.shown, 0.0
+        low, high = self._ax.get_xlim()
+        self._origin = (event.x, (high - low) / MM / float(self._ax.bbox.width))
         grip = self._grip(event) if self.mode == "point" else None
         if grip is not None:
             self._axis = self._now = self.target.axis
-            self._next = 0.0
+            assert self._axis is not None
+            self._off = grip.at(self._axis) - self._from
             self.drag = grip
             self._tell(grip)
         else:
@@ -141,10 +146,7 @@ class Mouse:
         elif self.drag == "zoom":
             self._mark(at)
         else:
-            shift = self._from - at
-            self._paced(
-                lambda: self.target.set_span((self._span[0] + shift, self._span[1] + shift))
-            )
+            self._paced(lambda: self._pan(event))
 
     def _release(self, event: Any) -> None:
         drag, at = self.drag, self._position(event) if self.drag is not None else 0.0
@@ -160,6 +162,8 @@ class Mouse:
                 self.target.set_span((min(self._from, at), max(self._from, at)))
             else:
                 self.view.sketch()
+        elif drag == "pan":
+            self._pan(event)
         if drag is not None:
             self.target.settled()
 
@@ -207,10 +211,16 @@ class Mouse:
         now = self._now
         self._paced(lambda: self.target.set_axis(now))
 
+    def _pan(self, event: Any) -> None:
+        """Shift what is shown as far as the mouse has moved; positions move along with it."""
+        begun, length = self._origin
+        shift = (begun - event.x) * length
+        self.target.set_span((self._span[0] + shift, self._span[1] + shift))
+
     def _moved(self, grip: Grip, at: float) -> Axis | None:
         if self._axis is None or self.target.mapped is None:
             return None
-        return dragged(self._axis, grip, at, self.target.mapped)
+        return dragged(self._axis, grip, at + self._off, self.target.mapped)
 
     def _paced(self, work: Callable[[], None]) -> None:
         """Do what takes longer only now and then; what is left out is made good at the end."""

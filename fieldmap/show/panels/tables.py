@@ -74,7 +74,7 @@ class TablePanel:
                               "fm-table-campaign")  # fmt: skip
         self.guess = button("Guess again", "Fill in what the file looks like", "fm-guess")
         self.write = button("Write [table]", "Write the layout into the campaign", "fm-write")
-        self.status = hooked(ipywidgets.HTML(_status("", CHOOSE)), "fm-status", "fm-table-status")
+        self.status = hooked(ipywidgets.HTML(_status("", CHOOSE)), "fm-table-status")
         self.raw = hooked(ipywidgets.HTML(), "fm-preview", "fm-raw-box")
         self.parsed = hooked(ipywidgets.HTML(), "fm-preview", "fm-parsed-box")
         self.told = hooked(ipywidgets.HTML(), "fm-written")

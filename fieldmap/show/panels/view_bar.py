@@ -45,7 +45,7 @@ class ViewBar:
         self.parts = hooked(ipywidgets.ToggleButtons(options=PARTS, value=""), "fm-part", "fm-kind")
         self.low = number_field("Shown from", "fm-shown-low")
         self.high = number_field("to", "fm-shown-high")
-        self.low.style.description_width = "74px"
+        self.low.style.description_width = "84px"
         self.high.style.description_width = "18px"
         self.cursor = number_field("Cursor", "fm-cursor-field")
         self.cursor.style.description_width = "50px"
