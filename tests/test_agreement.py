@@ -107,9 +107,9 @@ def test_what_one_pass_alone_saw_is_shown(pair):
     expected = -HEIGHT / np.cosh((found.position - PLACE) / WIDTH) ** 2
     if not found.level_known:
         expected = expected - expected.mean()
-    # drift and gain take their share of it, within their priors
-    assert np.corrcoef(found.difference, expected)[0, 1] > 0.9
+    # drift and gain take their share of it, within their priors; what is left piles up at the ends
     inside = slice(40, -40)
+    assert np.corrcoef(found.difference[inside], expected[inside])[0, 1] > 0.9
     np.testing.assert_allclose(found.difference[inside], expected[inside], atol=0.25 * HEIGHT)
 
 

@@ -10,7 +10,7 @@ import pytest
 
 from fieldmap.bench.sources import Solenoid, Uniform
 from fieldmap.errors import FieldmapError, InputError, RefusedError
-from fieldmap.estimate import stitch
+from fieldmap.estimate import map_lines, stitch
 from fieldmap.magnet import evaluate
 from fieldmap.readings import Axis, Limit, Magnet
 from fieldmap.readings.sections import RESULT_UNITS
@@ -232,3 +232,12 @@ def test_a_short_cut_to_the_first_line(campaign, fmap):
     assert results["central_field"] is results.lines[0].results["central_field"]
     assert results["central_field"].expanded() == 2 * results["central_field"].u
     assert results["central_field"].expanded(3) == 3 * results["central_field"].u
+
+
+def test_lines_taken_once_give_the_same_results(campaign, fmap):
+    profiles = map_lines(fmap)
+    for flat in ((-0.05, 0.05), (-0.02, 0.03)):
+        axis = AXIS.moved(flat=flat)
+        again = evaluate(fmap, campaign, axis=axis, fringe=False, profiles=profiles)
+        fresh = evaluate(fmap, campaign, axis=axis, fringe=False)
+        assert again.as_dict() == fresh.as_dict()

@@ -150,7 +150,7 @@ def test_without_a_map_readings_and_dwells_are_there(campaign):
     panel = ExplorePanel()
     panel.open(replace(campaign, passes=campaign.passes[2:], references=()))  # no level
     assert panel.state.fmap is None
-    assert "no absolute level" in panel.state.error.lower() or panel.state.error
+    assert 'role="alert"' in panel.status.widget.value
     assert 'alt="Flux' in panel.picture.value
     panel.view.value = "spectrum"
     assert 'alt="Power' in panel.picture.value

@@ -24,6 +24,7 @@ from fieldmap.estimate.map import (
     map_lines,
     map_magnet,
     map_passes,
+    with_axis,
 )
 from fieldmap.estimate.noise import Tridiagonal
 from fieldmap.estimate.parameters import Nuisance
@@ -312,3 +313,16 @@ def test_campaign_and_line_are_left_alone():
     fmap = build_map(replace(CAMPAIGN), [one], [], step=0.01)
     fmap["coefficient_covariance"][:] = 0.0
     np.testing.assert_array_equal(one.fit.covariance, before)
+
+
+def test_with_another_axis_only_what_is_taken_changes():
+    fmap = build_map(CAMPAIGN, [line()], [], step=0.01)
+    axis, note = Axis("z", (0.001, 0.019), (0.006, 0.014)), Finding("code", "note", "here", "text.")
+    before = dict(fmap.attrs)
+    moved = with_axis(fmap, axis, [note])
+    assert map_axis(moved) == axis
+    assert map_findings(moved) == [*map_findings(fmap), note]
+    assert map_limits(moved) == map_limits(fmap)
+    assert fmap.attrs == before
+    assert moved["B"].variable._data is fmap["B"].variable._data
+    assert map_findings(with_axis(moved, map_axis(fmap))) == map_findings(moved)

@@ -1,13 +1,16 @@
 """Panels without browser, kernel or server: values set, buttons clicked, numbers and artists."""
 
+import gc
 import json
 import threading
+import tracemalloc
 from dataclasses import replace
 
 import ipywidgets
 import numpy as np
 import pytest
 from matplotlib import pyplot as plt
+from matplotlib.figure import Figure
 
 import fieldmap
 from fieldmap.bench.sources import TanhMagnet
@@ -565,3 +568,76 @@ def test_maps_of_past_choices_are_kept_but_not_for_ever(campaign, solves):
 )
 def test_steps_are_plain_numbers(length, step):
     assert plain_step(length) == step
+
+
+def test_provenance_of_a_pass_is_folded_away_where_the_keyboard_reaches_it(folder):
+    panel = MagneticLengthPanel()
+    panel.open(folder)
+    one = panel.state.campaign.passes[2]
+    note = panel.passes.notes[2].value
+    assert '<details class="fm-provenance"><summary aria-label="about pass_03.csv">' in note
+    assert f"<dd>{one.source}</dd>" in note
+    assert f"<dd>{one.sha256[:12]}…</dd>" in note
+    assert f"<dd>{len(one.time)}</dd>" in note
+    assert f"<dd>{one.time[-1] - one.time[0]:.4g} s</dd>" in note
+    assert "rectangular coil &#x27;coil&#x27;, 0.3 m², window 10 mm" in note
+    assert "20 turns, 50 mm long" in panel.passes.notes[0].value
+
+
+def test_lines_of_the_map_are_taken_once(panel, monkeypatch):
+    profiles = panel.state.profiles
+    monkeypatch.setattr("fieldmap.show.panels.state.map_lines", lambda _: 1 / 0)
+    panel.limits.integrate.low.value = -300.0
+    assert panel.state.error == ""
+    assert panel.state.profiles is profiles
+    by_calls = fieldmap.evaluate(panel.state.fmap, panel.state.campaign, axis=panel.state.axis)
+    shown = panel.state.results["peak_field"]
+    assert (shown.value, shown.u) == (by_calls["peak_field"].value, by_calls["peak_field"].u)
+
+
+def test_hundreds_of_updates_leave_no_figures_and_little_memory(panel):
+    """Widgets, figures and artists are used again: 200 moves may leave 5 MB at most."""
+    kinds = ("profile", "residuals")
+
+    def update(i):
+        panel.limits.integrate.low.value = -390.0 + 0.1 * i
+        panel.figure.kind.value = kinds[i % 2]
+
+    for i in range(20):
+        update(i)
+    widgets, figures, before = len(_instances()), _figures(), _traced()
+    for i in range(20, 220):
+        update(i)
+    grown = _traced() - before
+    assert panel.state.error == ""
+    assert plt.get_fignums() == []
+    assert len(_instances()) == widgets
+    assert _figures() == figures
+    print(f"\n200 updates: {grown / 1e6:+.2f} MB")
+    assert grown < 5e6
+
+
+@pytest.fixture(autouse=True)
+def _tracing(request):
+    if "memory" not in request.node.name:
+        yield
+        return
+    tracemalloc.start()
+    yield
+    tracemalloc.stop()
+
+
+def _traced():
+    gc.collect()
+    return tracemalloc.get_traced_memory()[0]
+
+
+def _instances():
+    from ipywidgets.widgets.widget import _instances as known
+
+    return known
+
+
+def _figures():
+    gc.collect()
+    return sum(isinstance(one, Figure) for one in gc.get_objects())

@@ -17,6 +17,7 @@ from fieldmap.estimate.provenance import (
     map_references,
     map_stage,
     map_unknowns,
+    reference_fits,
 )
 from fieldmap.readings import FlipReference, PointReference, ZeroReference
 from tests.shop import MAIN, RECT, ROUND, STAGE, WIRE, measured, planned
@@ -89,3 +90,18 @@ def test_lines_keep_their_evidence_apart():
 def test_a_map_without_evidence_is_one_sentence(fmap):
     with pytest.raises(fieldmap.InputError, match="reduce the campaign again"):
         map_evidence(fmap.drop_vars("design"))
+
+
+def test_fits_of_references_on_their_lines(fmap):
+    """A point: the field there. A stretch of no field: its mean there; both by the profile."""
+    flip, zero, point = reference_fits(fmap)
+    assert [fit.number for fit in (flip, zero, point)] == [1, 2, 3]
+    (line,) = fieldmap.estimate.map_lines(fmap)
+    mean = line.integral(0.38, 0.4)[0] / 0.02
+    assert zero.difference == pytest.approx(mean / 5e-6, abs=0.05)
+    at_point = (line.field(np.array([0.0]))[0] - 0.5) / 1e-5
+    assert point.difference == pytest.approx(at_point, abs=0.05)
+    # the flipped coil was used nowhere else, so its area takes up what would be left
+    assert abs(flip.difference) < 0.01
+    assert flip.told < 0.02
+    assert all(0 <= fit.told <= 1 + 1e-9 for fit in (flip, zero, point))

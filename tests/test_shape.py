@@ -7,7 +7,7 @@ import pytest
 
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.spline import UniformSpline
-from fieldmap.magnet.shape import shape_results
+from fieldmap.magnet.shape import _summits, shape_results
 from fieldmap.readings import Axis
 
 SPLINE = UniformSpline.covering(-0.3, 0.3, 0.01)
@@ -90,3 +90,38 @@ def test_a_covariance_of_low_rank_is_no_trouble():
     found = shape_results(line_of(parabola, common), AXIS)
     assert found["peak_field"].u == pytest.approx(1e-3, rel=0.15)
     assert found["peak_position"].u < 1e-6
+
+
+def by_hand(s, b):
+    """Place and height of one summit, point by point."""
+    i = int(np.argmax(np.abs(b)))
+    if not 0 < i < len(s) - 1 or not np.isclose(s[i + 1] - s[i], s[i] - s[i - 1]):
+        return s[i], b[i]
+    bend = b[i - 1] - 2 * b[i] + b[i + 1]
+    if bend == 0:
+        return s[i], b[i]
+    shift = np.clip(0.5 * (b[i - 1] - b[i + 1]) / bend, -0.5, 0.5)
+    return s[i] + shift * (s[i + 1] - s[i]), b[i] - 0.25 * (b[i - 1] - b[i + 1]) * shift
+
+
+@pytest.mark.parametrize("count", [1, 2, 3, 9])
+def test_summits_of_many_profiles_are_those_of_each(count):
+    rng = np.random.default_rng(5)
+    s = np.linspace(0.0, 1.0, count)
+    if count > 5:
+        s = np.delete(s, 3)  # an uneven step
+    profiles = np.vstack([rng.normal(size=(60, len(s))), np.ones((1, len(s)))])
+    places, heights = _summits(s, profiles)
+    expected = np.array([by_hand(s, one) for one in profiles])
+    np.testing.assert_allclose(places, expected[:, 0], rtol=1e-12)
+    np.testing.assert_allclose(heights, expected[:, 1], rtol=1e-12)
+
+
+def test_a_moved_limit_changes_no_uncertainty_that_it_does_not_bear_on():
+    covariance = (1e-4) ** 2 * np.exp(-np.abs(np.subtract.outer(MIDDLES, MIDDLES)) / 0.05)
+    line = line_of(parabola, covariance)
+    u = [
+        shape_results(line, AXIS.moved(integrate=(low, 0.25)))["peak_field"].u
+        for low in (-0.25, -0.245, -0.24)
+    ]
+    np.testing.assert_allclose(u, u[0], rtol=1e-3)

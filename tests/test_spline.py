@@ -139,3 +139,12 @@ def test_roughness_is_the_third_derivative_of_b():
 def test_roughness_lets_parabolas_pass():
     places = np.arange(SPLINE.size, dtype=float)
     assert not (SPLINE.roughness() @ (2 - places + 3 * places**2)).any()
+
+
+@pytest.mark.parametrize("derivative", [0, 1, 2])
+def test_parts_of_rows_are_all_of_them_that_is_not_zero(derivative):
+    columns, values = SPLINE.field_parts(INSIDE, derivative)
+    rows = SPLINE.field_rows(INSIDE, derivative)
+    assert columns.shape == values.shape == (len(INSIDE), DEGREE + 1)
+    np.testing.assert_array_equal(np.take_along_axis(rows, columns, axis=1), values)
+    np.testing.assert_allclose(rows.sum(axis=1), values.sum(axis=1), atol=1e-9)

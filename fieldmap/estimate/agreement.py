@@ -11,7 +11,7 @@ agree, δ is zero within its covariance.
 * The *test* is χ² = δᵀ cov(δ)⁻¹ δ with everything free at once, so that a drift, a gain or a lag
   within its prior is no disagreement.
 * The *curve* is δ with those nuisances set to what explains both passes best with δ = 0, but not
-  more than two prior uncertainties off: what the best offset and drift leave over, with the band
+  more than four prior uncertainties off: what the best offset and drift leave over, with the band
   of the noise.
 * Where one of the two is a coil the level of δ is told by no reading; it is then taken such that
   the mean of δ is zero, and the curve shows its shape.
@@ -52,7 +52,7 @@ FEWEST_PIECES: Final = 4
 KNOTS: Final = 4.0  # δ is no finer than this many knots of the map
 WINDOWS: Final = 2.0  # … or this many windows of the longer probe
 POINTS: Final = 401
-FARTHEST: Final = 2.0  # prior uncertainties that a nuisance may explain a difference by
+FARTHEST: Final = 4.0  # prior uncertainties that a nuisance may explain a difference by
 SAFE: Final = 0.01  # probability below which chance is no explanation
 
 

@@ -103,7 +103,8 @@ def test_explore_passes(lab, page, shoot, campaign, fmap):
     assert amount(page, VERMILION, PICTURE) > 200
     choose(page, "fm-dwell")
     count = len(hear(campaign.passes[0], 2).dwell.time)
-    eventually(page, lambda: f"dwell 2 at -60 mm: {count} readings" in table.inner_text(), expected=True)
+    told = f"dwell 2 at -60 mm: {count} readings"
+    eventually(page, lambda: told in table.inner_text(), expected=True)
     shoot("explore-allan")
 
     view(page, "Corrections")
@@ -151,7 +152,8 @@ def test_foreign_tables(lab, page, shoot, tmp_path):
     page.locator(f"{TABLES} .fm-write").focus()
     page.keyboard.press("Enter")
     told = page.locator(f"{TABLES} .fm-written")
-    eventually(page, lambda: "The campaign reads now: 3 passes." in told.inner_text(), expected=True)
+    outcome = "The campaign reads now: 3 passes."
+    eventually(page, lambda: outcome in told.inner_text(), expected=True)
     new = file.read_text(encoding="utf-8")
     assert tomllib.loads(new)["table"]["skip_lines"] == 3
     assert new.partition("[table]")[0] == old.partition("[table]")[0]

@@ -302,7 +302,7 @@ class FigurePanel:
         with self.state.lock:
             self.at.mode.layout.display = ""
             self.drawing.clear()  # drawn anew with marks of what can be dragged
-            self.state.attempt("drawing", self.draw)
+            self._guarded(self.draw)
 
     def _on_resize(self, _: Any) -> None:
         with self.view.lock:

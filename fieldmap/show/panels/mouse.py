@@ -271,6 +271,8 @@ class Mouse:
 
     def _position(self, event: Any) -> float:
         """Position along the line, m; beside the axes, too."""
+        if event.inaxes is not None:  # all axes share their positions; not cut to whole pixels
+            return float(event.xdata) / MM
         return float(self._ax.transData.inverted().transform((event.x, event.y))[0]) / MM
 
     def _length(self, ax: Axes) -> float:
