@@ -12,11 +12,11 @@ from fieldmap.readings.layout import TableLayout
 from fieldmap.readings.passes import FlipReference, PointReference, ZeroReference
 from fieldmap.readings.probe import Integrator, Probe, Wire
 from fieldmap.readings.sections import FORMAT, RESULT_UNITS
+from fieldmap.readings.table_section import section_text
 
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
-    from fieldmap.readings.layout import ColumnSpec
     from fieldmap.readings.passes import Campaign, Limit, Pass, PlannedPass, Reference
 
 __all__ = ["campaign_text"]
@@ -271,23 +271,18 @@ def _stage(campaign: Campaign) -> list[str]:
 
 def _table(layout: TableLayout) -> list[str]:
     default = TableLayout()
-    lines = []
-    for key in ("delimiter", "decimal", "skip_lines", "header"):
-        value = getattr(layout, key)
-        if value != getattr(default, key):
-            lines.append(f"{key} = {json.dumps(value)}")
-    if layout.rate is not None:
-        lines.append(f"rate = {_quantity(layout.rate, _HZ)}")
-    if layout.per_count is not None:
-        lines.append(f"per_count = {_quantity(layout.per_count, _UM)}")
-    lines += [f"{name} = {_column(spec)}" for name, spec in layout.columns.items()]
-    return ["", "[table]", *lines] if lines else []
-
-
-def _column(spec: ColumnSpec) -> str:
-    column = spec.column if isinstance(spec.column, int) else _string(spec.column)
-    unit = "" if spec.unit is None else f", unit = {_string(spec.unit)}"
-    return f"{{column = {column}{unit}}}"
+    raw: dict[str, object] = {
+        key: getattr(layout, key)
+        for key in ("delimiter", "decimal", "skip_lines", "header")
+        if getattr(layout, key) != getattr(default, key)
+    }
+    for key, value, unit in (("rate", layout.rate, _HZ), ("per_count", layout.per_count, _UM)):
+        if value is not None:
+            raw[key] = quantity_text(value, unit.text, unit.places, unit.coherent)
+    for name, spec in layout.columns.items():
+        unit_of = {} if spec.unit is None else {"unit": spec.unit}
+        raw[name] = {"column": spec.column, **unit_of}
+    return ["", *section_text(raw).splitlines()] if raw else []
 
 
 def _pass(one: Pass | PlannedPass, several: bool) -> list[str]:  # noqa: FBT001 - of integrators

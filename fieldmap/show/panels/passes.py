@@ -156,7 +156,7 @@ def _provenance(one: Pass) -> str:
 def _probe_words(one: Pass) -> str:
     probe = one.probe
     if isinstance(probe, Wire):
-        about = f"{probe.turns} turns, {_mm(probe.active_length)} mm long"
+        about = f"{plain(probe.turns)} turns, {_mm(probe.active_length)} mm long"
         return f"wire '{probe.name}', {about}"
     about = f"{plain(probe.effective_area, 6)} m², window {_mm(probe.window)} mm"
     return f"{probe.shape} coil '{probe.name}', {about}"
