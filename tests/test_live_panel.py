@@ -221,6 +221,18 @@ def test_a_table_that_nobody_names_is_taken_in_with_a_chosen_probe(one, bench, b
     assert later.names()[-1] == "again.csv"
 
 
+def test_following_is_kept_though_the_campaign_was_refused_at_first(one, bench):
+    following(one, bench)
+    assert json.loads((bench / "campaign.panel.json").read_text())["live"] is True
+    later = Bench()
+    later.state.open(bench)
+    assert "found no such file" in later.state.error
+    assert later.live.on.value
+    later.look(0.0)
+    later.look()
+    assert later.names() == ["pass_01.csv"]
+
+
 def test_switching_off_ends_it(one, bench, bring):
     following(one, bench)
     one.live.on.value = False
@@ -231,7 +243,7 @@ def test_switching_off_ends_it(one, bench, bring):
     assert one.names() == ["pass_01.csv"]
 
 
-def test_another_campaign_is_followed_in_its_own_folder(one, bench, bring, tmp_path):
+def test_another_campaign_is_followed_in_its_own_folder(one, bench, tmp_path):
     following(one, bench)
     other = tmp_path / "other"
     other.mkdir()
@@ -294,7 +306,7 @@ def test_hostile_names_stay_text(one, bench, written):
     assert "&lt;i&gt;" in one.live.told.value
 
 
-def test_the_target_is_judged_in_words(one, bench, bring):
+def test_the_target_is_judged_in_words(one, bench):
     target = one.live.target
     assert target.told.value == ""
     following(one, bench)
@@ -311,7 +323,6 @@ def test_the_target_is_judged_in_words(one, bench, bring):
     assert target.unit.value == ""
     target.wanted.value = 0.0
     assert target.told.value == ""
-    bring("pass_02.csv")
 
 
 def test_the_target_is_judged_anew_when_a_pass_comes(one, bench, bring):

@@ -1,9 +1,13 @@
 """The mouse on a live figure: limits dragged, cursor set, parts shown; with a page that answers."""
 
+import gc
+import tracemalloc
+
 import ipywidgets
 import numpy as np
 import pytest
 from matplotlib import pyplot as plt
+from matplotlib.figure import Figure
 
 import fieldmap
 from fieldmap.bench.sources import TanhMagnet
@@ -240,6 +244,7 @@ def test_zooming_shows_the_stretch_in_every_view(panel):
     panel.at.mode.value = "zoom"
     panel.page.drag(100.0, 150.0, 200.0)
     low, high = panel.span
+    assert low * MM * 20 == pytest.approx(round(low * MM * 20))  # a plain number
     assert (low, high) == pytest.approx((0.1, 0.2), abs=2e-3)
     assert (panel.at.low.value, panel.at.high.value) == pytest.approx((100, 200), abs=2)
     assert panel.at.parts.value is None
@@ -307,9 +312,9 @@ def test_a_budget_has_no_positions(panel, moves):
     panel.page.mouse("motion_notify", x - 30, y, down=True)
     panel.page.mouse("button_release", x - 30, y)
     assert moves == []
-    assert panel.at.upper.layout.visibility == "hidden"
+    assert panel.at.upper.layout.display == "none"
     panel.kind.value = "profile"
-    assert panel.at.upper.layout.visibility == "visible"
+    assert panel.at.upper.layout.display == ""
 
 
 def test_a_failure_of_a_handler_is_said(panel, monkeypatch):
@@ -326,3 +331,50 @@ def test_a_figure_made_larger_keeps_its_margins(panel):
     assert now == pytest.approx(left)
     panel.page.drag(360.0, 200.0)
     assert panel.state.axis.integrate[1] == pytest.approx(0.2, abs=PIXEL / MM)
+
+
+def test_two_hundred_changes_leave_no_figure_behind(panel):
+    def change(i):
+        if i % 4 == 0:
+            panel.state.move(integrate=(-0.36 + 1e-3 * (i % 40), 0.36))
+        elif i % 40 == 1:
+            panel.kind.value = ("profile", "uncertainty", "overlaps", "residuals")[i // 40 % 4]
+        else:
+            panel.set_cursor(1e-3 * i)
+        panel.page.settle()
+        panel.page.images.clear()
+
+    for i in range(160):  # every view once
+        change(i)
+    gc.collect()
+    figures = sum(isinstance(one, Figure) for one in gc.get_objects())
+    tracemalloc.start()
+    for i in range(200):
+        change(i)
+    gc.collect()
+    grown = tracemalloc.get_traced_memory()[0]
+    tracemalloc.stop()
+    assert sum(isinstance(one, Figure) for one in gc.get_objects()) == figures
+    assert plt.get_fignums() == []
+    assert grown < 3_000_000  # what is kept of the last views; a figure a change would be 200 MB
+    assert panel.state.error == ""
+
+
+def test_part_and_cursor_are_kept_and_taken_up(panel, campaign):
+    assert not {"part", "cursor"} & set(panel.state.settings.changed())  # nothing set by hand yet
+    panel.set_span((0.1, 0.2))
+    panel.set_cursor(0.15)
+    kept = panel.state.settings.changed()
+    assert kept["part"] == pytest.approx([0.1, 0.2])
+    assert kept["cursor"] == 0.15
+    state = Reduction()
+    other = FigurePanel(state, static=True)
+    assert state.settings.restore(kept) == []
+    state.open(campaign)
+    assert other.span == pytest.approx((0.1, 0.2))
+    assert other.cursor == 0.15
+    state.open(campaign)  # another one, of which nothing is kept
+    assert other.span is None
+    assert other.cursor == 0.0
+    (told,) = state.settings.restore({"part": [0.3, 0.1]})
+    assert "expected rising ones" in told

@@ -290,3 +290,14 @@ def test_other_parts_name_what_they_keep():
     assert settings.changed() == {"cursor": 0.2}
     assert settings.restore(settings.usual()) == []
     assert box == {"cursor": 0.1}
+
+
+def test_a_part_that_cannot_tell_its_setting_stops_nothing(bench, caplog):
+    panel = opened(bench)
+    panel.state.remember("odd", lambda: None, lambda _: None)
+    panel.state.settings._entries["odd"] = panel.state.settings._entries["odd"]._replace(
+        get=lambda: 1 / 0
+    )
+    panel.passes.boxes[0].value = False
+    assert "2 of 3 passes in use. Settings are not kept: a failure" in panel.status.widget.value
+    assert "ZeroDivisionError" in caplog.text

@@ -367,6 +367,15 @@ def test_opening_another_campaign_ends_the_solve_of_the_first(panel, gate, tmp_p
     assert panel.passes.boxes == ()
 
 
+def test_a_solve_that_begins_when_its_campaign_is_gone_leaves_no_trace(panel, tmp_path):
+    with panel.state.lock:  # the job waits for the lock while another campaign is opened
+        panel.passes.boxes[1].value = False
+        time.sleep(0.05)
+        panel.open(tmp_path / "missing.toml")
+    assert panel.wait(SOON)
+    assert panel.state.error.startswith("missing.toml: found no such file")
+
+
 def test_many_threads_do_not_deadlock(panel, gate):
     rounds = 6
 

@@ -139,9 +139,7 @@ def test_references_of_two_lines_are_told_by_their_numbers():
     ]
     point = PointReference(0.0, TRUE, 1e-5, x=0.01, y=0.0)
     panel = MagneticLengthPanel()
-    panel.open(
-        shop(point, replace(point, x=0.0), replace(point, x=0.01, at=0.02), travels=travels)
-    )
+    panel.open(shop(point, replace(point, x=0.0), replace(point, x=0.01, at=0.02), travels=travels))
     assert panel.state.error == ""
     numbers = [(fit.line, fit.number) for fit in reference_fits(panel.state.fmap)]
     assert numbers == [(0, 2), (1, 1), (1, 3)]

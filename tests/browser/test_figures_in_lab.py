@@ -18,6 +18,7 @@ from fieldmap.show.profile import field_at
 from fieldmap.show.rows import result_rows
 
 from .notebook_page import (
+    DONE,
     SIDEWAYS,
     amount,
     eventually,
@@ -41,6 +42,13 @@ PIXELS = """() => {
   return sum;
 }"""
 STEPS = 12
+
+
+@pytest.fixture(autouse=True)
+def _nothing_kept(lab):
+    """Panels take up what was set the last time: begin with nothing set."""
+    for kept in lab[1].rglob("*.panel.json"):
+        kept.unlink()
 
 
 @pytest.fixture(scope="module")
@@ -114,12 +122,10 @@ class Figure:
 
 
 def opened(lab, page, name, fmap):
-    _, root, base, token = lab
-    for kept in root.rglob("*.panel.json"):
-        kept.unlink()  # what an earlier test has set
+    _, _, base, token = lab
     open_and_run(page, base, token, name)
     scroll_to(page, ".fm-panel")
-    assert status(page) == "Solved: 6 of 6 passes in use."
+    assert status(page).startswith("Solved: 6 of 6 passes in use.")
     return Figure(page, ends(fmap))
 
 
@@ -199,13 +205,24 @@ def test_zoom_and_cursor_hold_in_every_view(lab, page, shoot, fmap):
     reading = page.locator(".fm-reading b")
     eventually(page, reading.inner_text, field_words(*field_at(fmap, cursor)))
     stands = share(cursor, shown)
-    for name in ("Profile", "Raw passes", "Residuals", "Overlaps", "Uncertainty"):
+    begins = {
+        "Profile": "By along z from",
+        "Raw passes": "Flux as recorded",
+        "Residuals": "Normalised residuals",
+        "Overlaps": "Recorded less predicted flux",
+        "Uncertainty": "2u of By from",
+    }
+    seen = -1
+    for name, begin in begins.items():
         page.locator(".fm-kind button", has_text=name).click()
+        eventually(page, lambda begin=begin: words(page).startswith(begin), expected=True)
+        eventually(page, lambda seen=seen: page.evaluate(PIXELS) != seen, expected=True)
         eventually(
             page,
             lambda: any(abs(line - stands) < 4e-3 for line in zoomed.lines(INK)),
             expected=True,
         )
+        seen = page.evaluate(PIXELS)
         shoot(f"figure-zoomed-{name.lower().replace(' ', '-')}")
         assert [float(field.input_value()) / 1e3 for field in fields] == pytest.approx(shown)
     assert page.evaluate(SIDEWAYS) == []
@@ -224,6 +241,7 @@ def test_zoom_and_cursor_hold_in_every_view(lab, page, shoot, fmap):
     eventually(
         page, lambda: f"By at {float(at.input_value()):.5g} mm" in words(page), expected=True
     )
+    page.wait_for_function(DONE)  # all is kept that was moved
 
 
 def test_the_keyboard_passes_a_figure_by(lab, page, fmap):

@@ -22,6 +22,7 @@ from fieldmap.show.report.page import report_html
 from fieldmap.show.rows import result_rows
 
 from .notebook_page import (
+    PICTURE,
     SIDEWAYS,
     amount,
     eventually,
@@ -39,6 +40,20 @@ IN_SIGHT = """e => {
   const box = e.getBoundingClientRect();
   return document.elementFromPoint(box.x + box.width / 2, box.y + box.height / 2) === e;
 }"""
+
+
+@pytest.fixture(autouse=True)
+def _forgotten(lab):
+    """Each test begins without what an earlier one has set by hand."""
+    for kept in lab[1].rglob("*.panel.json"):
+        kept.unlink()
+
+
+@pytest.fixture(autouse=True)
+def _nothing_kept(lab):
+    """Panels take up what was set the last time: begin with nothing set."""
+    for kept in lab[1].rglob("*.panel.json"):
+        kept.unlink()
 
 
 @pytest.fixture(scope="module")
@@ -206,11 +221,15 @@ def test_fringe_map(lab, page, shoot, fmap):
     eventually(page, reading.inner_text, field_words(*field_at(fmap, 0.23 + step / 1e3)))
     eventually(page, lambda: float(at.input_value()), round(230 + step, 6))
 
-    # residuals: every pass in its colour
+    # residuals: those of the exit fringe alone, then every pass in its colour
     page.locator(".fm-kind button", has_text="Residuals").click()
     eventually(page, lambda: "residuals" in words(page), expected=True)
+    eventually(page, lambda: amount(page, pass_style(3).colour) > 100, expected=True)
+    assert amount(page, pass_style(5).colour) < 100  # it was nowhere near, but for its legend
+    page.locator(".fm-part button", has_text="Whole line").click()
     for index in range(6):
-        assert amount(page, pass_style(index).colour) > 100
+        colour = pass_style(index).colour
+        eventually(page, lambda colour=colour: amount(page, colour) > 100, expected=True)
     shoot("map_fringe_field-residuals")
     assert page.evaluate(SIDEWAYS) == []
 
@@ -220,7 +239,9 @@ def test_pictures_suit_the_theme(lab, page, name):
     """Dark pages turn the lightness of pictures; text stands out from its ground."""
     theme, _, base, token = lab
     open_and_run(page, base, token, name)
-    style = page.locator(".fm-picture-box img").evaluate("e => getComputedStyle(e).filter")
+    picture = page.locator(PICTURE).first
+    picture.wait_for()
+    style = picture.evaluate("e => getComputedStyle(e).filter")
     assert ("invert" in style) == (theme == "Dark")
     colours = page.locator(".fm-panel .fm-table td").first.evaluate(
         "e => [getComputedStyle(e).color, getComputedStyle(document.querySelector('.jp-Notebook'))"

@@ -7,6 +7,7 @@ a new frame takes a few milliseconds, so that limits and cursor follow the mouse
 
 from __future__ import annotations
 
+import contextlib
 import functools
 import importlib
 import io
@@ -84,6 +85,7 @@ class FigureView:
         self.canvas.mpl_connect("resize_event", self._on_resize)
         if hasattr(self.canvas, "on_msg"):
             self.canvas.on_msg(self._on_message)
+            self.point("")
 
     def refresh(self, words: str) -> None:
         """Show what was drawn on the figure.
@@ -178,7 +180,7 @@ class FigureView:
             artist.draw(renderer)
 
     def _top(self) -> Iterator[Artist]:
-        """Curves, areas, marks and texts, and the frame that lies over them; from below to above."""
+        """Curves, areas, marks, texts, and the frame that lies over them; from below to above."""
         for ax in self.figure.axes:
             there = (*ax.collections, *ax.patches, *ax.lines, *ax.texts, *ax.spines.values())
             yield from sorted(there, key=lambda artist: artist.get_zorder())
@@ -303,3 +305,5 @@ def _disarm(canvas: Any, manager: Any) -> None:
         number = getattr(owner, name, None)
         if number is not None:
             canvas.mpl_disconnect(number)
+    # no hourglass while drawing: it would take the pointer's shape away
+    toolbar._wait_cursor_for_draw_cm = contextlib.nullcontext  # noqa: SLF001 no public switch

@@ -263,7 +263,7 @@ class FigurePanel:
         """Let the fields beside the figure show what it shows."""
         mapped = self.mapped
         for part in (self.at.upper, self.at.lower):
-            part.layout.visibility = "hidden" if mapped is None else "visible"
+            part.layout.display = "none" if mapped is None else ""
         if mapped is not None:
             self.at.show(self.part, self.shown, self.cursor, mapped[1] - mapped[0])
 

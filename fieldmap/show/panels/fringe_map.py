@@ -26,6 +26,7 @@ class FringeMapPanel(Panel):
     Examples
     --------
     >>> panel = FringeMapPanel()
+    >>> panel.state.keeps = False  # an example leaves no settings behind
     >>> panel.open()
     >>> panel.part.value = "out"
     >>> low, high = panel.figure.span

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any, Final, Literal, Protocol
 from fieldmap.show.look import INK, MM, PAPER, SKY
 from fieldmap.show.numbers import plain
 from fieldmap.show.panels.grips import Grip, dragged, grip_near
+from fieldmap.show.panels.limits import plain_step
 
 if TYPE_CHECKING:
     from collections.abc import Callable
@@ -159,7 +160,9 @@ class Mouse:
             self.target.set_cursor(self._inside(at))
         elif drag == "zoom":
             if abs(at - self._from) > LEAST * self._length(self._ax):
-                self.target.set_span((min(self._from, at), max(self._from, at)))
+                length = abs(at - self._from)
+                ends = sorted(_rounded(end, length) for end in (self._from, at))
+                self.target.set_span((ends[0], ends[1]))
             else:
                 self.view.sketch()
         elif drag == "pan":
@@ -214,7 +217,7 @@ class Mouse:
     def _pan(self, event: Any) -> None:
         """Shift what is shown as far as the mouse has moved; positions move along with it."""
         begun, length = self._origin
-        shift = (begun - event.x) * length
+        shift = _rounded((begun - event.x) * length, self._span[1] - self._span[0])
         self.target.set_span((self._span[0] + shift, self._span[1] + shift))
 
     def _moved(self, grip: Grip, at: float) -> Axis | None:
@@ -267,7 +270,8 @@ class Mouse:
 
     def _inside(self, at: float) -> float:
         low, high = self.target.mapped or (at, at)
-        return round(min(max(at, low), high), 9)
+        shown = self.target.shown
+        return min(max(_rounded(at, shown[1] - shown[0]), low), high)
 
     def _position(self, event: Any) -> float:
         """Position along the line, m; beside the axes, too."""
@@ -280,6 +284,12 @@ class Mouse:
         low, high = ax.get_xlim()
         across = float(ax.bbox.width) / float(getattr(self.view.canvas, "device_pixel_ratio", 1))
         return (high - low) / MM / across
+
+
+def _rounded(at: float, length: float) -> float:
+    """A plain position, as fine as a figure of such a length can show (m)."""
+    step = plain_step(length * MM)
+    return round(round(at * MM / step) * step, 6) / MM
 
 
 def _guarded(

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import json
+import logging
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 from fieldmap.atomic import output_folder, replacing
@@ -18,6 +19,7 @@ if TYPE_CHECKING:
 __all__ = ["FORMAT", "Settings"]
 
 FORMAT: Final = "fieldmap-panel/1"
+LOG: Final = logging.getLogger("fieldmap")
 LARGEST: Final = 1_000_000  # bytes
 OWN: Final = frozenset({"format", "campaign"})
 
@@ -106,9 +108,12 @@ class Settings:
             The values, and a sentence where there are any or where the file is of no use.
         """
         self._kept = None
-        file = settings_file(campaign_file)
-        if not file.exists():
-            return {}, ""
+        try:
+            file = settings_file(campaign_file)
+            if not file.exists():
+                return {}, ""
+        except OSError as error:
+            return {}, f"Settings are not looked for: {error.strerror or error}."
         try:
             found = json.loads(read_bytes(file, file.name, LARGEST))
         except (FieldmapError, ValueError, RecursionError) as error:
@@ -121,6 +126,14 @@ class Settings:
         values = {name: value for name, value in found.items() if name not in OWN}
         self._kept = values
         return values, f"Settings taken up from {file.name}." if values else ""
+
+    def keep(self, campaign_file: Path) -> str:
+        """Write what is not usual; a sentence if it cannot be done, whatever the reason."""
+        try:
+            return self.write(campaign_file, self.changed())
+        except Exception as error:
+            LOG.exception("keeping settings failed")
+            return f"Settings are not kept: a failure of the kit's own ({type(error).__name__})."
 
     def write(self, campaign_file: Path, values: Mapping[str, Any]) -> str:
         """Keep values; nothing is written where nothing has changed.
@@ -142,13 +155,13 @@ class Settings:
         kept = others | _plain(dict(values))
         if kept == self._kept or (not kept and self._kept is None):
             return ""
-        file = settings_file(campaign_file)
-        whole = {"format": FORMAT, "campaign": str(campaign_file.resolve()), **kept}
         try:
+            file = settings_file(campaign_file)
+            whole = {"format": FORMAT, "campaign": str(campaign_file.resolve()), **kept}
             output_folder(file.parent)
             with replacing(file) as aside:
                 aside.write_text(json.dumps(whole, indent=1) + "\n", encoding="utf-8")
-        except FieldmapError as error:
+        except (FieldmapError, OSError) as error:
             return f"Settings are not kept: {error}"
         self._kept = kept
         return ""

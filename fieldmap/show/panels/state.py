@@ -65,8 +65,6 @@ class Reduction(Desk):
         The lines of that map.
     results : Results or None
         Its evaluation with the limits in use; None while there is an error in it.
-    busy : str
-        What is being done; empty if nothing is.
     notice : str
         What else there is to say of what was opened.
     source : Path or None
@@ -153,7 +151,7 @@ class Reduction(Desk):
             path = self.campaign.path if self.campaign else None
             if not self.keeps or path is None or self._restoring:
                 return
-            told = self.settings.write(path, self.settings.changed())
+            told = self.settings.keep(path)
             if told and told != self.notice:
                 self.notice = told
                 self._tell("busy")
@@ -240,6 +238,7 @@ class Reduction(Desk):
             self.added = added
             self._errors.clear()
             self.solve()
+            self.keep()
 
     def reset(self) -> None:
         """Everything as in the file, and nothing kept."""
@@ -350,6 +349,7 @@ class Reduction(Desk):
 
     def _solve(self, tell: Tell) -> None:
         with self.lock:
+            self._go_on()  # the campaign may be gone
             wanted = self._choice
             self._errors.clear()
             if not self.background:
