@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Literal
 
@@ -202,7 +203,10 @@ class Axis:
         where its limit moves.
         """
         start, stop = integrate or self.integrate
-        stays = (start == self.integrate[0], stop == self.integrate[1])
+        stays = [
+            math.isclose(new, old, rel_tol=0, abs_tol=1e-9)
+            for new, old in zip((start, stop), self.integrate, strict=True)
+        ]
         return Axis(
             self.travel,
             (start, stop),

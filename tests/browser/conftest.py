@@ -21,6 +21,29 @@ SIZE = {"width": 1366, "height": 768}
 INSIDE = ("http://127.0.0.1:", "ws://127.0.0.1:", "data:", "blob:")
 
 
+def pytest_collection_modifyitems(config, items):
+    """Leave the dark theme to the tests that are about it, unless FIELDMAP_THEMES says "both"."""
+    if os.environ.get("FIELDMAP_THEMES") == "both":
+        return
+    dark = [
+        one
+        for one in items
+        if getattr(one, "callspec", None) is not None
+        and one.callspec.params.get("lab") == "Dark"
+        and one.get_closest_marker("themed") is None
+    ]
+    config.hook.pytest_deselected(items=dark)
+    items[:] = [one for one in items if one not in dark]
+
+
+@pytest.fixture(autouse=True)
+def _nothing_kept(request):
+    """Panels take up what was set the last time: begin with nothing set."""
+    if "lab" in request.fixturenames:
+        for kept in request.getfixturevalue("lab")[1].rglob("*.panel.json"):
+            kept.unlink()
+
+
 @pytest.fixture(scope="module", params=["Light", "Dark"])
 def lab(request, tmp_path_factory):
     """Theme, folder of the notebooks, base address and token of a server."""

@@ -44,13 +44,6 @@ PIXELS = """() => {
 STEPS = 12
 
 
-@pytest.fixture(autouse=True)
-def _nothing_kept(lab):
-    """Panels take up what was set the last time: begin with nothing set."""
-    for kept in lab[1].rglob("*.panel.json"):
-        kept.unlink()
-
-
 @pytest.fixture(scope="module")
 def campaign():
     return fieldmap.load(demo_folder() / "gap_dipole" / "campaign.toml")
@@ -256,6 +249,7 @@ def test_the_keyboard_passes_a_figure_by(lab, page, fmap):
     assert any("widget-toggle-button" in name for name in seen)
 
 
+@pytest.mark.themed
 def test_dark_pages_turn_the_lightness_of_a_live_figure(lab, page, shoot, fmap):
     theme = lab[0]
     opened(lab, page, "map_fringe_field", fmap)

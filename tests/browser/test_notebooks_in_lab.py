@@ -42,20 +42,6 @@ IN_SIGHT = """e => {
 }"""
 
 
-@pytest.fixture(autouse=True)
-def _forgotten(lab):
-    """Each test begins without what an earlier one has set by hand."""
-    for kept in lab[1].rglob("*.panel.json"):
-        kept.unlink()
-
-
-@pytest.fixture(autouse=True)
-def _nothing_kept(lab):
-    """Panels take up what was set the last time: begin with nothing set."""
-    for kept in lab[1].rglob("*.panel.json"):
-        kept.unlink()
-
-
 @pytest.fixture(scope="module")
 def campaign():
     return fieldmap.load(demo_folder() / "gap_dipole" / "campaign.toml")
@@ -234,6 +220,7 @@ def test_fringe_map(lab, page, shoot, fmap):
     assert page.evaluate(SIDEWAYS) == []
 
 
+@pytest.mark.themed
 @pytest.mark.parametrize("name", ["check_magnetic_length", "map_fringe_field"])
 def test_pictures_suit_the_theme(lab, page, name):
     """Dark pages turn the lightness of pictures; text stands out from its ground."""

@@ -16,13 +16,6 @@ NAME = "check_magnetic_length"
 KEPT = " Settings taken up from campaign.panel.json."
 
 
-@pytest.fixture(autouse=True)
-def _forgotten(lab):
-    """Each test begins without what an earlier one has set by hand."""
-    for kept in lab[1].rglob("*.panel.json"):
-        kept.unlink()
-
-
 def test_what_was_set_comes_back(lab, page, shoot):
     _, _, base, token = lab
     open_and_run(page, base, token, NAME)

@@ -208,7 +208,10 @@ class Reduction(Desk):
         with self.lock:
             if self.axis is None:
                 return
-            moved = self.axis.moved(integrate, flat)
+            assert self.campaign is not None
+            # from the file's axis on: a tail that it states comes back with its limit
+            ends = integrate or self.axis.integrate, flat or self.axis.flat
+            moved = self.campaign.axis.moved(*ends)
             if moved == self.axis:
                 return
             self.axis = moved
