@@ -8,7 +8,7 @@ from fieldmap.show.panels.campaign import CampaignPanel, demo_campaigns
 from fieldmap.show.panels.figure import FigurePanel
 from fieldmap.show.panels.limits import LimitsPanel
 from fieldmap.show.panels.live import LivePanel
-from fieldmap.show.panels.parts import column, hooked, remembered, titled
+from fieldmap.show.panels.parts import column, hooked, put_on_page, remembered, titled
 from fieldmap.show.panels.passes import PassesPanel
 from fieldmap.show.panels.references import ReferencesPanel
 from fieldmap.show.panels.results import ResultsPanel
@@ -102,9 +102,7 @@ class Panel:
         source : path or Campaign, optional
             As for `open`. A campaign that is open already stays if none is given.
         """
-        from IPython.display import display
-
-        display(self.widget)  # type: ignore[no-untyped-call]
+        put_on_page(self.widget, self.title)
         self.state.background = True
         if source is not None or self.state.campaign is None:
             self.open(source)

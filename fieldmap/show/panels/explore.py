@@ -20,7 +20,7 @@ from fieldmap.show.explore_tables import agreement_shown, corrections_shown, dwe
 from fieldmap.show.look import MM, short
 from fieldmap.show.numbers import plain
 from fieldmap.show.panels.campaign import CampaignPanel, demo_campaigns
-from fieldmap.show.panels.parts import column, hooked, row
+from fieldmap.show.panels.parts import column, hooked, put_on_page, row
 from fieldmap.show.panels.state import Reduction
 from fieldmap.show.panels.status import StatusPanel, title_html
 from fieldmap.show.picture import blank_figure, paint
@@ -158,9 +158,7 @@ class ExplorePanel:
 
         It comes back once the campaign is solved; others are solved in the background.
         """
-        from IPython.display import display
-
-        display(self.widget)  # type: ignore[no-untyped-call]
+        put_on_page(self.widget, TITLE)
         self.state.background = True
         if source is not None or self.state.campaign is None:
             self.open(source)

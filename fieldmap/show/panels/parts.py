@@ -12,7 +12,16 @@ if TYPE_CHECKING:
 
     from fieldmap.show.panels.state import Reduction
 
-__all__ = ["button", "column", "hooked", "number_field", "remembered", "row", "titled"]
+__all__ = [
+    "button",
+    "column",
+    "hooked",
+    "number_field",
+    "put_on_page",
+    "remembered",
+    "row",
+    "titled",
+]
 
 LABEL_WIDTH: Final = "86px"
 
@@ -67,3 +76,21 @@ def remembered(state: Reduction, name: str, widget: Any) -> None:
     """Keep the value of a widget with the campaign."""
     state.remember(name, lambda: widget.value, lambda value: setattr(widget, "value", value))
     widget.observe(lambda _: state.keep(), names="value")
+
+
+def put_on_page(widget: Any, title: str) -> None:
+    """Show a widget, with words for viewers that only show what a notebook keeps.
+
+    Parameters
+    ----------
+    widget : ipywidgets.DOMWidget
+        To show.
+    title : str
+        What it is.
+    """
+    from IPython.display import display
+
+    words = f"{title}: a live panel. Open this notebook in JupyterLab and run it to use it."
+    bundle = {**widget._repr_mimebundle_(), "text/plain": words}
+    bundle["text/html"] = f'<p class="fm-remark">{escape(words)}</p>'
+    display(bundle, raw=True)  # type: ignore[no-untyped-call]

@@ -206,9 +206,8 @@ class Reduction(Desk):
             New limits; those in use stay if not given.
         """
         with self.lock:
-            if self.axis is None:
+            if self.axis is None or self.campaign is None:
                 return
-            assert self.campaign is not None
             # from the file's axis on: a tail that it states comes back with its limit
             ends = integrate or self.axis.integrate, flat or self.axis.flat
             moved = self.campaign.axis.moved(*ends)

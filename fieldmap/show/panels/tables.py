@@ -16,7 +16,7 @@ from fieldmap.readings.layout import QUANTITIES, read_layout
 from fieldmap.readings.preview import open_head, raw_lines
 from fieldmap.readings.records import SAMPLES
 from fieldmap.readings.table_section import section_text, write_table_section
-from fieldmap.show.panels.parts import button, column, hooked, row, titled
+from fieldmap.show.panels.parts import button, column, hooked, put_on_page, row, titled
 from fieldmap.show.panels.table_fields import LayoutFields
 from fieldmap.show.rows import one_line
 from fieldmap.show.stylesheet import stylesheet
@@ -121,9 +121,7 @@ class TablePanel:
         campaign: str | os.PathLike[str] | None = None,
     ) -> None:
         """Show the panel in a notebook; with a table, as `open` does."""
-        from IPython.display import display
-
-        display(self.widget)  # type: ignore[no-untyped-call]
+        put_on_page(self.widget, "Foreign tables")
         if path is not None:
             self.open(path, campaign)
 
