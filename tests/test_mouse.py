@@ -333,6 +333,7 @@ def test_a_figure_made_larger_keeps_its_margins(panel):
     assert panel.state.axis.integrate[1] == pytest.approx(0.2, abs=PIXEL / MM)
 
 
+@pytest.mark.slow
 def test_two_hundred_changes_leave_no_figure_behind(panel):
     def change(i):
         if i % 4 == 0:

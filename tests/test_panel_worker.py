@@ -403,7 +403,7 @@ def test_many_threads_do_not_deadlock(panel, gate):
 
 @pytest.mark.usefixtures("gate")
 def test_showing_comes_back_with_results(campaign, monkeypatch):
-    monkeypatch.setattr("IPython.display.display", lambda *_: None)
+    monkeypatch.setattr("IPython.display.display", lambda *_, **__: None)
     panel = MagneticLengthPanel()
     panel.show(campaign)
     assert panel.state.background

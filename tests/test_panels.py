@@ -597,6 +597,7 @@ def test_lines_of_the_map_are_taken_once(panel, monkeypatch):
     assert (shown.value, shown.u) == (by_calls["peak_field"].value, by_calls["peak_field"].u)
 
 
+@pytest.mark.slow
 def test_hundreds_of_updates_leave_no_figures_and_little_memory(panel):
     """Widgets, figures and artists are used again: 200 moves may leave 20 MB at most."""
 

@@ -133,6 +133,7 @@ class Ramps(Source):
         return np.sign(s) * self.B0 * (inside + GAP * (out - out**2 / 2))
 
 
+@pytest.mark.slow
 def test_linear_ramp_is_said_to_be_poorly_fitted():
     fmap = fieldmap.stitch(campaign(Ramps()))
     found, notes = line_fringes(fmap, AXIS, 0)
