@@ -12,8 +12,8 @@ import xarray as xr
 from fieldmap.bench.sources import Solenoid
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate import stitch
-from fieldmap.magnet.handover import export
 from fieldmap.magnet.comparison.design_profile import read_design
+from fieldmap.magnet.handover import export
 from fieldmap.magnet.handover.export import export_table
 from fieldmap.magnet.sampling import chosen_line
 from fieldmap.readings.layout import TableLayout
