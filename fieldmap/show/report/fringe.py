@@ -6,6 +6,8 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from fieldmap.errors import RefusedError
+from fieldmap.magnet.fringe import compare_ends
 from fieldmap.show.look import BLUE, INK, SOFT, dress, legend_above
 from fieldmap.show.numbers import plain, rounded
 from fieldmap.show.report.parts import Column, paragraph, table
@@ -63,7 +65,19 @@ def fringe_part(fringes: Mapping[str, Fringe], k: float) -> str:
         table("Coefficients of the fringe field", columns, rows, css="fringe")
         + table("Curves of the fringe field", facts, about, css="fringe-facts")
         + paragraph(note, "remark")
+        + _compared(fringes)
     )
+
+
+def _compared(fringes: Mapping[str, Fringe]) -> str:
+    """Whether entrance and exit are alike; nothing where one of them is missing."""
+    if set(ENDS) - set(fringes):
+        return ""
+    try:
+        text = compare_ends(fringes["fringe_in"], fringes["fringe_out"]).text
+    except RefusedError as refused:
+        text = refused.text
+    return paragraph(text[0].upper() + text[1:])
 
 
 def _coefficient(one: Fringe, i: int, k: float) -> tuple[str, str]:
