@@ -173,7 +173,8 @@ class ExplorePanel:
             raise
 
     def close(self) -> None:
-        """Take the panel off the page."""
+        """Take the panel off the page, and end what it does in the background."""
+        self.state.stop()
         self.widget.close()
 
     def draw(self) -> None:
