@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from dataclasses import asdict, dataclass
+from dataclasses import asdict
 from typing import TYPE_CHECKING, Any
 
 import numpy as np
@@ -14,6 +14,7 @@ from fieldmap.estimate.evidence_labels import labelled_evidence
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.map_attributes import FORMAT, describe
+from fieldmap.estimate.mapped_line import MappedLine
 from fieldmap.estimate.provenance import (
     map_evidence,
     map_integrators,
@@ -47,19 +48,6 @@ __all__ = [
 ]
 
 Floats = npt.NDArray[np.float64]
-
-
-@dataclass(frozen=True, eq=False)
-class MappedLine:
-    """One fitted line with its place (m), its remarks, and the numbers of its references."""
-
-    x: float
-    y: float
-    low: float
-    high: float
-    fit: LineFit
-    findings: tuple[Finding, ...]
-    references: tuple[int, ...] = ()
 
 
 def build_map(

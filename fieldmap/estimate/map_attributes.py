@@ -17,7 +17,7 @@ if TYPE_CHECKING:
 
     from fieldmap.estimate.findings import Finding
     from fieldmap.estimate.fit import PassFit
-    from fieldmap.estimate.map import MappedLine
+    from fieldmap.estimate.mapped_line import MappedLine
     from fieldmap.readings.passes import Campaign, Reference
     from fieldmap.readings.probe import Probe
 
