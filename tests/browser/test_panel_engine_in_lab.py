@@ -20,7 +20,7 @@ def test_what_was_set_comes_back(lab, page, shoot):
     _, _, base, token = lab
     open_and_run(page, base, token, NAME)
     scroll_to(page, ".fm-panel")
-    assert page.locator(".fm-stop").is_hidden()
+    eventually(page, page.locator(".fm-stop").is_hidden, expected=True)
     page.locator(".fm-pass input").nth(1).focus()
     page.keyboard.press("Space")
     eventually(page, lambda: status(page), "Solved: 5 of 6 passes in use.")
@@ -52,8 +52,8 @@ def test_quick_changes_end_with_the_newest(lab, page):
     eventually(page, lambda: status(page), "Solved: 4 of 6 passes in use.")
     marks = page.locator(".fm-pass-row").all_inner_texts()
     assert ["not used" in text for text in marks] == [False, True, False, True, False, False]
-    assert page.locator(".fm-stop").is_hidden()
-    assert page.locator(".fm-stale").count() == 0
+    eventually(page, page.locator(".fm-stop").is_hidden, expected=True)
+    eventually(page, page.locator(".fm-stale").count, expected=0)
 
 
 def test_provenance_and_references_by_keyboard(lab, page, shoot):
