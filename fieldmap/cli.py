@@ -146,13 +146,14 @@ def _reduce_campaign(
 ) -> None:
     """Reduce, write, and print what a person wants to read."""
     from fieldmap.show.cautions import caution_text
-    from fieldmap.show.confirmation import confirmation_text
     from fieldmap.show.tables import summary_text
 
     results, limits, confirmation, files = _with_progress(source, out, trials)
     known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
     print(summary_text(results, limits, truth=known))
     if confirmation is not None:
+        from fieldmap.show.confirmation import confirmation_text
+
         print(f"\n{confirmation_text(confirmation)}")
     print(f"\nWritten: {', '.join(str(file) for file in files)}\n")
     print(caution_text())
@@ -163,9 +164,6 @@ def _with_progress(
 ) -> tuple[Results, tuple[Limit, ...], Confirmation | None, tuple[Path, ...]]:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
-
-    from fieldmap.bench.trials import confirm
-    from fieldmap.show.report import confirmation_section
 
     with tqdm(delay=2, leave=False, disable=None, dynamic_ncols=True, bar_format=BAR) as bar:
 
@@ -179,8 +177,13 @@ def _with_progress(
         bar.reset(total=STEPS_OF_A_SOLVE * len({(one.x, one.y) for one in campaign.passes}))
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
-        confirmation = None if trials is None else confirm(campaign, fmap, trials=trials, tell=tell)
-        extra = [] if confirmation is None else [confirmation_section(confirmation)]
+        confirmation, extra = None, []
+        if trials is not None:
+            from fieldmap.bench.trials import confirm
+            from fieldmap.show.report import confirmation_section
+
+            confirmation = confirm(campaign, fmap, trials=trials, tell=tell)
+            extra = [confirmation_section(confirmation)]
         files = fieldmap.save_reduction(fmap, results, out, extra=extra)
     return results, campaign.limits, confirmation, files
 

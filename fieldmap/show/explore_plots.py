@@ -38,13 +38,12 @@ from fieldmap.show.look import (
     VERMILION,
     dress,
     legend_above,
-    pass_style,
     position_words,
     short,
 )
 from fieldmap.show.numbers import scale_for
 from fieldmap.show.picture import blank_figure, paint
-from fieldmap.show.plots import thinned
+from fieldmap.show.plots import draw_curves, thinned
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -137,24 +136,10 @@ def draw_readings(
     curves = [_readings(one, quantity, against) for one in passes]
     name, unit = _NAMES[quantity]
     scale = scale_for(unit, [float(np.abs(y).max(initial=0.0)) for _, y in curves])
-    drawn = []
-    for index, one, curve in zip(marks or range(len(passes)), passes, curves, strict=True):
-        style, (x, y) = pass_style(index), thinned(*curve)
-        (line,) = ax.plot(
-            x,
-            y * scale.factor,
-            color=style.colour,
-            linestyle=style.dash,
-            linewidth=1.4,
-            marker=style.marker,
-            markersize=4.5,
-            markevery=(len(y) // 20, max(len(y) // 10, 1)),
-            label=one.name,
-        )
-        drawn.append(line)
+    scaled = [(x, y * scale.factor) for x, y in (thinned(*curve) for curve in curves)]
+    drawn = draw_curves(ax, [one.name for one in passes], scaled, marks)
     x_label = "time since the first reading (s)" if against == "time" else position_words(travel)
     dress(ax, x_label, f"{name} ({scale.unit})")
-    legend_above(ax, drawn, [short(one.name) for one in passes])
     return drawn
 
 

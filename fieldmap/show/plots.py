@@ -26,7 +26,7 @@ if TYPE_CHECKING:
     from fieldmap.readings.passes import Pass
     from fieldmap.show.overlaps import Overlap
 
-__all__ = ["draw_overlaps", "draw_passes", "draw_residuals", "thinned"]
+__all__ = ["draw_curves", "draw_overlaps", "draw_passes", "draw_residuals", "thinned"]
 
 Floats = npt.NDArray[np.float64]
 
@@ -100,24 +100,56 @@ def draw_passes(
     [0.0, 100.0, 200.0]
     """
     scale = scale_for("V s", [float(np.abs(one.flux).max()) for one in passes])
+    curves = [thinned(one.position, one.flux) for one in passes]
+    scaled = [(position * MM, flux * scale.factor) for position, flux in curves]
+    drawn = draw_curves(ax, [one.name for one in passes], scaled, marks, width=1.5)
+    dress(ax, position_words(travel), f"flux as recorded ({scale.unit})")
+    return drawn
+
+
+def draw_curves(
+    ax: Axes,
+    names: Sequence[str],
+    curves: Sequence[tuple[Floats, Floats]],
+    marks: Sequence[int] | None = None,
+    width: float = 1.4,
+) -> list[Line2D]:
+    """One curve a pass, each in its own style, with a legend above.
+
+    Parameters
+    ----------
+    ax : matplotlib.axes.Axes
+        Where to draw.
+    names : sequence of str
+        Of the passes.
+    curves : sequence of (x, y)
+        As drawn.
+    marks : sequence of int, optional
+        Index of each pass in its campaign, which decides its style; counted from 0 if not given.
+    width : float
+        Of the curves, points.
+
+    Returns
+    -------
+    list of matplotlib.lines.Line2D
+        One a pass.
+    """
     drawn = []
-    for index, one in zip(marks or range(len(passes)), passes, strict=True):
+    for index, name, (x, y) in zip(marks or range(len(names)), names, curves, strict=True):
         style = pass_style(index)
-        position, flux = thinned(one.position, one.flux)
         (line,) = ax.plot(
-            position * MM,
-            flux * scale.factor,
+            x,
+            y,
             color=style.colour,
             linestyle=style.dash,
-            linewidth=1.5,
+            linewidth=width,
             marker=style.marker,
             markersize=4.5,
-            markevery=(len(flux) // 20, max(len(flux) // 10, 1)),
-            label=one.name,
+            markevery=(len(y) // 20, max(len(y) // 10, 1)),
+            label=name,
         )
         drawn.append(line)
-    dress(ax, position_words(travel), f"flux as recorded ({scale.unit})")
-    legend_above(ax, drawn, [short(one.name) for one in passes])
+    legend_above(ax, drawn, [short(name) for name in names])
     return drawn
 
 
@@ -190,22 +222,8 @@ def draw_overlaps(
         One a pass; where passes overlap, one that disagrees departs from the others.
     """
     scale = scale_for("V s", [float(np.abs(one.difference).max(initial=0)) for one in overlaps])
-    drawn = []
     ax.axhline(0, color=SOFT, linewidth=0.8)
-    for index, one in zip(marks or range(len(overlaps)), overlaps, strict=True):
-        style = pass_style(index)
-        (line,) = ax.plot(
-            one.position * MM,
-            one.difference * scale.factor,
-            color=style.colour,
-            linestyle=style.dash,
-            linewidth=1.2,
-            marker=style.marker,
-            markersize=4.5,
-            markevery=(len(one.position) // 20, max(len(one.position) // 10, 1)),
-            label=one.name,
-        )
-        drawn.append(line)
+    curves = [(one.position * MM, one.difference * scale.factor) for one in overlaps]
+    drawn = draw_curves(ax, [one.name for one in overlaps], curves, marks, width=1.2)
     dress(ax, position_words(travel), f"recorded − predicted ({scale.unit})")
-    legend_above(ax, drawn, [short(one.name) for one in overlaps])
     return drawn

@@ -10,13 +10,13 @@ too small an uncertainty. Here the direction is replaced by the slope itself.
 
 from __future__ import annotations
 
-import json
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.provenance import map_joint, map_unknowns
 from fieldmap.magnet.sampling import chosen_line
 
 if TYPE_CHECKING:
@@ -107,14 +107,17 @@ def position_errors(fmap: xr.Dataset, line: int) -> PositionErrors:
     -------
     PositionErrors
     """
-    facts = json.loads(fmap.attrs["lines"])[line]
-    at = fmap.sel(x=facts["x"], y=facts["y"])
-    kinds = [one["kind"] for one in facts["unknowns"]]
-    kept = [i for i, kind in enumerate(kinds) if kind in POSITIONS]
-    mapped = chosen_line(fmap, line)
+    mapped, joint, unknowns = (
+        chosen_line(fmap, line),
+        map_joint(fmap, line),
+        map_unknowns(fmap, line),
+    )
+    size = len(mapped.b)
+    kinds = [one.kind for one in unknowns if one.kind in POSITIONS]
+    kept = [size + i for i, one in enumerate(unknowns) if one.kind in POSITIONS]
     return PositionErrors(
         mapped,
-        at["shared_covariance"].values[: len(mapped.b)][:, kept],
-        at["nuisance_covariance"].values[np.ix_(kept, kept)],
-        np.array([kinds[i] == STRETCH for i in kept], dtype=bool),
+        joint.covariance[:size, kept],
+        joint.covariance[np.ix_(kept, kept)],
+        np.array([kind == STRETCH for kind in kinds], dtype=bool),
     )

@@ -2,21 +2,20 @@
 
 from __future__ import annotations
 
-import functools
 import math
 from html import escape
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Final
 
 from fieldmap.estimate.map import map_findings, map_passes
 from fieldmap.readings.probe import Wire
 from fieldmap.show.look import pass_style, short
 from fieldmap.show.numbers import plain
-from fieldmap.show.panels.parts import hooked, row
+from fieldmap.show.panels.ticks import TickList
 from fieldmap.show.rows import one_line
 
 if TYPE_CHECKING:
     from fieldmap.readings.passes import Pass
-    from fieldmap.show.panels.state import Reduction, Topic
+    from fieldmap.show.panels.state import Reduction
 
 __all__ = ["PassesPanel"]
 
@@ -33,7 +32,7 @@ _SHAPES: Final = {
 }
 
 
-class PassesPanel:
+class PassesPanel(TickList):
     """A box to tick for each pass, with its probe, its kind of record and its health.
 
     Parameters
@@ -52,46 +51,16 @@ class PassesPanel:
     """
 
     def __init__(self, state: Reduction) -> None:
-        import ipywidgets
+        super().__init__(state, "fm-pass", "fm-passes")
 
-        self.state = state
-        self.boxes: tuple[Any, ...] = ()
-        self.notes: tuple[Any, ...] = ()
-        self._following = False
-        self.widget = hooked(ipywidgets.VBox(), "fm-passes")
-        state.listen(self._on_change)
-
-    def _on_change(self, topic: Topic) -> None:
-        if topic in {"campaign", "passes"}:
-            self._rebuild()
-        elif topic in {"map", "stale"}:
-            self._refresh()
-
-    def _rebuild(self) -> None:
-        import ipywidgets
-
-        old = self.widget.children
+    def _offered(self) -> list[tuple[str, bool]]:
         passes = self.state.campaign.passes if self.state.campaign else ()
-        self.boxes = tuple(
-            hooked(
-                ipywidgets.Checkbox(value=used, description=short(one.name), indent=False),
-                "fm-pass",
-            )
-            for one, used in zip(passes, self.state.active, strict=True)
-        )
-        self.notes = tuple(ipywidgets.HTML() for _ in passes)
-        pairs = zip(self.boxes, self.notes, strict=True)
-        self.widget.children = tuple(row(pair, "fm-pass-row") for pair in pairs)
-        for index, box in enumerate(self.boxes):
-            box.observe(functools.partial(self._on_box, index), names="value")
-        for line in old:
-            for part in (*line.children, line):
-                part.close()
+        return [
+            (short(one.name), used) for one, used in zip(passes, self.state.active, strict=True)
+        ]
 
-    def _on_box(self, index: int, change: dict[str, Any]) -> None:
-        with self.state.lock:
-            if not self._following:
-                self.state.use(index, change["new"])
+    def _switch(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
+        self.state.use(index, used)
 
     def _refresh(self) -> None:
         """Show which passes are in use, and what the map says of them."""

@@ -2,18 +2,17 @@
 
 from __future__ import annotations
 
-import functools
 from html import escape
-from typing import TYPE_CHECKING, Any, Final
+from typing import TYPE_CHECKING, Final
 
 from fieldmap.estimate.provenance import reference_fits
 from fieldmap.show.panels.departures import reference_words
-from fieldmap.show.panels.parts import hooked, row
+from fieldmap.show.panels.ticks import TickList
 from fieldmap.show.rows import one_line
 
 if TYPE_CHECKING:
     from fieldmap.estimate.provenance import ReferenceFit
-    from fieldmap.show.panels.state import Reduction, Topic
+    from fieldmap.show.panels.state import Reduction
 
 __all__ = ["ReferencesPanel"]
 
@@ -21,7 +20,7 @@ MOST: Final = 3.0  # a difference beyond so many times its own expected size is 
 ALONE: Final = 0.02  # share of a reference that the rest of the campaign has to tell
 
 
-class ReferencesPanel:
+class ReferencesPanel(TickList):
     """A box to tick for each reference, with what it says and how the map agrees.
 
     Parameters
@@ -42,49 +41,16 @@ class ReferencesPanel:
     def __init__(self, state: Reduction) -> None:
         import ipywidgets
 
-        self.state = state
-        self.boxes: tuple[Any, ...] = ()
-        self.notes: tuple[Any, ...] = ()
-        self._following = False
-        self._none = ipywidgets.HTML('<p class="fm-remark">No reference in the campaign.</p>')
-        self.widget = hooked(ipywidgets.VBox((self._none,)), "fm-references")
-        state.listen(self._on_change)
+        none = ipywidgets.HTML('<p class="fm-remark">No reference in the campaign.</p>')
+        super().__init__(state, "fm-reference", "fm-references", (none,))
 
-    def _on_change(self, topic: Topic) -> None:
-        if topic in {"campaign", "passes"}:
-            self._rebuild()
-        elif topic in {"map", "stale"}:
-            self._refresh()
-
-    def _rebuild(self) -> None:
-        import ipywidgets
-
-        old = self.widget.children
+    def _offered(self) -> list[tuple[str, bool]]:
         references = self.state.campaign.references if self.state.campaign else ()
-        self.boxes = tuple(
-            hooked(
-                ipywidgets.Checkbox(
-                    value=used, description=one_line(reference_words(one)), indent=False
-                ),
-                "fm-reference",
-            )
-            for one, used in zip(references, self.state.trusted, strict=True)
-        )
-        self.notes = tuple(ipywidgets.HTML() for _ in references)
-        pairs = zip(self.boxes, self.notes, strict=True)
-        rows = tuple(row(pair, "fm-reference-row") for pair in pairs)
-        self.widget.children = rows or (self._none,)
-        for index, box in enumerate(self.boxes):
-            box.observe(functools.partial(self._on_box, index), names="value")
-        for line in old:
-            if line is not self._none:
-                for part in (*line.children, line):
-                    part.close()
+        pairs = zip(references, self.state.trusted, strict=True)
+        return [(one_line(reference_words(one)), used) for one, used in pairs]
 
-    def _on_box(self, index: int, change: dict[str, Any]) -> None:
-        with self.state.lock:
-            if not self._following:
-                self.state.trust(index, change["new"])
+    def _switch(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
+        self.state.trust(index, used)
 
     def _refresh(self) -> None:
         self._following = True
