@@ -1,0 +1,7 @@
+"""What is said of the readings, in sentences with numbers."""
+
+from fieldmap.estimate.findings.finding import Finding
+from fieldmap.estimate.findings.line import line_findings
+from fieldmap.estimate.findings.ranges import pass_findings
+
+__all__ = ["Finding", "line_findings", "pass_findings"]
