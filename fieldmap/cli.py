@@ -6,23 +6,29 @@ import argparse
 import json
 import os
 import re
-import shutil
 import sys
 from pathlib import Path
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import fieldmap
-from fieldmap.atomic import output_folder
+from fieldmap.atomic import is_folder, new_folder, replacing_set
 from fieldmap.errors import FieldmapError, InputError
+from fieldmap.estimate.map import with_axis
+from fieldmap.readings import corrected
 from fieldmap.shipped import demo_folder, notebook_folder
 from fieldmap.units import si
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
 
+    import xarray as xr
+
     from fieldmap.bench.confirmation import Confirmation
+    from fieldmap.bench.fault_trials import FaultTrials
     from fieldmap.magnet.results import Results
-    from fieldmap.readings import Limit
+    from fieldmap.progress import Tell
+    from fieldmap.readings import Campaign, Correction, Limit
+    from fieldmap.show.report.parts import Section
 
 __all__ = ["main"]
 
@@ -58,7 +64,7 @@ def main(arguments: Sequence[str] | None = None) -> int:
         print(f"fieldmap: {error}", file=sys.stderr)
         return REFUSED
     except KeyboardInterrupt:
-        print("fieldmap: stopped; nothing was written.", file=sys.stderr)
+        print("fieldmap: stopped; no file is half written.", file=sys.stderr)
         return INTERRUPTED
     except BrokenPipeError:
         os.dup2(os.open(os.devnull, os.O_WRONLY), sys.stdout.fileno())
@@ -101,6 +107,21 @@ def _parser() -> argparse.ArgumentParser:
         help="check the uncertainties by that many trials of the whole chain (JCGM 101); 100 take "
         "a minute or more",
     )
+    reduce.add_argument(
+        "--faults",
+        type=int,
+        metavar="TRIALS",
+        help="put every kind of fault into the campaign measured again, that many times at each of "
+        "five severities, and say what would go unseen; one takes some minutes",
+    )
+    reduce.add_argument(
+        "--correct",
+        action="append",
+        default=[],
+        metavar="PASS",
+        help="switch on the corrections that findings offer for this pass, or for all of them by "
+        "'all'; may be given several times",
+    )
     reduce.set_defaults(run=_reduce)
 
     report = verbs.add_parser("report", help="write the report again, from the map alone")
@@ -138,32 +159,62 @@ def _parser() -> argparse.ArgumentParser:
 
 
 def _reduce(chosen: argparse.Namespace) -> None:
-    _reduce_campaign(Path(chosen.campaign), Path(chosen.out), trials=chosen.confirm)
+    _reduce_campaign(
+        Path(chosen.campaign),
+        Path(chosen.out),
+        trials=chosen.confirm,
+        correct=chosen.correct,
+        faults=chosen.faults,
+    )
 
 
 def _reduce_campaign(
-    source: Path, out: Path, truth: Path | None = None, trials: int | None = None
+    source: Path,
+    out: Path,
+    truth: Path | None = None,
+    trials: int | None = None,
+    correct: Sequence[str] = (),
+    faults: int | None = None,
 ) -> None:
     """Reduce, write, and print what a person wants to read."""
     from fieldmap.show.cautions import caution_text
     from fieldmap.show.tables import summary_text
 
-    results, limits, confirmation, files = _with_progress(source, out, trials)
+    done = _with_progress(source, out, trials, correct, faults)
     known = json.loads(truth.read_text(encoding="utf-8"))["results"] if truth else None
-    print(summary_text(results, limits, truth=known))
-    if confirmation is not None:
+    print(summary_text(done.results, done.limits, truth=known))
+    if done.corrections:
+        print(f"\n{done.corrections}")
+    if done.confirmation is not None:
         from fieldmap.show.confirmation import confirmation_text
 
-        print(f"\n{confirmation_text(confirmation)}")
-    print(f"\nWritten: {', '.join(str(file) for file in files)}\n")
+        print(f"\n{confirmation_text(done.confirmation)}")
+    if done.faults is not None:
+        from fieldmap.show.faults import faults_text
+
+        print(f"\n{faults_text(done.faults)}")
+    print(f"\nWritten: {', '.join(str(file) for file in done.files)}\n")
     print(caution_text())
 
 
+class _Reduced(NamedTuple):
+    """What a reduction gave; the corrections that are switched on are in words."""
+
+    results: Results
+    limits: tuple[Limit, ...]
+    confirmation: Confirmation | None
+    faults: FaultTrials | None
+    files: tuple[Path, ...]
+    corrections: str
+
+
 def _with_progress(
-    source: Path, out: Path, trials: int | None
-) -> tuple[Results, tuple[Limit, ...], Confirmation | None, tuple[Path, ...]]:
+    source: Path, out: Path, trials: int | None, correct: Sequence[str], faults: int | None
+) -> _Reduced:
     """Load, stitch, evaluate and save, with a bar on standard error when it takes a while."""
     from tqdm import tqdm
+
+    from fieldmap.show.corrections import by_hand, chosen_corrections, switched_on_text
 
     with tqdm(delay=2, leave=False, disable=None, dynamic_ncols=True, bar_format=BAR) as bar:
 
@@ -177,15 +228,38 @@ def _with_progress(
         bar.reset(total=STEPS_OF_A_SOLVE * len({(one.x, one.y) for one in campaign.passes}))
         fmap = fieldmap.stitch(campaign, tell=tell)
         results = fieldmap.evaluate(fmap, campaign)
-        confirmation, extra = None, []
-        if trials is not None:
-            from fieldmap.bench.trials import confirm
-            from fieldmap.show.report import confirmation_section
-
-            confirmation = confirm(campaign, fmap, trials=trials, tell=tell)
-            extra = [confirmation_section(confirmation)]
+        added: Sequence[Correction] = ()
+        if correct:
+            added = chosen_corrections(campaign, results.findings, correct)
+            campaign = corrected(campaign, added)
+            fmap = fieldmap.stitch(campaign, tell=tell)
+            fmap = with_axis(fmap, campaign.axis, by_hand(added))
+            results = fieldmap.evaluate(fmap, campaign)
+        confirmation, put_in, extra = _trials(campaign, fmap, trials, faults, tell)
         files = fieldmap.save_reduction(fmap, results, out, extra=extra)
-    return results, campaign.limits, confirmation, files
+    words = switched_on_text(fmap, added)
+    return _Reduced(results, campaign.limits, confirmation, put_in, files, words)
+
+
+def _trials(
+    campaign: Campaign, fmap: xr.Dataset, trials: int | None, faults: int | None, tell: Tell
+) -> tuple[Confirmation | None, FaultTrials | None, list[Section]]:
+    """Trials of the whole chain, and faults put in, as wanted; and their parts of the report."""
+    from fieldmap.show.report import confirmation_section, faults_section
+
+    confirmation, put_in = None, None
+    extra: list[Section] = []
+    if trials is not None:
+        from fieldmap.bench.trials import confirm
+
+        confirmation = confirm(campaign, fmap, trials=trials, tell=tell)
+        extra.append(confirmation_section(confirmation))
+    if faults is not None:
+        from fieldmap.bench.fault_trials import fault_trials
+
+        put_in = fault_trials(campaign, fmap, trials=faults, tell=tell)
+        extra.append(faults_section(put_in))
+    return confirmation, put_in, extra
 
 
 def _report(chosen: argparse.Namespace) -> None:
@@ -206,14 +280,14 @@ def _report(chosen: argparse.Namespace) -> None:
 def _map_file(given: str) -> Path:
     """The map, or that in a folder."""
     path = Path(given)
-    return path / "map.nc" if path.is_dir() else path
+    return path / "map.nc" if is_folder(path) else path
 
 
 def _export(chosen: argparse.Namespace) -> None:
     from fieldmap.magnet.handover import export_table
 
     source, out = _map_file(chosen.map), Path(chosen.out)
-    if out.exists() and source.exists() and out.samefile(source):
+    if out.resolve() == source.resolve():
         raise InputError(str(out), "the map itself", "another file", "give the table its own name")
     table = export_table(
         fieldmap.load_map(source),
@@ -245,25 +319,21 @@ def _copy_demo(folder: Path) -> Path:
     """Copy what is not there yet: files that exist, perhaps edited, are kept."""
     for origin in (demo_folder(), notebook_folder()):
         target = folder / ("demo_data" if origin.name == "demo_data" else "notebooks")
-        for file in sorted(origin.rglob("*")):
-            if file.is_file() and ".ipynb_checkpoints" not in file.parts:
-                _copy(file, target / file.relative_to(origin))
+        for place in (origin, *sorted(one for one in origin.rglob("*") if one.is_dir())):
+            if ".ipynb_checkpoints" not in place.parts:
+                _copy_files(place, target / place.relative_to(origin))
     return folder
 
 
-def _copy(file: Path, target: Path) -> None:
-    if target.exists():
+def _copy_files(origin: Path, target: Path) -> None:
+    """Copy the files of one folder that are missing, all of them or none."""
+    files = sorted(one for one in origin.iterdir() if one.is_file())
+    names = [one.name for one in files if not os.path.lexists(target / one.name)]
+    if not names:
         return
-    output_folder(target.parent)
-    try:
-        shutil.copyfile(file, target)
-    except OSError as error:
-        raise InputError(
-            str(target),
-            f"that it cannot be written ({error.strerror or error})",
-            "a folder with room that you may write to",
-            "name another folder",
-        ) from error
+    with new_folder(target) as folder, replacing_set(folder, names) as asides:
+        for aside in asides:
+            aside.write_bytes((origin / aside.name).read_bytes())
 
 
 def _lab(chosen: argparse.Namespace) -> None:

@@ -36,7 +36,7 @@ class InputError(FieldmapError):
     def __init__(self, where: str, found: str, expected: str, remedy: str = "") -> None:
         self.where, self.found, self.expected, self.remedy = where, found, expected, remedy
         tail = f"; {remedy}" if remedy else ""
-        super().__init__(f"{where}: found {found}, expected {expected}{tail}.")
+        super().__init__(_on_one_line(f"{where}: found {found}, expected {expected}{tail}."))
 
 
 class RefusedError(FieldmapError):
@@ -54,4 +54,9 @@ class RefusedError(FieldmapError):
 
     def __init__(self, code: str, where: str, text: str) -> None:
         self.code, self.where, self.text = code, where, text
-        super().__init__(f"{where}: {text}")
+        super().__init__(_on_one_line(f"{where}: {text}"))
+
+
+def _on_one_line(text: str) -> str:
+    """Text with names from anywhere: what would move a terminal's cursor is written out."""
+    return "".join(c if c.isprintable() else repr(c)[1:-1] for c in text)

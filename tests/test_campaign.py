@@ -464,8 +464,8 @@ MISTAKES = [
      "'upper' or both; write one of these")),
     ("[stage]", "[stages]",
      ("found the unknown key 'stages', expected one of 'format', 'name', 'magnet', 'axis', "
-     "'probes', 'integrators', 'stage', 'table', 'passes', 'references', 'limits'; write "
-     "'stage' if that is meant")),
+     "'probes', 'integrators', 'stage', 'table', 'passes', 'references', 'limits', "
+     "'corrections'; write 'stage' if that is meant")),
     ("[[passes]]", "[passes]",
      ("key 'passes': found a table, expected a list; write each entry under double square "
      "brackets")),

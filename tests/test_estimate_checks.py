@@ -9,6 +9,7 @@ import pytest
 
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.checks import (
+    check_reach,
     check_references,
     check_spacing,
     check_time_and_travel,
@@ -55,9 +56,9 @@ def test_a_gap_that_is_no_length(gap):
 
 
 def test_spacing():
-    for good in (None, 1e-6, 0.1):
+    for good in (None, 1e-4, 0.1):
         check_spacing(good, -0.2, 0.2)
-    for bad in (0.0, -0.1, np.nan, np.inf, 0.11):
+    for bad in (0.0, -0.1, np.nan, np.inf, 0.11, 1e-6):
         with pytest.raises(InputError, match="knot_spacing"):
             check_spacing(bad, -0.2, 0.2)
 
@@ -68,6 +69,18 @@ def test_time_and_travel():
         check_time_and_travel([scan(position=(0.1, 0.1, 0.1))], 0.1, 0.1)
     with pytest.raises(InputError, match=r"late: found one time stamp, 5 s"):
         check_time_and_travel([scan(), scan("late", time=(5.0, 5.0, 5.0))], 0.0, 0.2)
+
+
+def test_positions_out_of_all_proportion():
+    near, far = scan("near"), scan("far", position=(0.0, 100.0, 200.0))
+    check_reach([near, scan("longer", position=(-0.3, 0.0, 0.6))], (0.05, 0.15))
+    check_reach([scan(position=(0.0, 0.3, 0.6))], (0.0, 0.2))
+    for passes in ([near, far], [far]):
+        with pytest.raises(
+            RefusedError, match=r"far: found positions from 0 to 200000 mm"
+        ) as caught:
+            check_reach(passes, (0.0, 0.2))
+        assert caught.value.code == "positions-out-of-proportion"
 
 
 def checked(reference, number=3, low=-0.2, high=0.2, slack=1e-3):

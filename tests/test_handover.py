@@ -62,7 +62,7 @@ def test_a_failure_leaves_an_empty_folder_empty(reduced, tmp_path, monkeypatch):
     def stopped(*_, **__):
         raise KeyboardInterrupt
 
-    monkeypatch.setattr(xr.Dataset, "to_netcdf", stopped)
+    monkeypatch.setattr(xr.Dataset, "dump_to_store", stopped)
     with pytest.raises(KeyboardInterrupt):
         save_reduction(*reduced, tmp_path)
     assert names(tmp_path) == []

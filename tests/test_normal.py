@@ -7,7 +7,7 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from fieldmap.estimate.normal import NormalSystem
+from fieldmap.estimate.normal import NormalSystem, Undetermined
 
 
 @st.composite
@@ -65,3 +65,52 @@ def test_refinement_gains_digits():
 def test_refuses_what_is_not_determined(matrix):
     with pytest.raises(np.linalg.LinAlgError):
         NormalSystem(matrix)
+
+
+def hilbert(n):
+    return 1 / (1 + np.add.outer(np.arange(n), np.arange(n)))
+
+
+def test_reciprocal_condition_of_the_scaled_matrix():
+    units = 10.0 ** np.arange(-3, 3)
+    system = NormalSystem(hilbert(6) * np.outer(units, units))
+    scaled = hilbert(6) * np.outer(*2 * [1 / np.sqrt(np.diagonal(hilbert(6)))])
+    exact = 1 / np.linalg.cond(scaled, 1)
+    assert exact * 0.99 < system.reciprocal_condition() < 3 * exact
+
+
+def test_rounding_is_what_a_change_in_the_last_digit_makes():
+    # the same system with every entry changed by a rounding: the variance moves within the bound
+    matrix, rng = hilbert(7), np.random.default_rng(4)
+    rows = np.eye(7)
+    system = NormalSystem(matrix)
+    _, variances = system.rounding(rows, np.ones(7))
+    spread = np.zeros(7)
+    for _ in range(50):
+        change = rng.uniform(-1, 1, (7, 7)) * np.finfo(float).eps
+        other = NormalSystem(matrix * (1 + change + change.T) / 1.0)
+        spread = np.maximum(spread, np.abs(np.diagonal(other.inverse() - system.inverse())))
+    relative = spread / np.diagonal(system.inverse())
+    assert np.all(relative < 10 * variances)
+    assert np.all(relative > variances / 1000)
+
+
+def test_a_well_told_result_keeps_its_digits_beside_one_that_is_not():
+    # two unknowns whose sum alone is told well: the sum keeps its digits, the difference has none
+    matrix = np.array([[1.0, 1.0 - 1e-12], [1.0 - 1e-12, 1.0]])
+    system = NormalSystem(matrix)
+    values, variances = system.rounding(np.array([[1.0, 1.0], [1.0, -1.0]]), np.ones(2))
+    assert variances[0] < 1e-15
+    assert variances[1] > 1e-5
+    assert values[0] < 1e-15
+    weakest = system.weakest()
+    assert abs(weakest @ np.array([1.0, -1.0])) / np.sqrt(2) == pytest.approx(1.0, abs=1e-3)
+
+
+def test_names_the_direction_that_is_not_determined():
+    with pytest.raises(Undetermined) as error:
+        NormalSystem(np.array([[1.0, 1.0, 0.0], [1.0, 1.0, 0.0], [0.0, 0.0, 1.0]]))
+    np.testing.assert_allclose(np.abs(error.value.direction), [0.5**0.5, 0.5**0.5, 0], atol=1e-7)
+    with pytest.raises(Undetermined) as error:
+        NormalSystem(np.diag([1.0, 0.0]))
+    np.testing.assert_array_equal(error.value.direction, [0.0, 1.0])

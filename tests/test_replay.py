@@ -9,11 +9,12 @@ import pytest
 
 from fieldmap.bench.bench_errors import Errors, Noise, draw_errors
 from fieldmap.bench.mapped import MappedField
-from fieldmap.bench.replay import _reached, _sense, replay
+from fieldmap.bench.replay import _sense, replay
 from fieldmap.bench.response import flux
 from fieldmap.bench.twin import read_flip, record
 from fieldmap.errors import InputError
 from fieldmap.estimate import map_lines, stitch
+from fieldmap.estimate.corrected import reached
 from fieldmap.magnet import evaluate
 from fieldmap.readings import (
     Coil,
@@ -270,10 +271,10 @@ def test_refuses_the_map_of_another_campaign(wires):
 
 def test_positions_a_lag_later():
     time = np.linspace(0.0, 10.0, 101)
-    np.testing.assert_allclose(_reached(time, 0.05 * time, 0.03), 0.05 * (time + 0.03))
-    np.testing.assert_allclose(_reached(time, 0.05 * time, -0.03), 0.05 * (time - 0.03))
+    np.testing.assert_allclose(reached(time, 0.05 * time, 0.03), 0.05 * (time + 0.03))
+    np.testing.assert_allclose(reached(time, 0.05 * time, -0.03), 0.05 * (time - 0.03))
     standing = np.clip(time, 2.0, 8.0)
-    np.testing.assert_allclose(_reached(time, standing, 0.5), np.clip(time + 0.5, 2.0, 8.0))
+    np.testing.assert_allclose(reached(time, standing, 0.5), np.clip(time + 0.5, 2.0, 8.0))
 
 
 def test_sense_turns_where_the_travel_does():

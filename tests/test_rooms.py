@@ -14,7 +14,7 @@ import fieldmap
 PACKAGE = Path(fieldmap.__file__).parent
 # from the ground up; a room imports from rooms before it and from itself
 ROOMS = ["ground", "readings", "estimate", "magnet", "bench", "show", "shell"]
-GROUND = {"errors", "units", "atomic", "shipped", "progress", "version"}
+GROUND = {"errors", "units", "atomic", "folder_lock", "shipped", "progress", "version"}
 SHELL = {"__init__", "__main__", "cli"}  # the face and the command line use every room
 MODULES = sorted(PACKAGE.rglob("*.py"))
 LATE = {"pint", "pandas", "h5netcdf", "h5py", "matplotlib", "ipywidgets", "tqdm", "IPython"}

@@ -14,7 +14,7 @@ import xarray as xr
 
 import fieldmap
 from fieldmap.errors import FieldmapError, InputError
-from fieldmap.estimate import map_lines, stitch
+from fieldmap.estimate import map_lines, stitch, store
 from fieldmap.estimate.store import load_map, save_map
 from fieldmap.magnet import evaluate
 from fieldmap.readings import Axis, Limit, PointReference
@@ -163,11 +163,11 @@ def test_no_folder_to_write_to(fmap, tmp_path):
 def test_an_existing_file_stays_whole_when_writing_fails(fmap, saved, monkeypatch):
     before = saved.read_bytes()
 
-    def full(_, path, **__):
+    def full(_, path, __):
         path.write_bytes(b"half a fi")
         raise OSError(28, "No space left on device")
 
-    monkeypatch.setattr(xr.Dataset, "to_netcdf", full)
+    monkeypatch.setattr(store, "write_netcdf_file", full)
     with pytest.raises(InputError, match="No space left on device"):
         save_map(fmap, saved)
     assert saved.read_bytes() == before
@@ -177,11 +177,11 @@ def test_an_existing_file_stays_whole_when_writing_fails(fmap, saved, monkeypatc
 def test_an_existing_file_stays_whole_when_writing_is_interrupted(fmap, saved, monkeypatch):
     before = saved.read_bytes()
 
-    def stopped(_, path, **__):
+    def stopped(_, path, __):
         path.write_bytes(b"half a fi")
         raise KeyboardInterrupt
 
-    monkeypatch.setattr(xr.Dataset, "to_netcdf", stopped)
+    monkeypatch.setattr(store, "write_netcdf_file", stopped)
     with pytest.raises(KeyboardInterrupt):
         save_map(fmap, saved)
     assert saved.read_bytes() == before

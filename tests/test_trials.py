@@ -11,6 +11,7 @@ import numpy as np
 import pytest
 
 import fieldmap.bench.trials as module
+from fieldmap.bench import workers
 from fieldmap.bench.bench_errors import Errors
 from fieldmap.bench.trials import confirm
 from fieldmap.bench.twin import record
@@ -80,7 +81,7 @@ def test_wrong_uncertainties_are_found_out(shop, factor, good, words):
 
 
 def test_the_number_of_workers_changes_nothing(shop):
-    alone, together = (confirm(*shop, trials=6, workers=workers) for workers in (1, 2))
+    alone, together = (confirm(*shop, trials=6, workers=count) for count in (1, 2))
     assert alone == together
 
 
@@ -127,7 +128,7 @@ def test_workers_that_end_early_are_told_of(shop, monkeypatch):
     def broken(*_):
         raise BrokenProcessPool
 
-    monkeypatch.setattr(module.ProcessPoolExecutor, "map", broken)
+    monkeypatch.setattr(workers.ProcessPoolExecutor, "map", broken)
     monkeypatch.setenv("OMP_NUM_THREADS", "7")
     main = sys.modules["__main__"]
     with pytest.raises(RefusedError, match="call confirm with workers=1"):

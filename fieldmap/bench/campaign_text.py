@@ -4,10 +4,12 @@ from __future__ import annotations
 
 import json
 import re
+from dataclasses import replace
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
 from fieldmap.bench.decimals import quantity_text, shifted_text
 from fieldmap.errors import InputError
+from fieldmap.readings.corrections import entries_text
 from fieldmap.readings.layout import TableLayout
 from fieldmap.readings.passes import FlipReference, PointReference, ZeroReference
 from fieldmap.readings.probe import Integrator, Probe, Wire
@@ -178,6 +180,10 @@ def campaign_text(
         lines += _reference(reference)
     for limit in campaign.limits:
         lines += ["", "[[limits]]", f'result = "{limit.result}"', *_limit(limit), *_rule(limit)]
+    if campaign.corrections:
+        renamed = {one.name: file for one, file in zip(campaign.passes, files, strict=True)}
+        kept = [replace(one, where=renamed[one.where]) for one in campaign.corrections]
+        lines += ["", entries_text(kept)]
     return "\n".join(lines) + "\n"
 
 

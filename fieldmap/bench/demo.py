@@ -14,7 +14,6 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
-from fieldmap.atomic import replacing
 from fieldmap.bench.bench_errors import draw_errors
 from fieldmap.bench.demo_campaigns import DEMOS
 from fieldmap.bench.truth import truth_text
@@ -94,19 +93,17 @@ def _make(demo: Demo, folder: Path, *, overwrite: bool) -> Path:
     plan = replace(demo.plan, references=demo.plan.references + points)
     errors = draw_errors(plan, rng, demo.noise)
     campaign = record(plan, demo.source, rng, errors, current=demo.current)
-    file = write_campaign(
+    about = f"{campaign.name}: {demo.about}; true values of a simulated campaign"
+    text = truth_text(demo.source, campaign.axis, about, campaign.magnet.gap)
+    return write_campaign(
         campaign,
         folder,
         layout=demo.layout,
         preamble=demo.preamble,
         units=demo.units,
         overwrite=overwrite,
+        beside={"truth.json": text},
     )
-    about = f"{campaign.name}: {demo.about}; true values of a simulated campaign"
-    text = truth_text(demo.source, campaign.axis, about, campaign.magnet.gap)
-    with replacing(folder / "truth.json") as aside:
-        aside.write_bytes(text.encode())
-    return file
 
 
 def _point(demo: Demo, at: float, u: float, rng: np.random.Generator) -> PointReference:

@@ -2,7 +2,9 @@
 
 Every pass keeps its time stamps and recorded positions. Sizes, positions, drifts, noise and
 references are drawn afresh from what the campaign states of them; where it states nothing of a
-drift or a noise level, the fitted one stands in.
+drift or a noise level, the fitted one stands in. Corrections that are switched on stay made: a
+pass is measured as it stands after them, with what is uncertain of them drawn afresh, and steps
+as large as they were found.
 """
 
 from __future__ import annotations
@@ -10,7 +12,7 @@ from __future__ import annotations
 import json
 import math
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, Final
+from typing import TYPE_CHECKING, Final, NamedTuple
 
 import numpy as np
 
@@ -21,6 +23,7 @@ from fieldmap.bench.response import flux
 from fieldmap.bench.twin import read_flip, read_point
 from fieldmap.errors import InputError
 from fieldmap.estimate.checks import prepared
+from fieldmap.estimate.corrected import integrator_scale, reached, step_times
 from fieldmap.estimate.map import map_lines, map_passes
 from fieldmap.readings.passes import PointReference, ZeroReference
 from fieldmap.readings.probe import Coil
@@ -33,6 +36,7 @@ if TYPE_CHECKING:
 
     from fieldmap.bench.sources import Source
     from fieldmap.estimate.fieldline import FieldLine
+    from fieldmap.estimate.parameters import Kind
     from fieldmap.readings.passes import Campaign, Floats, Pass, Reference
 
 __all__ = ["Replayed", "replay"]
@@ -42,6 +46,7 @@ Key = tuple[str, str, float, float]
 
 _PLAY: Final = 10.0  # a turn of the stage is larger than this many u of its jitter …
 _TURN: Final = 0.005  # … and than this share of the travel
+_UNCERTAIN: Final = ("factor", "lag", "shift")
 
 
 @dataclass(frozen=True, eq=False)
@@ -110,8 +115,18 @@ def replay(campaign: Campaign, fmap: xr.Dataset, rng: np.random.Generator) -> Re
     lines = {(line.x, line.y): line for line in map_lines(fmap)}
     truth = {at: _levelled(line, _zeros(campaign, at), rng) for at, line in lines.items()}
     sources = {at: MappedField(line) for at, line in truth.items()}
+    steps = _fitted(fmap, "step")
     passes = tuple(
-        _again(campaign, one, _of_line(sources, one), errors, drift, _noise(one, levels), rng)
+        _again(
+            campaign,
+            one,
+            _of_line(sources, one),
+            errors,
+            drift,
+            _stepped(one, steps),
+            _noise(one, levels),
+            rng,
+        )
         for one, drift in zip(campaign.passes, errors.drift, strict=True)
     )
     references = tuple(_reread(ref, sources, errors, rng) for ref in campaign.references)
@@ -126,21 +141,45 @@ def replay(campaign: Campaign, fmap: xr.Dataset, rng: np.random.Generator) -> Re
 def _drawn(campaign: Campaign, fmap: xr.Dataset, rng: np.random.Generator) -> Errors:
     """Errors by what the campaign states; a drift of which it says nothing keeps its fit."""
     errors = draw_errors(campaign, rng, passes=campaign.passes)
-    fitted = _fitted_drifts(fmap)
+    fitted = _fitted(fmap, "drift")
     drifts = [
-        fitted.get(one.name, drift) if one.integrator.u_drift is None else drift
+        fitted[one.name] / integrator_scale(one)
+        if one.integrator.u_drift is None and one.name in fitted
+        else drift
         for one, drift in zip(campaign.passes, errors.drift, strict=True)
     ]
     return replace(errors, drift=tuple(drifts))
 
 
-def _fitted_drifts(fmap: xr.Dataset) -> dict[str, float]:
-    """Fitted drift rate of each pass that has one, V s/s."""
+class _OwnErrors(NamedTuple):
+    """What the corrections of one pass leave wrong in a trial."""
+
+    factor: float
+    lag: float
+    shift: float
+
+
+def _own_errors(one: Pass, rng: np.random.Generator) -> _OwnErrors:
+    """Draw the rest of a factor (relative), of a lag (s) and of a shift (m)."""
+    u = {each.kind: each.u for each in one.corrections}
+    return _OwnErrors(*(u[k] * rng.standard_normal() if u.get(k) else 0.0 for k in _UNCERTAIN))
+
+
+def _stepped(one: Pass, steps: Mapping[str, float]) -> Floats:
+    """Flux of the steps in a pass, as large as they were found, V s."""
+    flux = np.zeros(len(one.time))
+    for where, at in step_times(one).items():
+        flux += steps.get(where, 0.0) * (one.time >= at)
+    return flux
+
+
+def _fitted(fmap: xr.Dataset, kind: Kind) -> dict[str, float]:
+    """Fitted value of each nuisance of a kind, by its place, SI."""
     found = {}
     for facts in json.loads(fmap.attrs["lines"]):
         values = fmap["nuisance"].sel(x=facts["x"], y=facts["y"]).values
         for unknown, value in zip(facts["unknowns"], values.tolist(), strict=False):
-            if unknown["kind"] == "drift":
+            if unknown["kind"] == kind:
                 found[unknown["where"]] = value * unknown["sd"]  # kept in units of its sd
     return found
 
@@ -186,22 +225,30 @@ def _again(
     source: Source,
     errors: Errors,
     drift: float,
+    stepped: Floats,
     noise: Noise,
     rng: np.random.Generator,
 ) -> Pass:
     """One pass over again."""
     u_jitter = campaign.stage.u_position
-    late = _reached(one.time, one.position, errors.lag)
+    own = _own_errors(one, rng)
+    late = reached(one.time, one.position, errors.lag + own.lag) + own.shift
     sense = _sense(one.position, max(_PLAY * u_jitter, _TURN * float(np.ptp(one.position))))
     place = true_position(late, sense, errors)
     jitter = u_jitter * rng.standard_normal(one.time.size)
     freely = one.record == "voltage"  # a voltmeter is not triggered by the position it notes
     linked = _linked(campaign, one, source, place if freely else place + jitter, errors)
+    # what the integrator adds comes before the corrections of its flux
+    scale = integrator_scale(one)
+    linked *= (1 + own.factor) / scale
     linked += drift * (one.time - one.time[0])
     if freely:
         linked += _integrated_noise(one, noise, rng)
-        return replace(one, position=one.position - jitter, flux=linked - linked[0])
-    return replace(one, flux=_cumulated(one, linked + _walk(one, noise, rng), noise, rng))
+        flux = scale * (linked - linked[0])
+        return replace(one, position=one.position - jitter, flux=flux + stepped)
+    shown_before = replace(one, flux=one.flux / scale)
+    flux = scale * _cumulated(shown_before, linked + _walk(one, noise, rng), noise, rng)
+    return replace(one, flux=flux + stepped)
 
 
 def _linked(campaign: Campaign, one: Pass, source: Source, place: Floats, errors: Errors) -> Floats:
@@ -238,18 +285,6 @@ def _integrated_noise(one: Pass, noise: Noise, rng: np.random.Generator) -> Floa
     spacing = np.gradient(one.time)
     voltage = noise.walk / np.sqrt(spacing) * rng.standard_normal(one.time.size)
     return integrate_voltage(voltage, one.time)
-
-
-def _reached(time: Floats, position: Floats, lag: float) -> Floats:
-    """Recorded position a lag later, at the last speed beyond the ends, m."""
-    late = np.interp(time + lag, time, position)
-    for end, near in ((0, slice(0, 5)), (-1, slice(-5, None))):
-        lasted = time[near][-1] - time[near][0]
-        speed = (position[near][-1] - position[near][0]) / lasted if lasted > 0 else 0.0
-        over = time + lag - time[end]
-        beyond = over < 0 if end == 0 else over > 0
-        late = np.where(beyond, position[end] + speed * over, late)
-    return np.asarray(late)
 
 
 def _sense(position: Floats, play: float) -> Floats:

@@ -7,14 +7,7 @@ trials of a whole chain are few.
 
 from __future__ import annotations
 
-import os
-import sys
-from concurrent.futures import ProcessPoolExecutor
-from concurrent.futures.process import BrokenProcessPool
-from contextlib import contextmanager
 from dataclasses import dataclass, replace
-from multiprocessing import get_context
-from types import ModuleType
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -22,14 +15,13 @@ import numpy.typing as npt
 
 from fieldmap.bench.confirmation import Confirmation, confirmed
 from fieldmap.bench.replay import replay
+from fieldmap.bench.workers import processes, run_all
 from fieldmap.errors import FieldmapError, InputError, RefusedError
 from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.progress import Tell, silent
 
 if TYPE_CHECKING:
-    from collections.abc import Iterator
-
     import xarray as xr
 
     from fieldmap.magnet.results import Results
@@ -42,7 +34,6 @@ Key = tuple[int, str]
 
 SEED: Final = 101
 FEWEST: Final = 5
-_THREADS: Final = ("OMP_NUM_THREADS", "OPENBLAS_NUM_THREADS", "MKL_NUM_THREADS")
 
 
 @dataclass(frozen=True)
@@ -137,14 +128,13 @@ def confirm(
     """
     if trials < FEWEST:
         raise InputError("argument 'trials'", repr(trials), f"{FEWEST} or more")
-    if workers is not None and workers < 1:
-        raise InputError("argument 'workers'", repr(workers), "1 or more")
+    workers = processes(workers, trials)
     campaign = replace(campaign, limits=())  # nothing is judged here
     own = evaluate(fmap, campaign, fringe=False)
     job = _Job(campaign, fmap, _spacing(fmap), seed, _values(own))
     replay(campaign, fmap, np.random.default_rng(seed))  # a wrong map is refused, not counted
     made: list[_Trial] = []
-    for trial in _run(job, trials, min(workers or os.cpu_count() or 1, trials)):
+    for trial in run_all(job, trials, workers, "confirm"):
         made.append(trial)
         tell(f"trial {len(made)} of {trials}")
     done = [trial.errors for trial in made if not trial.refusal]
@@ -177,48 +167,3 @@ def _values(results: Results) -> dict[Key, float]:
         for index, line in enumerate(results.lines)
         for key, quantity in line.results.items()
     }
-
-
-def _run(job: _Job, trials: int, workers: int) -> Iterator[_Trial]:
-    """The trials in their order."""
-    if workers == 1:
-        yield from map(job.run, range(trials))
-        return
-    pool = ProcessPoolExecutor(workers, get_context("spawn"), initializer=_receive, initargs=(job,))
-    try:
-        with pool:
-            with _plain_start():
-                found = pool.map(_one, range(trials))  # starts all workers
-            yield from found
-    except BrokenProcessPool:
-        text = "a worker process ended before its work was done; call confirm with workers=1."
-        raise RefusedError("workers-lost", "argument 'workers'", text) from None
-
-
-@contextmanager
-def _plain_start() -> Iterator[None]:
-    """Processes that start here use one thread each, and do not import the user's script again."""
-    before = {name: os.environ.get(name) for name in _THREADS}
-    main = sys.modules["__main__"]
-    os.environ.update(dict.fromkeys(_THREADS, "1"))  # they share the processors
-    sys.modules["__main__"] = ModuleType("__main__")
-    try:
-        yield
-    finally:
-        sys.modules["__main__"] = main
-        for name, value in before.items():
-            if value is None:
-                del os.environ[name]
-            else:
-                os.environ[name] = value
-
-
-_received: list[_Job] = []  # of a worker process, which serves one call only
-
-
-def _receive(job: _Job) -> None:
-    _received[:] = [job]
-
-
-def _one(number: int) -> _Trial:
-    return _received[0].run(number)

@@ -6,7 +6,7 @@ import re
 from dataclasses import replace
 from typing import TYPE_CHECKING, Final
 
-from fieldmap.atomic import output_folder, replacing
+from fieldmap.atomic import holds_files, new_folder, replacing_set
 from fieldmap.bench.campaign_text import campaign_text
 from fieldmap.bench.table_text import table_text
 from fieldmap.errors import InputError
@@ -33,6 +33,7 @@ def write_campaign(
     preamble: Sequence[str] = (),
     units: Mapping[str, str] | None = None,
     overwrite: bool = False,
+    beside: Mapping[str, str] | None = None,
 ) -> Path:
     """Write a campaign file and the tables of its measured passes.
 
@@ -50,6 +51,8 @@ def write_campaign(
         Units of the columns where the header row tells them, such as ``{"position": "um"}``.
     overwrite : bool
         Whether files that are there may be replaced. Other files in the folder stay.
+    beside : mapping of str to str, optional
+        Texts of further files by their names, such as the true values of a simulated campaign.
 
     Returns
     -------
@@ -77,8 +80,7 @@ def write_campaign(
 
     Notes
     -----
-    Every file is written aside and renamed, the campaign file last: a folder with a campaign
-    file is complete.
+    The files take their places together: none of them is ever left beside an older one.
     """
     if layout is not None:
         layout = replace(layout, skip_lines=len(preamble))
@@ -88,20 +90,15 @@ def write_campaign(
     names = _table_names(campaign.passes)
     tables = [table_text(one, layout, preamble, units) for one in campaign.passes]
     text = campaign_text(campaign, names, layout)
-    target = output_folder(folder)
-    if not overwrite and any(target.iterdir()):
-        remedy = "name another folder, or set overwrite=True"
-        raise InputError(str(target), "a folder that is not empty", "an empty or new one", remedy)
-    for name, table in zip(names, tables, strict=True):
-        _write(target / name, table)
-    _write(target / _FILE_NAME, text)
+    texts = {**dict(zip(names, tables, strict=True)), **(beside or {}), _FILE_NAME: text}
+    with new_folder(folder) as target:
+        if not overwrite and holds_files(target):
+            found, remedy = "a folder that is not empty", "name another, or set overwrite=True"
+            raise InputError(str(target), found, "an empty or new one", remedy)
+        with replacing_set(target, list(texts)) as asides:
+            for aside, one in zip(asides, texts.values(), strict=True):
+                aside.write_bytes(one.encode())
     return target / _FILE_NAME
-
-
-def _write(path: Path, text: str) -> None:
-    """Write a text file whole or not at all."""
-    with replacing(path) as aside:
-        aside.write_bytes(text.encode())
 
 
 def _table_names(passes: Sequence[Pass]) -> list[str]:

@@ -333,9 +333,10 @@ def _within(nuisances: Floats, prior: Floats) -> Floats:
 def _removed(fmap: xr.Dataset, pair: _Pair, values: Floats) -> tuple[tuple[Nuisance, float], ...]:
     """Nuisances that bear on one of the two passes, SI."""
     ours = {"", *pair.names, *pair.probes}
+    steps = tuple(f"{name} at " for name in pair.names)
     unknowns = map_unknowns(fmap, pair.line)
     return tuple(
         (unknown, float(value * unknown.sd))
         for unknown, value in zip(unknowns, values, strict=True)
-        if unknown.where in ours
+        if unknown.where in ours or (unknown.kind == "step" and unknown.where.startswith(steps))
     )

@@ -8,6 +8,7 @@ from dataclasses import replace
 from typing import TYPE_CHECKING
 
 from fieldmap.errors import InputError, RefusedError
+from fieldmap.estimate.corrected import corrected_passes
 from fieldmap.readings.passes import (
     Campaign,
     FlipReference,
@@ -22,11 +23,15 @@ if TYPE_CHECKING:
 
     from fieldmap.readings.probe import Probe
 
-__all__ = ["check_references", "check_spacing", "check_time_and_travel", "prepared"]
+__all__ = ["check_reach", "check_references", "check_spacing", "check_time_and_travel", "prepared"]
+
+MOST_STATED = 6000  # knots: a matrix of that size still fits in memory several times
+
+FARTHEST = 5.0  # times the length of all else that one pass may stretch the line to
 
 
 def prepared(campaign: Campaign) -> Campaign:
-    """The campaign with passes told apart by name, checked as a whole.
+    """The campaign with passes told apart by name and corrected, checked as a whole.
 
     Parameters
     ----------
@@ -36,12 +41,14 @@ def prepared(campaign: Campaign) -> Campaign:
     Returns
     -------
     Campaign
-        The same where all is well; passes of one name get a number.
+        The same where all is well; passes of one name get a number, and the corrections that are
+        switched on are made: they stand with their passes then.
 
     Raises
     ------
     InputError
-        A gap that is no length, or two different probes under one name.
+        A gap that is no length, two different probes under one name, or a correction that fits no
+        pass.
     RefusedError
         Nothing measured.
     """
@@ -64,7 +71,8 @@ def prepared(campaign: Campaign) -> Campaign:
                 "one name for each probe",
                 "rename one of them",
             )
-    return replace(campaign, passes=_told_apart(campaign.passes))
+    passes = corrected_passes(_told_apart(campaign.passes), campaign.corrections)
+    return replace(campaign, passes=passes, corrections=())
 
 
 def _told_apart(passes: Sequence[Pass]) -> tuple[Pass, ...]:
@@ -80,10 +88,11 @@ def _told_apart(passes: Sequence[Pass]) -> tuple[Pass, ...]:
 
 
 def check_spacing(spacing: float | None, low: float, high: float) -> None:
-    """Refuse knots that are no knots."""
-    if spacing is None or (math.isfinite(spacing) and 0 < spacing <= (high - low) / 4):
+    """Refuse knots that are no knots, and more of them than can be solved for."""
+    least, most = (high - low) / MOST_STATED, (high - low) / 4
+    if spacing is None or (math.isfinite(spacing) and least <= spacing <= most):
         return
-    expected = f"a length above 0 and up to a quarter of the line, {(high - low) / 4:g} m"
+    expected = f"a length from {least:g} m to a quarter of the line, {most:g} m"
     raise InputError("knot_spacing", f"{spacing:g} m", expected)
 
 
@@ -103,6 +112,37 @@ def check_time_and_travel(passes: Sequence[Pass], low: float, high: float) -> No
                 f"one time stamp, {one.time[0]:g} s, for all readings",
                 "time that goes on",
                 "check the time column and its unit, or give rate instead",
+            )
+
+
+def check_reach(passes: Sequence[Pass], integrate: tuple[float, float]) -> None:
+    """Refuse positions that lie far beyond all others: a wrong unit, most often.
+
+    Parameters
+    ----------
+    passes : sequence of Pass
+        Of one line.
+    integrate : tuple of float
+        Limits of the integrated field, m.
+
+    Raises
+    ------
+    RefusedError
+        ``positions-out-of-proportion``.
+    """
+    for one in passes:
+        others = [p.position for p in passes if p is not one]
+        known = [*integrate, *(end for p in others for end in (float(p.min()), float(p.max())))]
+        low, high = min(known), max(known)
+        whole = max(high, float(one.position.max())) - min(low, float(one.position.min()))
+        if whole > FARTHEST * (high - low):
+            raise RefusedError(
+                "positions-out-of-proportion",
+                one.name,
+                f"found positions from {one.position.min() * 1e3:.6g} to "
+                f"{one.position.max() * 1e3:.6g} mm, expected none so far outside [axis] integrate "
+                f"and the other passes, {low * 1e3:.6g} to {high * 1e3:.6g} mm; check the unit of "
+                "the position column.",
             )
 
 

@@ -2,14 +2,14 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from typing import TYPE_CHECKING
 
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.estimate.fieldline import FieldLine
+from fieldmap.estimate.condition import weakest_unknown
 from fieldmap.estimate.frame import common_frame
+from fieldmap.estimate.line_fit import LineFit, PassFit
 from fieldmap.estimate.linearised import Linearised
 from fieldmap.estimate.model import (
     Information,
@@ -20,9 +20,10 @@ from fieldmap.estimate.model import (
     reference_rows,
 )
 from fieldmap.estimate.noise import total
-from fieldmap.estimate.normal import NormalSystem
+from fieldmap.estimate.normal import NormalSystem, Undetermined
 from fieldmap.estimate.parameters import GAINS, Nuisance, nuisances
 from fieldmap.estimate.smoothing import Smoother
+from fieldmap.estimate.solved import Solved
 from fieldmap.estimate.variance import Fitted, NoiseLevel, improve_levels, initial_level
 from fieldmap.progress import Tell, silent
 from fieldmap.readings.passes import FlipReference
@@ -30,7 +31,6 @@ from fieldmap.readings.passes import FlipReference
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from fieldmap.estimate.evidence import Evidence
     from fieldmap.estimate.noise import Tridiagonal
     from fieldmap.estimate.spline import UniformSpline
     from fieldmap.readings.passes import Pass, Reference
@@ -52,81 +52,6 @@ OPEN = (START, START, START, START, 8, 2, 2, 2, *[0] * 12)  # noise levels to be
 RESUMED = (1, 1)
 SHIFT_WORTH_REBINNING = 0.02  # of a knot
 WIDENING_WORTH_REBINNING = 3e-4  # of a window: the square of it is lost in the noise
-
-
-@dataclass(frozen=True, eq=False)
-class PassFit:
-    """How one pass agrees with the joint solution.
-
-    Parameters
-    ----------
-    one : Pass
-        The pass.
-    position : (n,) array
-        Middle of each pair of neighbouring bins, m.
-    residual : (n,) array
-        Whitened residuals of the bin increments: independent unit normals if all is well.
-    freedom : float
-        Expected sum of their squares: n less what the pass gave to the solution.
-    level : NoiseLevel
-        Noise used.
-    """
-
-    one: Pass
-    position: Floats
-    residual: Floats
-    freedom: float
-    level: NoiseLevel
-
-
-@dataclass(frozen=True, eq=False)
-class LineFit:
-    """The field along one line and all it was estimated with.
-
-    Parameters
-    ----------
-    spline : UniformSpline
-        The knots.
-    unknowns : list of Nuisance
-        What follows the coefficients in `values`.
-    values : (p,) array
-        Coefficients of B (T), then the nuisances (SI).
-    covariance : (p, p) array
-        Covariance of `values`.
-    roughness : (size - 3,) array
-        Variance of the third differences of B's coefficients that the prior ended with, T^2.
-    passes : list of PassFit
-        Residuals of each pass.
-    evidence : Evidence
-        Readings, references and priors as the last solve used them.
-    """
-
-    spline: UniformSpline
-    unknowns: list[Nuisance]
-    values: Floats
-    covariance: Floats
-    roughness: Floats
-    passes: list[PassFit]
-    evidence: Evidence
-
-    def line(self, x: float, y: float, low: float, high: float) -> FieldLine:
-        """The field alone, as a line at (x, y) mapped from low to high (m)."""
-        n = self.spline.size
-        b, covariance = self.values[:n], self.covariance[:n, :n]
-        return FieldLine(x, y, low, high, self.spline, b, covariance)
-
-    def coefficients_for(self, spline: UniformSpline) -> Floats:
-        """Coefficients on other knots with nearly the same field: B at each one's middle."""
-        inside = np.clip(spline.middles(), self.spline.start, self.spline.stop)
-        return np.asarray(self.spline.field_rows(inside) @ self.values[: self.spline.size])
-
-    def roughness_for(self, spline: UniformSpline) -> Floats:
-        """Variance of the differences on other knots; it grows as the fifth power of a spacing."""
-        own, other = (
-            s.start + (np.arange(s.size - 3) + 0.5) * s.spacing for s in (self.spline, spline)
-        )
-        ratio = spline.spacing / self.spline.spacing
-        return np.asarray(np.exp(np.interp(other, own, np.log(self.roughness))) * ratio**5)
 
 
 def fit_line(
@@ -166,8 +91,8 @@ def fit_line(
 
     Raises
     ------
-    numpy.linalg.LinAlgError
-        Something is not determined by readings, references and priors.
+    Undetermined
+        Something is not determined by readings, references and priors; its `what` names it.
     """
     probes = [one.probe for one in passes]
     probes += [r.probe for r in references if isinstance(r, FlipReference)]
@@ -182,7 +107,11 @@ def fit_line(
     )
     if like is not None:
         solver.resume(like)
-    return solver.run(tell)
+    try:
+        return solver.run(tell)
+    except Undetermined as error:
+        error.what = weakest_unknown(error.direction, spline, solver.state.unknowns)
+        raise
 
 
 class _Solver:
@@ -203,7 +132,9 @@ class _Solver:
         self.spline = spline
         self.nominal_current = nominal_current
         self.models = [PassModel(one, spline, nominal_current) for one in passes]
-        self.frame = common_frame([model.bins for model in self.models])
+        self.frame = common_frame(
+            [model.bins for model in self.models], [model.one.name for model in self.models]
+        )
         expected = np.array([unknown.mean for unknown in unknowns])
         self.state = State(np.zeros(spline.size), expected, unknowns)
         self.levels = {
@@ -255,6 +186,16 @@ class _Solver:
             evidence=self.linearised.evidence(
                 self.state.unknowns, self.frame, moves, self.smoother
             ),
+            solved=Solved(
+                self.models,
+                self.references,
+                self.linearised,
+                self.system,
+                self.right,
+                self.state,
+                self.frame,
+                self.jitter,
+            ),
         )
 
     def _at_true_positions(self, moves: Floats) -> tuple[Floats, Floats]:
@@ -275,6 +216,7 @@ class _Solver:
         if adaptations == START:
             self.smoother.start(data)
         else:
+            self.smoother.heed(data)
             self.smoother.see(self._amplitude(), self.state.eta)
         solution = self._solve_weighed(data)
         for _ in range(adaptations):
@@ -284,10 +226,11 @@ class _Solver:
 
     def _solve_weighed(self, data: Information) -> Floats:
         """Solution and covariance for the smoothness as it is."""
-        system = NormalSystem(data.matrix + self.smoother.precision())
-        self.covariance = system.inverse()
-        return system.solve(
-            data.right + self.smoother.right(),
+        self.system = NormalSystem(data.matrix + self.smoother.precision())
+        self.covariance = self.system.inverse()
+        self.right = data.right + self.smoother.right()
+        return self.system.solve(
+            self.right,
             lambda values: data.matrix @ values + self.smoother.times(values),
         )
 
@@ -306,6 +249,10 @@ class _Solver:
                     columns[:, index] += share
             if probe.senses_level and (index := self.state.index("scale")) is not None:
                 columns[:, index] += share
+            own = [model.one.name for model in self.models if model.one.probe.name == name]
+            for one in own:
+                if (index := self.state.index("pass factor", one)) is not None:
+                    columns[:, index] += share / len(own)
         return columns
 
     def _linearise(self) -> Linearised:

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from fieldmap.errors import InputError
 from fieldmap.estimate.spline import UniformSpline
 
 if TYPE_CHECKING:
@@ -79,6 +80,20 @@ def knots_for(passes: Sequence[AnyPass], low: float, high: float, spacing: float
     Returns
     -------
     UniformSpline
+
+    Raises
+    ------
+    InputError
+        A probe so long, or knots so close, that there would be too many.
     """
-    margin = max(one.probe.extent for one in passes) / 2 + spacing
+    widest = max((one.probe for one in passes), key=lambda probe: probe.extent)
+    margin = widest.extent / 2 + spacing
+    if (high - low + 2 * margin) / spacing > 2 * MOST_KNOTS:
+        raise InputError(
+            f"probe '{widest.name}'",
+            f"an extent of {widest.extent:g} m and knots {spacing:g} m apart on a line of "
+            f"{high - low:g} m",
+            f"at most {2 * MOST_KNOTS} knots over all that the probe reaches",
+            "mend the window or the width of the probe, or choose wider knots",
+        )
     return UniformSpline.covering(low - margin, high + margin, spacing)

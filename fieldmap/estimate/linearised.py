@@ -79,5 +79,5 @@ class Linearised:
 
 def _shift(unknown: Nuisance, frame: Frame) -> Floats:
     """Shift from recorded to true position at s = 0, and its growth with s, per SI unit."""
-    start, end = frame.effects(np.array([0.0, 1.0])).get(unknown.kind, np.zeros(2))
+    start, end = frame.effect(unknown, np.array([0.0, 1.0]))
     return np.array([start, end - start])

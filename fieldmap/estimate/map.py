@@ -14,8 +14,10 @@ from fieldmap.estimate.evidence_labels import labelled_evidence
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.map_attributes import FORMAT, describe
+from fieldmap.estimate.map_facts import check_arrays, check_facts
 from fieldmap.estimate.mapped_line import MappedLine
 from fieldmap.estimate.provenance import (
+    map_corrections,
     map_evidence,
     map_integrators,
     map_probes,
@@ -23,10 +25,11 @@ from fieldmap.estimate.provenance import (
     map_stage,
 )
 from fieldmap.estimate.spline import DEGREE, UniformSpline
+from fieldmap.readings.entries import read_correction
 from fieldmap.readings.passes import Axis, Campaign, Limit, Magnet
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
+    from collections.abc import Callable, Mapping, Sequence
 
     import xarray as xr
 
@@ -48,6 +51,8 @@ __all__ = [
 ]
 
 Floats = npt.NDArray[np.float64]
+
+_DAMAGE = (KeyError, TypeError, ValueError, IndexError, AttributeError, OverflowError)
 
 
 def build_map(
@@ -195,17 +200,21 @@ def check_map(fmap: xr.Dataset, where: str) -> None:
         Something that every map has is missing or of another shape.
     """
     try:
+        check_facts(fmap)
+        check_arrays(fmap)
         lines = map_lines(fmap)
         whole = bool(lines) and all(_is_whole(line) for line in lines)
+        readers: tuple[Callable[[xr.Dataset], object], ...]
         readers = (map_title, map_axis, map_limits, map_magnet, map_findings, map_passes)
-        for read in (*readers, map_probes, map_integrators, map_stage, map_references):
+        readers += (map_probes, map_integrators, map_stage, map_references, map_corrections)
+        for read in readers:
             read(fmap)
         for index in range(len(lines)):
             map_evidence(fmap, index)
     except InputError as error:
         raise _no_map(where, error.found) from error
-    except (KeyError, TypeError, ValueError, IndexError, AttributeError) as error:
-        raise _no_map(where, f"a part that is missing or damaged ({error})") from error
+    except (*_DAMAGE, RecursionError) as error:
+        raise _no_map(where, f"a part that is missing or damaged ({error!s:.120})") from error
     if not whole:
         raise _no_map(where, "coefficients that are not all numbers")
 
@@ -306,7 +315,15 @@ def map_magnet(fmap: xr.Dataset) -> Magnet:
 
 def map_findings(fmap: xr.Dataset) -> list[Finding]:
     """Remarks made while stitching."""
-    return [Finding(**finding) for finding in _facts(fmap, "findings")]
+    return [_finding(facts) for facts in _facts(fmap, "findings")]
+
+
+def _finding(facts: Mapping[str, Any]) -> Finding:
+    """A remark with the correction that it offers, from the form used in results.json."""
+    if "correction" not in facts:
+        return Finding(**facts)
+    offer = read_correction(facts["correction"], f"finding '{facts['code']}', correction")
+    return Finding(**{**facts, "correction": offer})
 
 
 def map_passes(fmap: xr.Dataset) -> list[dict[str, Any]]:

@@ -125,4 +125,5 @@ def _pass_facts(one: PassFit) -> dict[str, Any]:
         "read_stated": one.level.read_known,
         "chi_square": float(one.residual @ one.residual),
         "freedom": one.freedom,
+        "corrections": [correction.as_entry() for correction in measured.corrections],
     }

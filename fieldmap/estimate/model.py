@@ -2,12 +2,13 @@
 
 A pass reads, up to a constant and noise,
 
-    Φ = (1 + gain) * (X + shift * S) b + drift * t
+    Φ = (1 + gain) * (X + shift * S) b + drift * t + steps
 
 with X the flux rows, S the slope rows dΦ/ds and b the coefficients of B, both in the recorded
 frame, so that ``shift = lag * (v - v̄) + backlash * (sense - mean sense) / 2`` is what tells
-this pass from the others. In that frame a wire cuts ``1 + scale`` times the true field. Gain and
-shift meet b in a product, so each solve linearises at the state before it (Gauss-Newton).
+this pass from the others, besides a lag or a shift that it has for itself. In that frame a wire
+cuts ``1 + scale`` times the true field. Gain and shift meet b in a product, so each solve
+linearises at the state before it (Gauss-Newton).
 """
 
 from __future__ import annotations
@@ -20,6 +21,7 @@ import numpy.typing as npt
 from scipy import sparse
 
 from fieldmap.estimate.bins import Bins, bin_pass, mean_rows
+from fieldmap.estimate.corrected import integrator_scale, step_times
 from fieldmap.estimate.frame import Frame
 from fieldmap.estimate.noise import Tridiagonal, read_part, walk_part
 from fieldmap.estimate.parameters import GAINS
@@ -142,21 +144,32 @@ class PassModel:
     window_steps: sparse.csr_array = field(init=False)
     applied: Floats = field(init=False)
     walk: Tridiagonal = field(init=False)
+    scale: float = field(init=False)
+    steps: dict[str, Floats] = field(init=False)
 
     def __post_init__(self) -> None:
         self.bins = bin_pass(self.one, self.spline.spacing / 2, self.nominal_current)
         self.flux_steps, self.slope = self._steps(self.widened)
         self.window_steps = sparse.csr_array(self.flux_steps.shape)
         if isinstance(self.one.probe, Coil) and self.one.probe.u_window > 0:
-            wider, narrower = (self._steps(self.widened + by)[0] for by in (WIDER, -WIDER))
-            self.window_steps = (wider - narrower) / (2 * WIDER)
-        self.walk = walk_part(self.bins)
+            self.window_steps = self.widening()
+        self.scale = abs(integrator_scale(self.one))
+        self.walk = self.scale**2 * walk_part(self.bins)
         starts, count = self.bins.starts, self.bins.count
+        self.steps = {
+            where: np.diff(np.add.reduceat((self.one.time >= at).astype(float), starts) / count)
+            for where, at in step_times(self.one).items()
+        }
         self.applied = (
             np.zeros(len(starts))
             if self.shift is None
             else np.add.reduceat(self.shift, starts) / count
         )
+
+    def widening(self) -> sparse.csr_array:
+        """Change of the increments' rows with the relative length of the window."""
+        wider, narrower = (self._steps(self.widened + by)[0] for by in (WIDER, -WIDER))
+        return sparse.csr_array((wider - narrower) / (2 * WIDER))
 
     def _steps(self, widened: float) -> tuple[sparse.csr_array, sparse.csr_array]:
         """Rows of the increments, and of dΦ/ds, for a window that is longer than stated."""
@@ -170,35 +183,51 @@ class PassModel:
         steps[np.abs(steps) < NEGLIGIBLE * np.abs(steps).max(initial=0.0)] = 0.0
         return sparse.csr_array(steps) + (direct[1:] - direct[:-1]), slope.tocsr()
 
-    def own_effects(self, frame: Frame) -> dict[Kind, Floats]:
-        """Shift of each bin against the recorded frame for one unit of each nuisance, m."""
-        speed = self.bins.speed
-        return {"lag": speed - frame.speed, "backlash": (self.bins.sense - frame.sense) / 2}
+    def own_effects(self, state: State, frame: Frame) -> dict[int, Floats]:
+        """Shift of each bin against the recorded frame for one unit of each nuisance, m.
+
+        By the index of the nuisance; those that shift nothing here are left out.
+        """
+        bins, nowhere = self.bins, np.zeros(1)
+        own: dict[Kind, Floats | float] = {"lag": bins.speed, "backlash": bins.sense / 2}
+        of_pass: dict[Kind, Floats | float] = {"pass lag": bins.speed, "pass shift": 1.0}
+        effects = {}
+        for index, unknown in enumerate(state.unknowns):
+            if unknown.kind in own or unknown.kind in of_pass:
+                mine = own | (of_pass if unknown.where == self.one.name else {})
+                common = float(frame.effect(unknown, nowhere)[0])
+                effects[index] = mine.get(unknown.kind, 0.0) - np.full(len(bins.speed), common)
+        return effects
 
     def shift_at(self, state: State, frame: Frame) -> Floats:
         """Shift of each bin against the recorded frame at a state, m."""
-        effects = self.own_effects(frame)
-        return np.asarray(sum(state.value(kind) * effect for kind, effect in effects.items()))
+        shift = np.zeros(len(self.bins.speed))
+        for index, effect in self.own_effects(state, frame).items():
+            shift += state.eta[index] * effect
+        return shift
 
     def reading_shift(self, state: State, frame: Frame) -> Floats:
         """Shift of every reading against the recorded frame at a state, m."""
-        one, lag = self.one, state.value("lag")
+        one = self.one
+        lag = state.value("lag") + state.value("pass lag", one.name)
         late = np.interp(one.time + lag, one.time, one.position)
         bin_of = np.repeat(np.arange(len(self.bins.starts)), self.bins.count.astype(int))
-        half = state.value("backlash") * self.own_effects(frame)["backlash"]
-        return np.asarray(late - one.position - lag * frame.speed + half[bin_of])
+        # the lag takes each reading along its own way; the rest shifts whole bins
+        rest = self.shift_at(state, frame) - lag * self.bins.speed
+        return np.asarray(late - one.position + rest[bin_of])
 
     def gain(self, state: State) -> float:
         """Gain over its stated value; in the recorded frame a wire's contains the scale."""
         stretched = state.value("scale") if self.one.probe.senses_level else 0.0
-        return 1 + state.gain(self.one.probe.name) + stretched
+        own = state.value("pass factor", self.one.name)
+        return 1 + state.gain(self.one.probe.name) + own + stretched
 
     def noise(
         self, state: State, walk: float, read: float, jitter: float
     ) -> dict[str, Tridiagonal]:
         """Covariance of the increments by its cause, for noise levels in V s/√s, V s and m."""
         swing = self.slope @ state.b * self.gain(state)
-        even = np.full(len(swing), read**2)
+        even = np.full(len(swing), (self.scale * read) ** 2)
         return {
             "walk": walk**2 * self.walk,
             "read": read_part(self.bins, even),
@@ -215,10 +244,10 @@ class PassModel:
         if (index := state.index("window", self.one.probe.name)) is not None:
             columns[:, index] = gain * (self.window_steps @ state.b)
             field_steps = field_steps + (state.eta[index] - self.widened) * self.window_steps
-        for kind, effect in self.own_effects(frame).items():
-            if (index := state.index(kind)) is not None:
-                columns[:, index] = np.diff(swing * effect)
+        for index, effect in self.own_effects(state, frame).items():
+            columns[:, index] = np.diff(swing * effect)
         gains = [(kind, self.one.probe.name) for kind in GAINS]
+        gains.append(("pass factor", self.one.name))
         if self.one.probe.senses_level:
             gains.append(("scale", ""))
         for kind, where in gains:
@@ -228,7 +257,11 @@ class PassModel:
         if (index := state.index("drift", self.one.name)) is not None:
             columns[:, index] = np.diff(bins.time)
         else:
-            target -= self.one.integrator.drift * np.diff(bins.time)
+            drift = self.one.integrator.drift * integrator_scale(self.one)
+            target -= drift * np.diff(bins.time)
+        for where, share in self.steps.items():
+            if (index := state.index("step", where)) is not None:
+                columns[:, index] = share
         design = sparse.hstack([gain * field_steps, sparse.csr_array(columns)], format="csr")
         return Rows(design, target)
 
@@ -295,9 +328,9 @@ def _reference_row(
         at = reference.at - _shift(state, frame, reference.at)
         row[: spline.size] = spline.field_rows(np.array([at]))[0]
         slope = float(spline.field_rows(np.array([at]), 1)[0] @ state.b)
-        for kind, effect in frame.effects(np.array([reference.at])).items():
-            if (index := state.index(kind)) is not None:
-                row[spline.size + index] = -slope * float(effect[0])
+        for index, unknown in enumerate(state.unknowns):
+            effect = frame.effect(unknown, np.array([reference.at]))
+            row[spline.size + index] = -slope * float(effect[0])
         return row, reference.field, reference.u
     # a field that vanishes on a stretch has no slope worth a shift
     width = reference.stop - reference.start
@@ -307,8 +340,9 @@ def _reference_row(
 
 def _shift(state: State, frame: Frame, at: float) -> float:
     """True less recorded position, m."""
-    effects = frame.effects(np.array([at]))
-    return float(sum(state.value(kind) * effect[0] for kind, effect in effects.items()))
+    place = np.array([at])
+    pairs = zip(state.unknowns, state.eta.tolist(), strict=True)
+    return float(sum(value * frame.effect(unknown, place)[0] for unknown, value in pairs))
 
 
 def _flip_row(
@@ -328,12 +362,14 @@ def _flip_row(
     steps: list[tuple[Kind, str, float]] = [
         *((kind, flip.probe.name, float(2 * links @ state.b)) for kind in GAINS),
         ("window", flip.probe.name, float(2 * gain * window @ state.b)),
-        ("lag", "", -swing * frame.speed),
-        ("backlash", "", -swing * frame.sense / 2),
     ]
+    place = np.array([flip.at])
+    for index, unknown in enumerate(state.unknowns):
+        share = frame.effect(unknown, place) - standing.effect(unknown, place)
+        row[spline.size + index] = -swing * float(share[0])
     for kind, where, step in steps:
-        if (index := state.index(kind, where)) is not None:
-            row[spline.size + index] = step
+        if (at_index := state.index(kind, where)) is not None:
+            row[spline.size + at_index] = step
     return row, flip.flux_change, flip.u_flux_change
 
 

@@ -75,12 +75,12 @@ class Tridiagonal:
         return np.asarray(solution)
 
     def whiten(self, right: Floats) -> Floats:
-        """Turn a vector with this covariance into independent unit normals."""
+        """Turn a vector, or columns, with this covariance into independent unit normals."""
         pivots, multipliers = self.factor()
         white = np.array(right, dtype=float)
         for i, multiplier in enumerate(multipliers.tolist()):
             white[i + 1] -= multiplier * white[i]
-        return np.asarray(white / np.sqrt(pivots))
+        return np.asarray((white.T / np.sqrt(pivots)).T)
 
     def log_determinant(self) -> float:
         """Natural logarithm of the determinant."""

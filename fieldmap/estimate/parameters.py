@@ -7,22 +7,39 @@ from typing import TYPE_CHECKING, Literal
 
 import numpy as np
 
+from fieldmap.estimate.corrected import integrator_scale, step_times
 from fieldmap.readings.probe import Coil
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
+    from fieldmap.readings.corrections import CorrectionKind
     from fieldmap.readings.passes import Pass
     from fieldmap.readings.probe import Probe, Stage
 
-__all__ = ["GAINS", "Kind", "Nuisance", "nuisances"]
+__all__ = ["CORRECTED", "GAINS", "Kind", "Nuisance", "any_drift", "nuisances"]
 
 Kind = Literal[
-    "drift", "gain", "tilt", "temperature", "window", "scale", "offset", "lag", "backlash"
+    "drift",
+    "gain",
+    "tilt",
+    "temperature",
+    "window",
+    "scale",
+    "offset",
+    "lag",
+    "backlash",
+    "pass factor",
+    "pass lag",
+    "pass shift",
+    "step",
 ]
 
 GAINS: tuple[Kind, ...] = ("gain", "tilt", "temperature")
 """What changes the readings of a probe in proportion."""
+
+CORRECTED: tuple[Kind, ...] = ("pass factor", "pass lag", "pass shift", "step")
+"""What is uncertain of the corrections of a pass that the user switched on."""
 
 UNITS: dict[Kind, str] = {
     "drift": "V s/s",
@@ -34,6 +51,10 @@ UNITS: dict[Kind, str] = {
     "offset": "m",
     "lag": "s",
     "backlash": "m",
+    "pass factor": "1",
+    "pass lag": "s",
+    "pass shift": "m",
+    "step": "V s",
 }
 
 
@@ -74,7 +95,8 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
 
     A drift belongs to a pass; gain, tilt, temperature and window to a probe (so a gain cancels
     in what one probe measured); scale, offset, lag and backlash to the stage. What is stated to
-    be certain is no unknown.
+    be certain is no unknown. A correction that the user switched on leaves what is uncertain of
+    it: the rest of a factor, a lag or a shift, and a step as large as the flux of the pass.
 
     Parameters
     ----------
@@ -91,10 +113,10 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
     """
     found: list[Nuisance] = []
     for one in passes:
-        known = one.integrator.u_drift
-        sd = _any_drift(one) if known is None else known
+        known, scale = one.integrator.u_drift, integrator_scale(one)
+        sd = any_drift(one) if known is None else known * abs(scale)
         if sd > 0:
-            found.append(Nuisance("drift", one.name, one.integrator.drift, sd))
+            found.append(Nuisance("drift", one.name, one.integrator.drift * scale, sd))
     for probe in {probe.name: probe for probe in probes}.values():
         found += _of_probe(probe)
     shared: list[tuple[Kind, float]] = [
@@ -104,7 +126,23 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
         ("backlash", stage.u_backlash),
     ]
     found += [Nuisance(kind, "", 0.0, sd) for kind, sd in shared if sd > 0]
-    return found
+    return found + [unknown for one in passes for unknown in _of_corrections(one)]
+
+
+def _of_corrections(one: Pass) -> list[Nuisance]:
+    """What is uncertain of the corrections of one pass."""
+    left: dict[CorrectionKind, Kind] = {
+        "factor": "pass factor",
+        "lag": "pass lag",
+        "shift": "pass shift",
+    }
+    found = [
+        Nuisance(left[each.kind], one.name, 0.0, each.u)
+        for each in one.corrections
+        if each.kind in left and each.u > 0
+    ]
+    span = float(np.ptp(one.flux)) or 1e-15
+    return found + [Nuisance("step", where, 0.0, span) for where in step_times(one)]
 
 
 def _of_probe(probe: Probe) -> list[Nuisance]:
@@ -125,7 +163,7 @@ def _of_probe(probe: Probe) -> list[Nuisance]:
     return [Nuisance(kind, probe.name, mean, float(sd)) for kind, mean, sd in found if sd > 0]
 
 
-def _any_drift(one: Pass) -> float:
+def any_drift(one: Pass) -> float:
     """Where no drift is stated: one that could have made all the flux of the pass, V s/s."""
     duration = float(one.time[-1] - one.time[0])
-    return max(float(np.ptp(one.flux)), 1e-15) / duration
+    return (float(np.ptp(one.flux)) or 1e-15) / duration

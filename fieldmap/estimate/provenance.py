@@ -3,25 +3,31 @@
 from __future__ import annotations
 
 import json
+import math
 from typing import TYPE_CHECKING, Any, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
 
 from fieldmap.errors import InputError
+from fieldmap.estimate.corrected import step_name
 from fieldmap.estimate.evidence_labels import line_evidence
 from fieldmap.estimate.parameters import Nuisance
+from fieldmap.readings.entries import read_correction
 from fieldmap.readings.probe import Coil, Integrator, Probe, Stage, Wire
 
 if TYPE_CHECKING:
     import xarray as xr
 
     from fieldmap.estimate.evidence import Evidence
+    from fieldmap.readings.corrections import Correction
 
 __all__ = [
+    "Applied",
     "Joint",
     "ReferenceFit",
     "line_reference_numbers",
+    "map_corrections",
     "map_evidence",
     "map_integrators",
     "map_joint",
@@ -166,6 +172,87 @@ def map_unknowns(fmap: xr.Dataset, line: int = 0) -> list[Nuisance]:
         Nuisance(one["kind"], one["where"], one["mean"], one["sd"])
         for one in _line_facts(fmap, line)["unknowns"]
     ]
+
+
+class Applied(NamedTuple):
+    """One correction that a map was made with, and what the readings found of it.
+
+    Parameters
+    ----------
+    correction : Correction
+        As it was switched on.
+    value, u : float
+        Factor, lag (s), shift (m) or size of the step (V s) that the joint solution found, and
+        its standard uncertainty; nan where the correction has no value.
+    unit : str
+        SI unit of them; empty likewise.
+    """
+
+    correction: Correction
+    value: float
+    u: float
+    unit: str
+
+
+def map_corrections(fmap: xr.Dataset) -> list[Applied]:
+    """The corrections that were switched on when the map was made, pass by pass.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+
+    Returns
+    -------
+    list of Applied
+        Empty where none was.
+
+    Examples
+    --------
+    >>> import fieldmap
+    >>> from fieldmap.readings import Correction, corrected
+    >>> from fieldmap.shipped import demo_folder
+    >>> campaign = fieldmap.load(demo_folder() / "foreign_tables")
+    >>> late = corrected(campaign, [Correction("lag", "pass_01.csv", 0.001, 0.002)])
+    >>> found = map_corrections(fieldmap.stitch(late))[0]
+    >>> found.correction.kind, found.unit, found.u < 0.002
+    ('lag', 's', True)
+    """
+    applied = []
+    for one in json.loads(fmap.attrs["passes"]):
+        for entry in one.get("corrections", []):
+            correction = read_correction(entry, f"pass '{one['name']}', corrections")
+            applied.append(_applied(correction, one["record"], _found(fmap, one["x"], one["y"])))
+    return applied
+
+
+def _found(fmap: xr.Dataset, x: float, y: float) -> dict[tuple[str, str], tuple[float, float]]:
+    """Value and standard uncertainty of the nuisances of the line at (x, y), SI."""
+    places = [(one["x"], one["y"]) for one in json.loads(fmap.attrs["lines"])]
+    line = places.index((x, y))
+    unknowns, joint = map_unknowns(fmap, line), map_joint(fmap, line)
+    first = len(joint.values) - len(unknowns)
+    sd = np.sqrt(np.diagonal(joint.covariance)[first:])
+    return {
+        (one.kind, one.where): (float(value) * one.sd, float(u) * one.sd)
+        for one, value, u in zip(unknowns, joint.values[first:], sd, strict=True)
+    }
+
+
+def _applied(
+    one: Correction, record: str, found: dict[tuple[str, str], tuple[float, float]]
+) -> Applied:
+    """A correction with what was found of it added to what was stated."""
+    if one.kind == "factor":
+        left, u = found.get(("pass factor", one.where), (0.0, 0.0))
+        # the pass reads 1 + left times what it should after the stated factor
+        return Applied(one, one.value / (1 + left), u * abs(one.value), "1")
+    if one.kind in ("lag", "shift"):
+        left, u = found.get((f"pass {one.kind}", one.where), (0.0, 0.0))
+        return Applied(one, one.value + left, u, "s" if one.kind == "lag" else "m")
+    if (step := step_name(one, record)) is not None:
+        return Applied(one, *found.get(("step", step), (math.nan, math.nan)), "V s")
+    return Applied(one, math.nan, math.nan, "")
 
 
 def map_probes(fmap: xr.Dataset) -> list[Probe]:

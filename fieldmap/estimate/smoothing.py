@@ -31,6 +31,7 @@ Floats = npt.NDArray[np.float64]
 
 PSEUDO = 1.0  # degrees of freedom within reach below which the data no longer move a variance
 HASTE = 1.0  # unresolved differences answer slowly: there a step is taken up to 1 + HASTE times
+STIFFEST = 1e9  # of the readings' weights: a stiffer prior changes nothing and costs digits
 FLOOR = 1e-10  # least variance, relative to the largest: keeps the system well conditioned
 
 
@@ -57,6 +58,7 @@ class Smoother:
         reach = min(reach, roughness.shape[0] - 1)
         self.kernel = 1 - np.abs(np.arange(-reach, reach + 1)) / (reach + 1)
         self.variance = np.ones(roughness.shape[0])
+        self.least = 0.0
         self.see(np.zeros((roughness.shape[1], unknowns - roughness.shape[1])))
 
     def see(self, frame: Floats, eta: Floats | None = None) -> None:
@@ -72,6 +74,18 @@ class Smoother:
         moved = self.roughness @ frame
         self.rows = sparse.hstack([self.roughness, sparse.csr_array(moved)], format="csr")
         self.origin = np.zeros(len(moved)) if eta is None else moved @ eta
+
+    def heed(self, data: Information) -> None:
+        """Keep the prior no stiffer than the readings can feel: a field without any texture."""
+        size = self.roughness.shape[1]
+        unit = float(self.roughness.multiply(self.roughness).sum())
+        self.least = unit / (STIFFEST * float(np.trace(data.matrix[:size, :size])))
+        self._soften()
+
+    def _soften(self) -> None:
+        largest = float(self.variance.max())
+        if largest < self.least:
+            self.variance = self.variance * (self.least / largest)
 
     def precision(self) -> Floats:
         """Precision of the prior over all unknowns."""
@@ -129,6 +143,7 @@ class Smoother:
         ratio = (self._gather(d**2 / self.variance) + PSEUDO) / (freedom + PSEUDO)
         stepped = self.variance * ratio ** (1 + HASTE * (1 - share))
         self.variance = np.maximum(stepped, FLOOR * stepped.max())
+        self._soften()
 
     def _gather(self, values: Floats) -> Floats:
         """Sum over the neighbours within reach, with triangular weights."""

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from typing import TYPE_CHECKING
 
 import numpy as np
@@ -9,16 +10,27 @@ import numpy.typing as npt
 
 from fieldmap.errors import InputError, RefusedError
 from fieldmap.estimate.checks import (
+    check_reach,
     check_references,
     check_spacing,
     check_time_and_travel,
     prepared,
 )
-from fieldmap.estimate.coverage import check_levels, stretches
-from fieldmap.estimate.findings import Finding, line_findings, pass_findings
+from fieldmap.estimate.condition import NONE, check_digits, lost, undetermined
+from fieldmap.estimate.coverage import check_density, check_levels, stretches
+from fieldmap.estimate.findings import (
+    Finding,
+    line_findings,
+    pass_findings,
+    switched_findings,
+)
+from fieldmap.estimate.findings.gross import blamed, grossly_wrong
+from fieldmap.estimate.findings.scan import colour, faulty
+from fieldmap.estimate.findings.spikes import without_spikes
 from fieldmap.estimate.fit import LineFit, fit_line
 from fieldmap.estimate.knots import MOST_KNOTS, first_spacing, grain, knots_for, sampling
 from fieldmap.estimate.map import MappedLine, build_map
+from fieldmap.estimate.normal import Undetermined
 from fieldmap.progress import Tell, silent
 from fieldmap.readings.passes import Axis, Campaign, Magnet, Pass, Reference, ZeroReference
 from fieldmap.readings.probe import Stage
@@ -34,8 +46,10 @@ Floats = npt.NDArray[np.float64]
 
 STILL = 0.1  # halving the knots may move no result by more than this many u
 HALVINGS = 3
+COLOURED = 4.0  # standard uncertainties by which neighbouring residuals may hang together
 WHITER = 0.85  # a mean square of residuals that falls below this share was misfit
 PROFILE_POINTS = 200
+SMALLEST_LEVEL = 3.0  # a central field below this many u has no length to stand still
 
 
 def stitch(
@@ -86,12 +100,18 @@ def stitch(
     `fieldmap.estimate.smoothing` and `fieldmap.estimate.bins` for the sources.
     """
     campaign = prepared(campaign)
+    recorded = campaign.passes
+    campaign = replace(campaign, passes=without_spikes(recorded))
     groups = _lines(campaign.passes)
     lines = [
         _fit_one(campaign, passes, _references(campaign, key, groups), knot_spacing, tell)
         for key, passes in groups.items()
     ]
-    return build_map(campaign, lines, pass_findings(campaign.passes), step)
+    remarks = [
+        *pass_findings(recorded, campaign.magnet.current),
+        *switched_findings(recorded),
+    ]
+    return build_map(campaign, lines, remarks, step)
 
 
 def reconstruct(
@@ -204,34 +224,45 @@ def _fit_one(
     low = min(float(one.position.min()) for one in passes)
     high = max(float(one.position.max()) for one in passes)
     check_time_and_travel(passes, low, high)
+    check_reach(passes, campaign.axis.integrate)
     check_spacing(spacing, low, high)
-    gap = campaign.magnet.gap
+    gap, every = campaign.magnet.gap, passes
     chosen = spacing or first_spacing(gap, low, high, sampling(passes))
     references = check_references(numbered, low, high, slack=chosen / 2)
     check_levels(stretches(passes, slack=2 * chosen), references)
+    check_density(passes, gap)
 
-    def fit(width: float, like: LineFit | None = None) -> LineFit:
-        knots = knots_for(passes, low, high, width)
+    def fit(
+        width: float, like: LineFit | None = None, passes: Sequence[Pass] = passes
+    ) -> LineFit:
+        knots = knots_for(every, low, high, width)
         texture = grain(gap, low, high)
         current = campaign.magnet.current
         try:
             return fit_line(passes, references, campaign.stage, knots, texture, current, like, tell)
         except np.linalg.LinAlgError as error:
-            raise _undetermined(passes) from error
+            raise _undetermined(passes, error) from error
 
     best = fit(chosen)
     remarks: list[Finding] = []
-    if spacing is None:
+    spoilt = grossly_wrong(best)
+    if spoilt:  # finer knots would only follow the fault
+        remarks = blamed(passes, lambda others: fit(chosen, passes=others))
+    elif spacing is None:
         best, remarks = _refine(best, fit, campaign.axis)
-    remarks += line_findings(best, low, high, campaign.stage, gap)
+    remarks += check_digits(best, _result_rows(best, campaign.axis))
+    remarks += line_findings(best, low, high, campaign.stage, gap, scanned=not (spoilt and remarks))
     numbers = tuple(number for number, _ in numbered)
     return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks), numbers)
 
 
-def _undetermined(passes: list[Pass]) -> RefusedError:
+def _undetermined(passes: Sequence[Pass], error: np.linalg.LinAlgError) -> RefusedError:
+    names = ", ".join(one.name for one in passes)
+    if isinstance(error, Undetermined):
+        return undetermined(names, error.what)
     return RefusedError(
         "not-determined",
-        ", ".join(one.name for one in passes),
+        names,
         "found readings that do not determine the field, expected readings at distinct times and "
         "positions; check that the time, position and flux columns are the right ones.",
     )
@@ -247,11 +278,19 @@ def _refine(
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
             return best, [_unsure("halving the knots was not tried: there would be too many")]
-        finer = fit(best.spline.spacing / 2, best)
+        try:
+            finer = fit(best.spline.spacing / 2, best)
+        except RefusedError:  # what coarser knots determine, finer ones lose to rounding
+            return best, [_unsure("halving the knots was not possible: too few digits are left")]
+        if lost(finer, _result_rows(finer, axis)) >= NONE:
+            return best, [_unsure("halving the knots was of no use: too few digits are left")]
         moved = _moved(best, finer, axis)
-        if moved <= STILL and _misfit(finer) >= WHITER * _misfit(best):
+        whiter = _misfit(finer) < WHITER * _misfit(best) or _less_coloured(best, finer)
+        if moved <= STILL and not whiter:
             return best, []
         best = finer
+        if faulty(best):  # finer knots would only follow the fault
+            return best, []
     spacing = f"{best.spline.spacing * 1e3:.3g} mm"
     return best, [_unsure(f"halving the knots to {spacing} still moved a result by {moved:.2g} u")]
 
@@ -260,6 +299,12 @@ def _misfit(fit: LineFit) -> float:
     """Mean square of the whitened residuals over what is expected of them."""
     square = sum(float(one.residual @ one.residual) for one in fit.passes)
     return square / max(sum(one.freedom for one in fit.passes), 1.0)
+
+
+def _less_coloured(coarse: LineFit, fine: LineFit) -> bool:
+    """Whether neighbouring residuals hung together, and finer knots took some of that away."""
+    before = colour(coarse)
+    return before > COLOURED and colour(fine) < 0.8 * before
 
 
 def _unsure(outcome: str) -> Finding:
@@ -274,7 +319,8 @@ def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:
     """
     before, u = _main_results(coarse, axis)
     after, _ = _main_results(fine, axis)
-    results = float(np.max(np.abs(after - before) / u))
+    both = slice(min(len(before), len(after)))
+    results = float(np.max(np.abs(after[both] - before[both]) / u[both]))
     s = np.linspace(*axis.integrate, PROFILE_POINTS)
     old, new = (fit.line(0.0, 0.0, *axis.integrate) for fit in (coarse, fine))
     change = (new.field(s) - old.field(s)) / old.u_field(s)
@@ -283,11 +329,21 @@ def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:
 
 
 def _main_results(fit: LineFit, axis: Axis) -> tuple[Floats, Floats]:
+    """Integrated field, central field and, where it has a meaning, magnetic length; their u."""
     size = fit.spline.size
     b, covariance = fit.values[:size], fit.covariance[:size, :size]
+    rows = _result_rows(fit, axis)
+    u = np.sqrt(np.einsum("ij,jk,ik->i", rows, covariance, rows))
+    total, level = (rows[:2] @ b).tolist()
+    if abs(level) < SMALLEST_LEVEL * u[1]:
+        return np.array([total, level]), u
+    ratio = (rows[0] - total / level * rows[1]) / level
+    u_ratio = np.sqrt(ratio @ covariance @ ratio)
+    return np.array([total, level, total / level]), np.append(u, u_ratio)
+
+
+def _result_rows(fit: LineFit, axis: Axis) -> Floats:
+    """Integrated and central field as weights on the coefficients of B."""
     integral = fit.spline.integral_row(*axis.integrate)
     centre = fit.spline.integral_row(*axis.flat) / (axis.flat[1] - axis.flat[0])
-    total, level = float(integral @ b), float(centre @ b)
-    rows = np.array([integral, centre, (integral - total / level * centre) / level])
-    u = np.sqrt(np.einsum("ij,jk,ik->i", rows, covariance, rows))
-    return np.array([total, level, total / level]), u
+    return np.array([integral, centre])

@@ -7,9 +7,13 @@ import io
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from fieldmap.atomic import replacing
+from fieldmap.atomic import replacing, settle
 from fieldmap.errors import InputError
 from fieldmap.estimate.map import FORMAT, check_map
+from fieldmap.estimate.netcdf import write_netcdf_file
+from fieldmap.estimate.seal import SEAL, content_digest
+from fieldmap.readings.hdf5_guard import check_hdf5
+from fieldmap.readings.tables import read_bytes
 
 if TYPE_CHECKING:
     import os
@@ -46,6 +50,7 @@ def write_map(fmap: xr.Dataset, path: Path) -> None:
     stamp = dt.datetime.now(dt.UTC).strftime("%Y-%m-%dT%H:%M:%SZ")
     earlier = fmap.attrs.get("history", "")
     out.attrs["history"] = f"{stamp}: written by fieldmap" + (f"\n{earlier}" if earlier else "")
+    out.attrs[SEAL] = content_digest(out)
     encoding = {
         str(name): {"_FillValue": None if variable.dtype.kind == "i" else float("nan")}
         for name, variable in out.data_vars.items()
@@ -54,7 +59,7 @@ def write_map(fmap: xr.Dataset, path: Path) -> None:
     for name, variable in out.data_vars.items():
         if variable.nbytes > WORTH_PACKING:
             encoding[str(name)] |= {"zlib": True, "complevel": 4, "shuffle": True}
-    out.to_netcdf(path, engine="h5netcdf", encoding=encoding)
+    write_netcdf_file(out, path, encoding)
 
 
 def load_map(path: str | os.PathLike[str]) -> xr.Dataset:
@@ -75,30 +80,50 @@ def load_map(path: str | os.PathLike[str]) -> xr.Dataset:
     InputError
         Not there, or not such a map.
     """
-    import xarray as xr
-
     source = Path(path)
-    try:
-        content = source.read_bytes()
-        with xr.open_dataset(io.BytesIO(content), engine="h5netcdf") as opened:
-            fmap = opened.load()
-    except FileNotFoundError as error:
-        raise InputError(
-            str(source), "no such file", "a map.nc", "give the path of a reduced map"
-        ) from error
-    except Exception as error:  # any damage to the file shows as some error of the reader's
+    settle(source.parent)
+    fmap = _opened(read_bytes(source, str(source)), str(source))
+    if fmap.attrs.get("format") != FORMAT:
         raise InputError(
             str(source),
+            f"format {fmap.attrs.get('format')!r:.60}",
+            f"format '{FORMAT}'",
+            "give a map.nc written by this package",
+        )
+    _check_seal(fmap, str(source))
+    check_map(fmap, str(source))
+    return fmap
+
+
+def _opened(content: bytes, where: str) -> xr.Dataset:
+    """The dataset in a file, in memory."""
+    import xarray as xr
+
+    try:
+        check_hdf5(content, where, whole=True)
+        with xr.open_dataset(io.BytesIO(content), engine="h5netcdf") as opened:
+            return opened.load()
+    except InputError:
+        raise
+    except Exception as error:  # any damage to the file shows as some error of the reader's
+        raise InputError(
+            where,
             f"a file that cannot be read as a map ({type(error).__name__})",
             "a map.nc written by this package",
             "reduce the campaign again",
         ) from error
-    if fmap.attrs.get("format") != FORMAT:
-        raise InputError(
-            str(source),
-            f"format {fmap.attrs.get('format')!r}",
-            f"format '{FORMAT}'",
-            "give a map.nc written by this package",
-        )
-    check_map(fmap, str(source))
-    return fmap
+
+
+def _check_seal(fmap: xr.Dataset, where: str) -> None:
+    """Refuse a map that is not what was written; the seal belongs to the file, not to memory."""
+    seal = fmap.attrs.pop(SEAL, None)
+    if seal == content_digest(fmap):
+        return
+    found = "a map that has changed since it was written" if seal else f"a map without {SEAL!r}"
+    raise InputError(
+        where,
+        found,
+        "a map as the kit wrote it, so that each number is the one that was computed",
+        "reduce the campaign again, or, if you changed the map on purpose, write it with "
+        "fieldmap.save_map",
+    )

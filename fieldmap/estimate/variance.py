@@ -14,6 +14,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.estimate.noise import Tridiagonal, read_part
+from fieldmap.estimate.resolution import counted_step
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -25,6 +26,8 @@ __all__ = ["NoiseLevel", "improve_levels", "initial_level"]
 Floats = npt.NDArray[np.float64]
 
 LONGEST_STEP = 1.5  # of the logarithm of a variance, in one round
+TINY = 1e-30  # of a curvature: where no pass tells of a level, it stays
+NOTHING = 1e-15  # V s: stands for the rounding of readings that are all alike
 QUIETEST = 1e-3  # a level this small beside its start no longer matters
 
 
@@ -88,7 +91,8 @@ def initial_level(models: Sequence[PassModel]) -> NoiseLevel:
     rough, quietest = _roughness(models)
     pace = sum(float(np.ptp(m.bins.time)) for m in models) / sum(len(m.bins.time) for m in models)
     count = float(np.mean(np.concatenate([m.bins.count for m in models])))
-    steps = integrator.resolution / np.sqrt(12)
+    found = max(counted_step(model.one) / model.scale for model in models)
+    steps = max(integrator.resolution, found) / np.sqrt(12)
     walk, read = integrator.walk_noise, integrator.read_noise
     if record == "voltage":
         read = 0.0  # the samples' noise is white voltage: a walk of the integral
@@ -106,9 +110,9 @@ def _roughness(models: Sequence[PassModel]) -> tuple[float, float]:
 
     Exact readings have digits too: below a part in 1e8 of the flux, a fit sees rounding.
     """
-    span = max(float(np.ptp(model.bins.flux)) for model in models)
-    quietest = max(1e-8 * span, 1e-15)
-    bends = np.concatenate([np.diff(model.bins.flux, 3) for model in models])
+    span = max(float(np.ptp(model.bins.flux)) / model.scale for model in models)
+    quietest = 1e-8 * span or NOTHING
+    bends = np.concatenate([np.diff(model.bins.flux, 3) / model.scale for model in models])
     typical = float(np.median(np.abs(bends))) if len(bends) else 0.0
     return max(typical / np.sqrt(20) / 0.6745, quietest), quietest
 
@@ -140,7 +144,7 @@ def improve_levels(
         gained, information = _score(one, parts, covariance)
         score += gained
         curvature += information
-    curvature += 1e-6 * np.trace(curvature) * np.eye(len(names)) + 1e-30 * np.eye(len(names))
+    curvature += 1e-6 * np.trace(curvature) * np.eye(len(names)) + TINY * np.eye(len(names))
     step = np.clip(np.linalg.solve(curvature, score), -LONGEST_STEP, LONGEST_STEP)
     changed = {
         name: max(getattr(level, name) * np.exp(d / 2), QUIETEST * getattr(start, name))
@@ -156,7 +160,7 @@ def _part(model: PassModel, name: str, value: float) -> Tridiagonal:
     """Share of one noise level in the covariance: its derivative by the log of the variance."""
     if name == "walk":
         return value**2 * model.walk
-    return read_part(model.bins, np.full(len(model.bins.count), value**2))
+    return read_part(model.bins, np.full(len(model.bins.count), (model.scale * value) ** 2))
 
 
 def _score(one: Fitted, parts: Sequence[Tridiagonal], covariance: Floats) -> tuple[Floats, Floats]:

@@ -60,6 +60,10 @@ UNKNOWN_CAUSES = {
     "window": "coil window",
     "tilt": "probe tilt",
     "temperature": "probe temperature",
+    "pass factor": "factor of a pass",
+    "pass lag": "lag of a pass",
+    "pass shift": "shift of a pass",
+    "step": "step in the flux",
 }
 SMOOTHNESS = "smoothness of the profile"
 
@@ -260,6 +264,8 @@ def _unknown_names(fmap: xr.Dataset, line: int) -> list[Name]:
         if unknown.kind == "gain":
             cause = "active length" if unknown.where in wires else "effective area"
             return cause, unknown.where, "B"
+        if unknown.kind == "step":  # its prior is as wide as the flux: the readings tell it
+            return UNKNOWN_CAUSES[unknown.kind], unknown.where, "A"
         stated = unknown.kind != "drift" or states_drift[integrator_of[unknown.where]]
         return UNKNOWN_CAUSES[unknown.kind], unknown.where, "B" if stated else "A"
 

@@ -1,6 +1,7 @@
 """What was measured: campaign files and pass tables to a Campaign, all in SI units."""
 
 from fieldmap.readings.campaign import load
+from fieldmap.readings.corrections import Correction, corrected
 from fieldmap.readings.layout import ColumnSpec, TableLayout
 from fieldmap.readings.passes import (
     Axis,
@@ -27,6 +28,7 @@ __all__ = [
     "Campaign",
     "Coil",
     "ColumnSpec",
+    "Correction",
     "FlipReference",
     "Floats",
     "Integrator",
@@ -44,6 +46,7 @@ __all__ = [
     "TablePreview",
     "Wire",
     "ZeroReference",
+    "corrected",
     "load",
     "make_pass",
     "preview_table",

@@ -4,17 +4,22 @@ from __future__ import annotations
 
 import hashlib
 import re
-import tomllib
 from collections.abc import Callable
 from dataclasses import dataclass
 from pathlib import Path, PureWindowsPath
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
+from fieldmap.atomic import is_folder, settle
 from fieldmap.errors import InputError
 from fieldmap.progress import Tell, silent
 from fieldmap.readings import sections
 from fieldmap.readings.checks import FEWEST_READINGS
-from fieldmap.readings.entries import of_kind, read_limits, read_references
+from fieldmap.readings.entries import (
+    of_kind,
+    read_corrections,
+    read_limits,
+    read_references,
+)
 from fieldmap.readings.layout import TableLayout, read_layout
 from fieldmap.readings.passes import (
     Axis,
@@ -34,6 +39,7 @@ from fieldmap.readings.schema import (
     shown,
 )
 from fieldmap.readings.tables import read_bytes, read_table
+from fieldmap.readings.toml_text import parse_toml
 from fieldmap.units import quoted
 
 if TYPE_CHECKING:
@@ -129,8 +135,9 @@ def load_part(
     True
     """
     path = Path(path)
-    if path.is_dir():
+    if is_folder(path):
         path = path / _FILE_NAME
+    settle(path.parent)
     data = read_bytes(path, path.name, _LARGEST_FILE)
     raw = _parse_toml(data, path.name)
     _check_format(raw, path.name)
@@ -148,6 +155,7 @@ def load_part(
         limits=read_limits(top.get("limits", []), path.name),
         path=path,
         sha256=hashlib.sha256(data).hexdigest(),
+        corrections=read_corrections(top.get("corrections", []), passes, awaited, path.name),
     )
     return PartCampaign(campaign, awaited)
 
@@ -173,7 +181,7 @@ class _Rig:
 def _parse_toml(data: bytes, file: str) -> dict[str, Any]:
     """Parse TOML; errors name the line."""
     try:
-        return tomllib.loads(data.removeprefix(b"\xef\xbb\xbf").decode())
+        return parse_toml(data.removeprefix(b"\xef\xbb\xbf").decode())
     except UnicodeDecodeError as error:
         line = data.count(b"\n", 0, error.start) + 1
         found = f"the byte 0x{data[error.start]:02x}, which is not UTF-8"

@@ -12,9 +12,10 @@ from fieldmap.errors import InputError
 if TYPE_CHECKING:
     from fieldmap.readings.passes import Floats
 
-__all__ = ["FEWEST_READINGS", "RowPlace", "check_count", "check_finite", "check_time"]
+__all__ = ["FEWEST_READINGS", "LARGEST", "RowPlace", "check_count", "check_finite", "check_time"]
 
 FEWEST_READINGS: Final = 3
+LARGEST: Final = 1e15  # in SI units: nothing on a bench is larger, and its powers are still numbers
 
 RowPlace = Callable[[int], str]
 """Names the place of a reading, counted from 0: a line of a file, an element of an array."""
@@ -29,9 +30,14 @@ def check_count(count: int, where: str) -> None:
 
 def check_finite(values: Floats, column: str, place: RowPlace) -> None:
     """Refuse readings that are not a finite number."""
-    if np.isfinite(values).all():
+    sound = np.abs(values) <= LARGEST
+    if sound.all():
         return
-    row = int(np.flatnonzero(~np.isfinite(values))[0])
+    row = int(np.flatnonzero(~sound)[0])
+    if np.isfinite(values[row]):
+        where, found = f"{place(row)}, column {column!r}", f"{values[row]:.6g} in SI units"
+        remedy = "mend or delete the row, or mend the unit of the column"
+        raise InputError(where, found, f"a size up to {LARGEST:g}", remedy)
     found = "a missing value or not-a-number" if np.isnan(values[row]) else "an infinite value"
     where = f"{place(row)}, column {column!r}"
     raise InputError(where, found, "a finite number", "mend or delete the row")

@@ -7,6 +7,7 @@ from typing import TYPE_CHECKING, Any
 
 from fieldmap.errors import InputError
 from fieldmap.readings import sections
+from fieldmap.readings.corrections import Correction, check_correction, check_once
 from fieldmap.readings.passes import FlipReference, Limit, Reference, ZeroReference
 from fieldmap.readings.probe import Coil
 from fieldmap.readings.schema import (
@@ -22,12 +23,13 @@ from fieldmap.readings.schema import (
 from fieldmap.units import quoted
 
 if TYPE_CHECKING:
-    from collections.abc import Mapping
+    from collections.abc import Mapping, Sequence
 
+    from fieldmap.readings.passes import Pass
     from fieldmap.readings.probe import Probe
     from fieldmap.readings.sections import Kind
 
-__all__ = ["of_kind", "read_limits", "read_references"]
+__all__ = ["of_kind", "read_correction", "read_corrections", "read_limits", "read_references"]
 
 
 def of_kind(raw: object, kinds: Mapping[str, Kind], place: str, **extra: object) -> Any:
@@ -87,6 +89,73 @@ def _coil(name: str, probes: Mapping[str, Probe], place: str) -> Coil:
     if not isinstance(probe, Coil):
         raise InputError(where, f"{quoted(name)}, which is no coil", "a coil", "name a coil")
     return probe
+
+
+def read_correction(raw: object, place: str) -> Correction:
+    """Read one correction as it stands in a campaign file or beside a finding.
+
+    Parameters
+    ----------
+    raw : object
+        An entry of [[corrections]], or `Correction.as_entry`.
+    place : str
+        How errors name it.
+
+    Returns
+    -------
+    Correction
+
+    Raises
+    ------
+    InputError
+        Names the key.
+
+    Examples
+    --------
+    >>> read_correction({"kind": "step", "pass": "a.csv", "at": "12 s"}, "here").start
+    12.0
+    """
+    found: Correction = of_kind(raw, sections.CORRECTION_KINDS, place)
+    return found
+
+
+def read_corrections(
+    raw: list[Any], passes: Sequence[Pass], awaited: Sequence[str], file: str
+) -> tuple[Correction, ...]:
+    """Read what the user switched on against faults of single passes.
+
+    Parameters
+    ----------
+    raw : list
+        Entries of [[corrections]].
+    passes : sequence of Pass
+        The measured passes.
+    awaited : sequence of str
+        Names of passes that are not there yet: their corrections wait with them.
+    file : str
+        How errors name the campaign file.
+
+    Returns
+    -------
+    tuple of Correction
+
+    Raises
+    ------
+    InputError
+        Names the entry, and the key where it is one.
+    """
+    measured = {one.name: one for one in passes}
+    names = (*measured, *awaited)
+    found: list[Correction] = []
+    for index, entry in enumerate(raw, 1):
+        place = f"{file}, [[corrections]] {index}"
+        one = read_correction(entry, place)
+        one_of(one.where, names, key_place(place, "pass"), "a measured pass among")
+        check_once(one, found, place)
+        if one.where in measured:
+            check_correction(one, measured[one.where], place, names)
+        found.append(one)
+    return tuple(one for one in found if one.where in measured)
 
 
 def read_limits(raw: list[Any], file: str) -> tuple[Limit, ...]:

@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import posixpath
 import time
-import tomllib
 from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
@@ -15,6 +14,7 @@ from fieldmap.readings.layout import TableLayout, read_layout
 from fieldmap.readings.records import SAMPLES
 from fieldmap.readings.settled import Settling, Stamp, stamp_of
 from fieldmap.readings.tables import read_table
+from fieldmap.readings.toml_text import parse_toml
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Mapping
@@ -223,7 +223,7 @@ class Follower:
     def _raw(self) -> dict[str, Any]:
         """The campaign file as TOML; what is wrong with it `load_part` says better."""
         try:
-            return tomllib.loads(self.path.read_bytes().decode("utf-8-sig"))
+            return parse_toml(self.path.read_bytes().decode("utf-8-sig"))
         except (OSError, ValueError, RecursionError):
             return {}
 

@@ -35,6 +35,7 @@ __all__ = ["GuessedColumn", "TableGuess", "guess_table", "read_head"]
 HEAD_BYTES: Final = 65_536
 MOST_LINES: Final = 400
 FEWEST_ROWS: Final = 2
+LONGEST_NAME: Final = 200
 LARGEST_NETCDF: Final = 100_000_000  # bytes: only whole files of this kind can be opened
 
 _DELIMITERS: Final = (";", "\t", "|", ",", " ")  # of two that do as well, the first
@@ -294,6 +295,8 @@ def _by_name(
 
 def _name_and_unit(text: str) -> tuple[str, str]:
     """Parts of ``"pos [mm]"``, ``"pos (mm)"``, ``"pos / mm"``, ``"pos_mm"``."""
+    if len(text) > LONGEST_NAME:  # no name, and patterns take long over it
+        return text, ""
     match = _BRACKETED.fullmatch(text)
     if match:
         return match["name"], (match["a"] or match["b"] or "").strip()

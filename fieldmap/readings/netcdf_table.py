@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import io
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Any, Final, cast
+from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
+import numpy.typing as npt
 
 from fieldmap.errors import InputError
 from fieldmap.readings.columns import Heading
+from fieldmap.readings.hdf5_guard import check_hdf5, most_bytes
 from fieldmap.units import quoted
 
 if TYPE_CHECKING:
@@ -23,10 +25,6 @@ __all__ = ["NetcdfTable", "is_netcdf", "open_netcdf"]
 
 _HDF5: Final = b"\x89HDF\r\n\x1a\n"
 _CLASSIC: Final = (b"CDF\x01", b"CDF\x02")
-# A small file may declare any number of values that it does not hold; what packs tighter than
-# this is no record of a measurement.
-_MOST_EXPANSION: Final = 100
-_SLACK: Final = 1_000_000  # bytes
 
 
 def is_netcdf(data: bytes) -> bool:
@@ -48,7 +46,7 @@ class NetcdfTable:
         names = {index: self.headings[index].text for index in indices}
         first = self.dataset[names[indices[0]]]
         for name in names.values():
-            self._check_shape(name, first)
+            self._check_shape(name, first, len(names))
         return {index: self._values(name) for index, name in names.items()}
 
     def place(self, row: int) -> str:
@@ -59,7 +57,14 @@ class NetcdfTable:
         """Say how such a file states the unit of a column."""
         return f"give the variable {quoted(name)} the attribute units = {unit!r}"
 
-    def _check_shape(self, name: str, first: xr.DataArray) -> None:
+    def first(self, name: str, count: int) -> npt.NDArray[Any]:
+        """Read the first values of a variable, of whatever type."""
+        try:
+            return np.asarray(self.dataset[name][:count].to_numpy())
+        except Exception as error:  # noqa: BLE001 - a damaged file may raise anything
+            raise _damaged(f"{self.file}, variable {quoted(name)}", error) from None
+
+    def _check_shape(self, name: str, first: xr.DataArray, columns: int) -> None:
         """Refuse variables that are not numbers along one common dimension."""
         variable, where = self.dataset[name], f"{self.file}, variable {quoted(name)}"
         if variable.dtype.kind not in "iuf":
@@ -68,7 +73,7 @@ class NetcdfTable:
             found = f"the dimension {quoted(str(variable.dims[0]))} of {variable.size}"
             expected = f"that of {quoted(str(first.name))}: {quoted(str(first.dims[0]))}"
             raise InputError(where, found, expected, "store all columns along one dimension")
-        if variable.size * 8 > self.size * _MOST_EXPANSION + _SLACK:
+        if variable.size * 8 * columns > most_bytes(self.size):
             found = f"{variable.size} values declared in a file of {self.size} bytes"
             raise InputError(where, found, "values that the file holds", "write the file again")
 
@@ -110,7 +115,7 @@ def open_netcdf(data: bytes, file: str) -> NetcdfTable:
     options = hdf5 if data.startswith(_HDF5) else {"engine": "scipy"}
     try:
         if options is hdf5:
-            _refuse_outside(data, file)
+            check_hdf5(data, file)
         dataset = xr.open_dataset(
             io.BytesIO(data),
             decode_times=False,
@@ -134,23 +139,6 @@ def _unit(variable: xr.Variable) -> str | None:
     """Units attribute of a variable."""
     unit = variable.attrs.get("units")
     return unit if isinstance(unit, str) else None
-
-
-def _refuse_outside(data: bytes, file: str) -> None:
-    """Refuse HDF5 that would read other files: external links, raw or virtual data."""
-    import h5py
-
-    with h5py.File(io.BytesIO(data), "r") as root:
-        for name in root:
-            link = root.get(name, getlink=True)
-            outside = isinstance(link, h5py.ExternalLink)
-            if not outside:
-                item = cast("object", root.get(name))
-                outside = isinstance(item, h5py.Dataset) and bool(item.external or item.is_virtual)
-            if outside:
-                where = f"{file}, variable {quoted(str(name))}"
-                remedy = "store the values in the file itself"
-                raise InputError(where, "data kept in another file", "values", remedy)
 
 
 def _damaged(where: str, error: Exception) -> InputError:

@@ -14,6 +14,8 @@ from fieldmap.readings.probe import Integrator, Probe, Stage
 if TYPE_CHECKING:
     from pathlib import Path
 
+    from fieldmap.readings.corrections import Correction
+
 __all__ = [
     "Axis",
     "Campaign",
@@ -63,6 +65,9 @@ class Pass:
         The file.
     sha256 : str
         Hash of the file.
+    corrections : tuple of Correction
+        Those that the arrays contain already; what is uncertain of them is estimated. They are
+        switched on by ``Campaign.corrections``.
     """
 
     name: str
@@ -78,6 +83,7 @@ class Pass:
     current: Floats | None = None
     source: Path | None = None
     sha256: str = ""
+    corrections: tuple[Correction, ...] = ()
 
 
 @dataclass(frozen=True)
@@ -242,6 +248,8 @@ class Campaign:
         The campaign file.
     sha256 : str
         Its hash.
+    corrections : tuple of Correction
+        What undoes faults of its passes, switched on by the user.
     """
 
     name: str
@@ -254,3 +262,4 @@ class Campaign:
     limits: tuple[Limit, ...] = ()
     path: Path | None = None
     sha256: str = ""
+    corrections: tuple[Correction, ...] = ()

@@ -13,6 +13,7 @@ from dataclasses import dataclass
 from typing import Any, Final, Literal
 
 from fieldmap.errors import InputError
+from fieldmap.readings.checks import LARGEST
 from fieldmap.units import quoted, si
 
 __all__ = [
@@ -46,6 +47,7 @@ _BOUNDS: Final[dict[Bound, tuple[Callable[[float], bool], str]]] = {
     "not zero": (lambda value: value != 0.0, "a value other than zero"),
 }
 _LONGEST_TEXT: Final = 200
+SMALLEST: Final = 1e-30  # nothing on a bench is smaller, and its square is still a number
 
 
 @dataclass(frozen=True)
@@ -177,13 +179,13 @@ def quantity(unit: str, bound: Bound = "any", remedy: str = "") -> Reader:
     return read
 
 
-def number(bound: Bound = "any") -> Reader:
+def number(bound: Bound = "any", remedy: str = "") -> Reader:
     """Read a bare number, such as the turns of a coil."""
 
     def read(raw: object, place: str) -> float:
         if isinstance(raw, bool) or not isinstance(raw, int | float):
             raise InputError(place, shown(raw), "a number", "write it without quotes and unit")
-        return _bounded(si(raw, "1", place), bound, shown(raw), place)
+        return _bounded(si(raw, "1", place), bound, shown(raw), place, remedy)
 
     return read
 
@@ -247,7 +249,7 @@ def span(unit: str) -> Reader:
         if not isinstance(raw, list) or len(raw) != 2:
             found = f"a list of {len(raw)}" if isinstance(raw, list) else shown(raw)
             raise InputError(place, found, expected)
-        lower, upper = si(raw[0], unit, place), si(raw[1], unit, place)
+        lower, upper = (quantity(unit)(one, place) for one in raw)
         if not lower < upper:
             found = f"[{shown(raw[0])}, {shown(raw[1])}]"
             raise InputError(place, found, "the smaller value first", "exchange or mend the two")
@@ -259,6 +261,9 @@ def span(unit: str) -> Reader:
 def _bounded(value: float, bound: Bound, found: str, place: str, remedy: str = "") -> float:
     """Give `value` if it keeps within the bound, or raise."""
     inside, expected = _BOUNDS[bound]
+    if value and not SMALLEST <= abs(value) <= LARGEST:
+        expected = f"zero or a size from {SMALLEST:g} to {LARGEST:g} in SI units"
+        raise InputError(place, found, expected, remedy or "mend the number or its unit")
     if not inside(value):
         raise InputError(place, found, expected, remedy)
     return value

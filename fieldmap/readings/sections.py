@@ -7,9 +7,12 @@ reference is a new entry of ``PROBES`` or ``REFERENCES``.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import partial
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any, Final
 
+from fieldmap.errors import InputError
+from fieldmap.readings.corrections import Correction
 from fieldmap.readings.passes import FlipReference, PointReference, ZeroReference
 from fieldmap.readings.probe import Coil, Wire
 from fieldmap.readings.records import SAMPLES
@@ -21,6 +24,7 @@ from fieldmap.readings.schema import (
     choice,
     number,
     quantity,
+    shown,
     span,
     text,
     whole,
@@ -31,6 +35,7 @@ if TYPE_CHECKING:
 
 __all__ = [
     "AXIS",
+    "CORRECTION_KINDS",
     "FORMAT",
     "INTEGRATOR",
     "KIND",
@@ -116,6 +121,7 @@ TOP: Final = (
     Key("passes", _raw(as_list), required=True),
     Key("references", _raw(as_list)),
     Key("limits", _raw(as_list)),
+    Key("corrections", _raw(as_list)),
 )
 
 MAGNET: Final = (
@@ -226,6 +232,55 @@ REFERENCES: Final[Mapping[str, Kind]] = MappingProxyType(
         "point": Kind(_POINT, PointReference),
         "zero": Kind(_ZERO, ZeroReference),
         "flip": Kind(_FLIP, FlipReference),
+    }
+)
+
+def _any_name(raw: object, place: str) -> str:
+    """Read the name of a pass, which need not come from a file: that it is one is seen later."""
+    if not isinstance(raw, str):
+        raise InputError(place, shown(raw), "the name of a pass", "write it in quotes")
+    return raw
+
+
+_OF_PASS: Final = Key("pass", _any_name, required=True, field="where")
+
+
+def _found(name: str, unit: str) -> tuple[Key, ...]:
+    """Keys of a correction by a quantity, and of its standard uncertainty."""
+    uncertain = Key(f"u_{name}", quantity(unit, "not negative"), field="u")
+    return _OF_PASS, Key(name, quantity(unit), required=True, field="value"), uncertain
+
+
+CORRECTION_KINDS: Final[Mapping[str, Kind]] = MappingProxyType(
+    {
+        "polarity": Kind((_OF_PASS,), partial(Correction, "polarity")),
+        "factor": Kind(
+            (
+                _OF_PASS,
+                Key(
+                    "factor",
+                    number("not zero", "leave the pass out instead"),
+                    required=True,
+                    field="value",
+                ),
+                Key("u_factor", number("not negative"), field="u"),
+            ),
+            partial(Correction, "factor"),
+        ),
+        "lag": Kind(_found("lag", "s"), partial(Correction, "lag")),
+        "shift": Kind(_found("shift", "m"), partial(Correction, "shift")),
+        "step": Kind(
+            (_OF_PASS, Key("at", quantity("s"), required=True, field="start")),
+            partial(Correction, "step"),
+        ),
+        "spikes": Kind(
+            (
+                _OF_PASS,
+                Key("from", quantity("s"), required=True, field="start"),
+                Key("to", quantity("s"), required=True, field="stop"),
+            ),
+            partial(Correction, "spikes"),
+        ),
     }
 )
 

@@ -6,13 +6,16 @@ import time
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final, NamedTuple
 
+from fieldmap.readings.netcdf_table import is_netcdf
+
 if TYPE_CHECKING:
     from collections.abc import Callable
     from pathlib import Path
 
 __all__ = ["Settling", "Stamp", "stamp_of"]
 
-TEXT: Final = frozenset({".csv", ".txt"})
+BINARY: Final = ".nc"
+HEAD: Final = 8  # bytes at the beginning of a file that tell NetCDF from text
 BREAKS: Final = (b"\n", b"\r")
 TAIL: Final = 64  # bytes at the end of a file by which it is known again
 WAIT: Final = "it has to stand still for a while"
@@ -140,7 +143,9 @@ def _why_unended(path: Path, stamp: Stamp, tail: bytes) -> str:
     """Why the end of a file is none."""
     if stamp.size == 0:
         return "it is empty"
-    if path.suffix.lower() not in TEXT or tail.endswith(BREAKS):
+    if tail.endswith(BREAKS) or path.suffix.lower() == BINARY:
+        return ""
+    if is_netcdf(_bytes_before(path, HEAD)):
         return ""
     return (
         "its last line has no end: it is being written, or the bench ended without a line break; "

@@ -13,10 +13,11 @@ from dataclasses import dataclass
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
-from fieldmap.atomic import replacing
+from fieldmap.atomic import is_folder, replacing
 from fieldmap.errors import InputError
 from fieldmap.readings.layout import QUANTITIES, read_layout
 from fieldmap.readings.tables import read_bytes
+from fieldmap.readings.toml_text import parse_toml
 from fieldmap.shipped import PACKAGE, demo_folder
 
 if TYPE_CHECKING:
@@ -139,7 +140,7 @@ def write_table_section(path: str | Path, raw: Mapping[str, Any]) -> str:
         A file that cannot be read or written, is no TOML or came with the kit.
     """
     path = Path(path).expanduser()
-    if path.is_dir():
+    if is_folder(path):
         path = path / "campaign.toml"
     _refuse_shipped(path)
     section = section_text(raw)
@@ -291,7 +292,7 @@ def _added(text: str, new: str, end: str) -> str:
 
 def _parsed(text: str, where: str) -> dict[str, Any]:
     try:
-        return tomllib.loads(text)
+        return parse_toml(text)
     except (ValueError, RecursionError) as error:
         found = f"text that is not TOML ({error})"
         raise InputError(where, found, "TOML", "mend it first; nothing was written") from None

@@ -196,6 +196,8 @@ def read_bytes(path: Path, name: str, most: int | None = None) -> bytes:
         if most is not None and size > most:
             raise InputError(name, f"{size} bytes", f"at most {most}", "choose another file")
         data = path.read_bytes()
+    except MemoryError:
+        raise InputError(name, "more bytes than the memory holds", "a smaller file") from None
     except (OSError, ValueError) as error:  # ValueError: a zero byte in the name
         reason = getattr(error, "strerror", None) or str(error)
         raise InputError(
@@ -299,7 +301,7 @@ def _preview_netcdf(data: bytes, name: str, rows: int) -> TablePreview:
     """Names and first values of the variables of a NetCDF file."""
     source = open_netcdf(data, name)
     names = [heading.text for heading in source.headings]
-    values = [source.dataset[text][:rows].to_numpy() for text in names]
+    values = [source.first(text, rows) for text in names]
     cells = itertools.zip_longest(*([str(value) for value in column] for column in values))
     shown = tuple(tuple(cell or "" for cell in row) for row in cells)
     labels = [f"{h.name} [{h.unit}]" if h.unit else h.name for h in source.headings]

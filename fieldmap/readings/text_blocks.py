@@ -89,6 +89,8 @@ def _read(body: Body, labels: Mapping[int, str], block: tuple[int, int]) -> dict
     data = _tidy(body.data[block[0] : block[1]], body)
     if not data:
         return {column: np.empty(0) for column in labels}
+    if b'"' in data and body.delimiter != " ":
+        data = _unquoted(data, body.delimiter)
     quoted = b'"' in data and body.delimiter != " "
     if quoted:
         # Quotes may hide delimiters, and the reader would let them hide newlines too.
@@ -126,6 +128,14 @@ def _tidy(data: bytes, body: Body) -> bytes:
         for word, spoilt in _TRUTH:
             data = data.replace(word, spoilt)
     return data.lstrip(body.blanks)
+
+
+def _unquoted(data: bytes, delimiter: str) -> bytes:
+    """Take the quotes off cells that hide nothing; where others are left, nothing is changed."""
+    sign = re.escape(delimiter.encode())
+    cell = rb"(?m)(?:^|(?<=%(sign)s))\"([^\"\n%(sign)s]*+)\"(?=%(sign)s|$)" % {b"sign": sign}
+    plain = re.sub(cell, rb"\1", data)
+    return data if b'"' in plain else plain
 
 
 def _is_even(data: bytes, body: Body, rows: int) -> bool:

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING, Final
 
 from fieldmap.errors import InputError
 from fieldmap.readings.columns import Heading, parse_heading
+from fieldmap.readings.last_line import check_last_line
 from fieldmap.readings.text_blocks import parse_rows
 from fieldmap.readings.text_lines import (
     LONGEST_LINE,
@@ -58,7 +59,10 @@ class TextTable:
 
     def read(self, indices: Sequence[int]) -> dict[int, Floats]:
         """Read columns by index; any cell that is not a number is an error with its line."""
-        return parse_rows(self.body, {i: self.headings[i].name or f"{i + 1}" for i in indices})
+        labels = {i: self.headings[i].name or f"{i + 1}" for i in indices}
+        columns = parse_rows(self.body, labels)
+        check_last_line(self.body, labels)
+        return columns
 
 
 def open_text(data: bytes, file: str, layout: TableLayout) -> TextTable:

@@ -6,10 +6,16 @@ import math
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
+from fieldmap.estimate.corrected import scale_of
 from fieldmap.estimate.dwell import dwell_of
 from fieldmap.estimate.dwell_noise import dwell_noise, jitter_seen
 from fieldmap.estimate.map import map_lines, map_passes
-from fieldmap.estimate.provenance import map_joint, map_stage, map_unknowns
+from fieldmap.estimate.provenance import (
+    map_corrections,
+    map_joint,
+    map_stage,
+    map_unknowns,
+)
 
 if TYPE_CHECKING:
     import xarray as xr
@@ -131,10 +137,13 @@ def _jittery(level: Level, jitter: float) -> Level:
 def _drift(fmap: xr.Dataset, line: int, name: str) -> tuple[float, float] | None:
     """Drift of a pass as the map found it; None where it is stated to be certain."""
     unknowns, joint = map_unknowns(fmap, line), map_joint(fmap, line)
+    # the map has the drift of the flux as corrected, the dwell that of the readings
+    scale = scale_of([each.correction for each in map_corrections(fmap)], name)
     for i, unknown in enumerate(unknowns, start=len(joint.values) - len(unknowns)):
         if (unknown.kind, unknown.where) == ("drift", name):
             u = math.sqrt(float(joint.covariance[i, i]))
-            return float(joint.values[i]) * unknown.sd, u * unknown.sd
+            unit = unknown.sd / scale
+            return float(joint.values[i]) * unit, u * abs(unit)
     return None
 
 

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
-from fieldmap.atomic import output_folder, replacing
+from fieldmap.atomic import new_folder, replacing_set
 from fieldmap.errors import InputError
 from fieldmap.estimate.map import map_axis
 from fieldmap.estimate.store import write_map
@@ -21,7 +21,7 @@ if TYPE_CHECKING:
     from fieldmap.magnet.results import Results
     from fieldmap.show.report.parts import Section
 
-__all__ = ["save_reduction"]
+__all__ = ["save_reduction", "write_reduction"]
 
 
 def save_reduction(
@@ -68,7 +68,7 @@ def save_reduction(
     >>> [file.name for file in files]
     ['map.nc', 'results.json', 'report.html']
     """
-    from fieldmap.show.report.page import FILE_NAME, report_of, write_report
+    from fieldmap.show.report.page import report_of
 
     if not _agree(evaluate(fmap, k=k, fringe=False), results):
         raise InputError(
@@ -78,19 +78,21 @@ def save_reduction(
             "give evaluate(fmap); set limits and tolerances in the campaign before it is stitched",
         )
     report = report_of(fmap, results, map_axis(fmap), k, extra)
-    place = output_folder(folder)
-    map_file, results_file, report_file = (
-        place / name for name in ("map.nc", "results.json", FILE_NAME)
-    )
-    with (
-        replacing(report_file) as report_aside,
-        replacing(results_file) as results_aside,
-        replacing(map_file) as map_aside,
-    ):
-        write_map(fmap, map_aside)
-        write_results(results, results_aside)
-        write_report(report, report_aside)
-    return map_file, results_file, report_file
+    return write_reduction(fmap, results, report, folder)
+
+
+def write_reduction(
+    fmap: xr.Dataset, results: Results, report: str, folder: str | os.PathLike[str]
+) -> tuple[Path, Path, Path]:
+    """Write the three files, which take their places together; nothing is checked."""
+    from fieldmap.show.report.page import FILE_NAME, write_report
+
+    names = "map.nc", "results.json", FILE_NAME
+    with new_folder(folder) as place, replacing_set(place, names) as asides:
+        write_map(fmap, asides[0])
+        write_results(results, asides[1])
+        write_report(report, asides[2])
+    return place / names[0], place / names[1], place / names[2]
 
 
 def _agree(own: Results, given: Results) -> bool:

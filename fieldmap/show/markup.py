@@ -153,10 +153,11 @@ def _row(row: ResultRow, columns: int) -> str:
 
 
 def _finding(finding: Finding) -> str:
-    place = escape(one_line(finding.where))
+    place, code = escape(one_line(finding.where)), escape(one_line(finding.code))
     where = f" <span>{place}</span>" if place else ""
     return (
-        f'<li class="fm-{escape(finding.severity)}" data-code="{escape(finding.code)}">'
-        f"<b>{SEVERITY_WORDS[finding.severity]}</b>{where}: {escape(one_line(finding.text))} "
-        f"<code>{escape(finding.code)}</code></li>"
+        f'<li class="fm-{escape(finding.severity)}" data-code="{code}">'
+        f"<b>{SEVERITY_WORDS[finding.severity]}</b>{where}: "
+        f"{escape(one_line(f'{finding.text} {finding.offer}'.rstrip()))} "
+        f"<code>{code}</code></li>"
     )

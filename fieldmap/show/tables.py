@@ -110,7 +110,8 @@ def findings_text(findings: Iterable[Finding]) -> str:
     for finding in worst_first(findings):
         place = one_line(finding.where)
         head = SEVERITY_WORDS[finding.severity] + (f", {place}" if place else "")
-        paragraphs.append(_wrapped(f"{head}: {one_line(finding.text)} [{finding.code}]"))
+        words = one_line(f"{finding.text} {finding.offer}".rstrip())
+        paragraphs.append(_wrapped(f"{head}: {words} [{finding.code}]"))
     return "\n".join(paragraphs) or "No findings."
 
 

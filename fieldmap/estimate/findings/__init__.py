@@ -2,6 +2,7 @@
 
 from fieldmap.estimate.findings.finding import Finding
 from fieldmap.estimate.findings.line import line_findings
-from fieldmap.estimate.findings.ranges import pass_findings
+from fieldmap.estimate.findings.measured import pass_findings
+from fieldmap.estimate.findings.switched import switched_findings
 
-__all__ = ["Finding", "line_findings", "pass_findings"]
+__all__ = ["Finding", "line_findings", "pass_findings", "switched_findings"]

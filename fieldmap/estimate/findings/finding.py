@@ -35,6 +35,17 @@ class Finding:
     text: str
     correction: Correction | None = None
 
+    @property
+    def offer(self) -> str:
+        """How to switch on the correction that it offers; empty without one."""
+        if self.correction is None:
+            return ""
+        return (
+            f"Offered correction: {self.correction.words}; switch it on by fieldmap reduce "
+            f"--correct {self.correction.where}, by its tick in the notebook, or in "
+            "[[corrections]]."
+        )
+
     def as_dict(self) -> dict[str, Any]:
         """The form used in results.json."""
         found = asdict(self)

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING
 
 import numpy as np
 
+from fieldmap.estimate.corrected import integrator_scale
 from fieldmap.estimate.findings.finding import Finding
 
 if TYPE_CHECKING:
@@ -13,11 +14,11 @@ if TYPE_CHECKING:
 
     from fieldmap.readings.passes import Pass
 
-__all__ = ["pass_findings"]
+__all__ = ["range_findings"]
 
 
-def pass_findings(passes: Sequence[Pass]) -> list[Finding]:
-    """Remarks that need no fit: ranges and settings.
+def range_findings(passes: Sequence[Pass]) -> list[Finding]:
+    """Remarks on ranges and settings that the campaign file states.
 
     Parameters
     ----------
@@ -31,7 +32,7 @@ def pass_findings(passes: Sequence[Pass]) -> list[Finding]:
     found = []
     for one in passes:
         full_scale = one.integrator.full_scale
-        largest = float(np.abs(one.flux).max())
+        largest = float(np.abs(one.flux / integrator_scale(one)).max())
         if full_scale is not None and largest >= full_scale:
             found.append(
                 Finding(
@@ -62,7 +63,8 @@ def _voltage(one: Pass) -> list[Finding]:
     step = np.diff(one.time)
     if limit is None or not np.any(step > 0):
         return []
-    rates = np.divide(np.diff(one.flux), step, out=np.zeros_like(step), where=step > 0)
+    rise = np.diff(one.flux) / integrator_scale(one)
+    rates = np.divide(rise, step, out=np.zeros_like(step), where=step > 0)
     largest = float(np.abs(rates).max())
     if largest < limit:
         return []

@@ -15,6 +15,7 @@ from scipy.sparse.linalg import splu
 from fieldmap.errors import InputError
 from fieldmap.estimate.fieldline import FieldLine
 from fieldmap.estimate.spline import DEGREE, UniformSpline
+from fieldmap.readings.checks import LARGEST
 from fieldmap.readings.layout import TableLayout
 from fieldmap.readings.netcdf_table import is_netcdf, open_netcdf
 from fieldmap.readings.tables import read_bytes
@@ -201,12 +202,11 @@ def _check(s: Floats, b: Floats, u: Floats, name: str, place: Callable[[int], st
     if len(s) < FEWEST:
         found = f"{len(s)} point{'' if len(s) == 1 else 's'}"
         raise InputError(name, found, f"at least {FEWEST}", "give the profile with more points")
-    bad = ~(np.isfinite(s) & np.isfinite(b) & np.isfinite(u))
+    bad = ~((np.abs(s) <= LARGEST) & (np.abs(b) <= LARGEST) & (np.abs(u) <= LARGEST))
     if bad.any():
-        found = "a value that is not a finite number"
-        raise InputError(
-            place(int(bad.argmax())), found, "finite numbers", "mend or delete the point"
-        )
+        found = "a value that is not a finite number, or far too large"
+        expected = f"finite numbers up to {LARGEST:g} in SI units"
+        raise InputError(place(int(bad.argmax())), found, expected, "mend or delete the point")
     if (u < 0).any():
         found = "a negative uncertainty"
         raise InputError(place(int((u < 0).argmax())), found, "zero or more", "mend the value")

@@ -45,6 +45,7 @@ FAINTEST: Final = 1e-3  # share of B0 below which the profile tells no exponent
 ROUNDS: Final = 40
 CONVERGED: Final = 1e-7  # decrease of chi-square still expected, relative
 FIRST_DAMPING: Final = 1e-3
+STILLEST: Final = 1e-30  # of the largest slope: a parameter that moves nothing stays where it is
 
 
 @dataclass(frozen=True, eq=False)
@@ -309,7 +310,9 @@ def _damped(
     """Least squares by damped Gauss-Newton steps in parameters of unit slope."""
     damping, (residual, slopes) = FIRST_DAMPING, misfit(theta)
     for _ in range(ROUNDS):
-        scale = 1 / np.maximum(np.linalg.norm(slopes, axis=0), np.finfo(float).tiny)
+        size = np.linalg.norm(slopes, axis=0)
+        moving = size > STILLEST * size.max(initial=0.0)
+        scale = np.divide(1.0, size, out=np.zeros_like(size), where=moving)
         basis, stretch, along = np.linalg.svd(slopes * scale, full_matrices=False)
         seen = basis.T @ residual
         if seen @ seen < CONVERGED * (1 + residual @ residual):

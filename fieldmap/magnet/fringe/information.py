@@ -69,7 +69,8 @@ class Whitened:
     def on(self, chosen: slice) -> Whitened:
         """Information on some of the unknowns, the others being anything at all."""
         others = np.delete(self.rows, chosen, axis=1)
-        basis, scale, _ = np.linalg.svd(others / np.linalg.norm(others, axis=0))
+        size = np.linalg.norm(others, axis=0)
+        basis, scale, _ = np.linalg.svd(others / np.where(size > 0, size, 1.0))
         told = int((scale > ROUNDING * scale.max(initial=0.0)).sum())
         free = basis[:, told:].T
         rows = free @ self.rows[:, chosen]

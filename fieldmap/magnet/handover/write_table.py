@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Final
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.netcdf import write_netcdf_file
 from fieldmap.magnet.handover.exported import one_line
 from fieldmap.version import __version__
 
@@ -81,7 +82,7 @@ def write_netcdf(table: ExportedTable, path: Path) -> None:
         **{str(name): {"_FillValue": float("nan")} for name in dataset.data_vars},
         **{str(name): {"_FillValue": None} for name in dataset.coords},
     }
-    dataset.to_netcdf(path, engine="h5netcdf", encoding=encoding)
+    write_netcdf_file(dataset, path, encoding)
 
 
 def _dataset(table: ExportedTable) -> xr.Dataset:

@@ -8,6 +8,7 @@ from fieldmap.show.panels.campaign import CampaignPanel, demo_campaigns
 from fieldmap.show.panels.figure import FigurePanel
 from fieldmap.show.panels.limits import LimitsPanel
 from fieldmap.show.panels.live import LivePanel
+from fieldmap.show.panels.offered import OffersPanel
 from fieldmap.show.panels.parts import column, hooked, put_on_page, remembered, titled
 from fieldmap.show.panels.passes import PassesPanel
 from fieldmap.show.panels.references import ReferencesPanel
@@ -47,6 +48,7 @@ class Panel:
         self.campaign = CampaignPanel(self.state)
         self.passes = PassesPanel(self.state)
         self.references = ReferencesPanel(self.state)
+        self.offers = OffersPanel(self.state)
         self.limits = LimitsPanel(self.state)
         self.results = ResultsPanel(self.state)
         self.figure = FigurePanel(self.state)
@@ -74,6 +76,7 @@ class Panel:
         return column(
             (
                 titled("Passes", (self.passes.widget,)),
+                self.offers.section,
                 titled("References", (self.references.widget,)),
                 titled("While measuring", (self.live.widget,)),
             ),

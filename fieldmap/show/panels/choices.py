@@ -7,21 +7,32 @@ from dataclasses import replace
 from typing import TYPE_CHECKING, Any, Final, Literal, NamedTuple
 
 from fieldmap.errors import InputError
-from fieldmap.show.panels.departures import reference_words, same_spans
+from fieldmap.readings.corrections import corrected
+from fieldmap.show.corrections import by_hand
+from fieldmap.show.panels.departures import departures, reference_words, same_spans
 
 if TYPE_CHECKING:
-    from fieldmap.readings.passes import Campaign
+    from collections.abc import Callable
+
+    import xarray as xr
+
+    from fieldmap.estimate.findings import Finding
+    from fieldmap.readings.corrections import Correction
+    from fieldmap.readings.passes import Axis, Campaign
     from fieldmap.show.panels.state import Reduction
 
-__all__ = ["NOTHING", "Choice", "changed", "remember_choices"]
+__all__ = ["NOTHING", "Choice", "KeptMaps", "changed", "remember_choices"]
+
+MAPS_KEPT: Final = 8
 
 
 class Choice(NamedTuple):
-    """What a map is made from: the campaign, and which of its passes and references."""
+    """What a map is made from: the campaign, which of its parts, and corrections by hand."""
 
     campaign: Campaign | None
     active: tuple[bool, ...]
     trusted: tuple[bool, ...]
+    corrections: tuple[Correction, ...] = ()
 
     @property
     def marks(self) -> tuple[int, ...]:
@@ -32,11 +43,23 @@ class Choice(NamedTuple):
         """The campaign with what is in use alone."""
         assert self.campaign is not None
         references = zip(self.campaign.references, self.trusted, strict=True)
+        passes = tuple(self.campaign.passes[i] for i in self.marks)
+        names = {one.name for one in passes}
+        made = corrected(self.campaign, self.corrections).corrections
         return replace(
             self.campaign,
-            passes=tuple(self.campaign.passes[i] for i in self.marks),
+            passes=passes,
             references=tuple(one for one, used in references if used),
+            corrections=tuple(one for one in made if one.where in names),
         )
+
+    def notes(self, axis: Axis, added: tuple[str, ...]) -> tuple[Finding, ...]:
+        """Every departure from the campaign file, with these limits and passes taken in."""
+        if self.campaign is None:
+            return ()
+        found = departures(self.campaign, self.active, self.trusted, axis, added)
+        used = {self.campaign.passes[i].name for i in self.marks}
+        return *found, *by_hand([one for one in self.corrections if one.where in used])
 
     @property
     def whole(self) -> bool:
@@ -47,13 +70,37 @@ class Choice(NamedTuple):
 NOTHING: Final = Choice(None, (), ())
 
 
+class KeptMaps(dict[Choice, "xr.Dataset"]):
+    """The maps of the last choices of one campaign."""
+
+    def __init__(self) -> None:
+        super().__init__()
+        self._spacing: float | None = None
+
+    def of(
+        self, wanted: Choice, solved: Callable[[Campaign, float | None], xr.Dataset]
+    ) -> xr.Dataset:
+        """The map of a choice, solved unless it was made before.
+
+        Once a knot spacing has been found good, what is left out does not change it.
+        """
+        if wanted not in self:
+            spacing = None if wanted.whole else self._spacing
+            self[wanted] = fmap = solved(wanted.reduced(), spacing)
+            if spacing is None:
+                self._spacing = float(fmap["knots"].values[..., 1].min())
+            if len(self) > MAPS_KEPT:
+                del self[next(iter(self))]
+        return self[wanted]
+
+
 def changed(flags: tuple[bool, ...], index: int, *, to: bool) -> tuple[bool, ...]:
     """Flags with one of them changed."""
     return (*flags[:index], to, *flags[index + 1 :])
 
 
 def remember_choices(state: Reduction) -> None:
-    """Name passes and references that are left out, limits and flat window, to be kept.
+    """Name what is left out, corrections switched on, limits and flat window, to be kept.
 
     They are set without solving: that is done once all are set.
     """
@@ -64,6 +111,11 @@ def remember_choices(state: Reduction) -> None:
         "references_off",
         lambda: _references_off(state),
         lambda value: _put_references_off(state, value),
+    )
+    state.remember(
+        "corrections",
+        lambda: [one.as_entry() for one in state.offers.ticked],
+        lambda value: state.offers.put(value, state.campaign),
     )
     keys: tuple[Literal["integrate", "flat"], ...] = ("integrate", "flat")
     for key in keys:

@@ -86,7 +86,8 @@ class PassesPanel(TickList):
             size = math.sqrt(facts["chi_square"] / max(facts["freedom"], 1.0))
             word = "look at it" if facts["name"] in warned else "fits"
             mark = "▲" if facts["name"] in warned else "●"
-            found[index] = (mark, f"{word}, residuals {size:.2f}")
+            made = ", corrected" if facts.get("corrections") else ""
+            found[index] = (mark, f"{word}, residuals {size:.2f}{made}")
         return found
 
 

@@ -6,7 +6,7 @@ import json
 import logging
 from typing import TYPE_CHECKING, Any, Final, NamedTuple
 
-from fieldmap.atomic import output_folder, replacing
+from fieldmap.atomic import new_folder, replacing
 from fieldmap.errors import FieldmapError
 from fieldmap.readings.schema import shown
 from fieldmap.readings.tables import read_bytes
@@ -158,8 +158,7 @@ class Settings:
         try:
             file = settings_file(campaign_file)
             whole = {"format": FORMAT, "campaign": str(campaign_file.resolve()), **kept}
-            output_folder(file.parent)
-            with replacing(file) as aside:
+            with new_folder(file.parent), replacing(file) as aside:
                 aside.write_text(json.dumps(whole, indent=1) + "\n", encoding="utf-8")
         except (FieldmapError, OSError) as error:
             return f"Settings are not kept: {error}"

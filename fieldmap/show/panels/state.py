@@ -11,15 +11,17 @@ from __future__ import annotations
 from pathlib import Path
 from typing import TYPE_CHECKING, Any, Final
 
+from fieldmap.atomic import is_folder
 from fieldmap.errors import FieldmapError
 from fieldmap.estimate.map import map_lines, with_axis
 from fieldmap.estimate.stitch import stitch
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.readings.campaign import load
 from fieldmap.readings.passes import Campaign
-from fieldmap.show.panels.choices import NOTHING, Choice, changed, remember_choices
-from fieldmap.show.panels.departures import check_order, departures
+from fieldmap.show.panels.choices import NOTHING, Choice, KeptMaps, changed, remember_choices
+from fieldmap.show.panels.departures import check_order
 from fieldmap.show.panels.desk import Desk, Listener, Topic
+from fieldmap.show.panels.offers import Offers
 from fieldmap.show.panels.settings import Settings
 from fieldmap.show.panels.shown import Shown
 
@@ -37,7 +39,6 @@ if TYPE_CHECKING:
 
 __all__ = ["Listener", "Reduction", "Topic"]
 
-MAPS_KEPT: Final = 8
 CAMPAIGN_FILE: Final = "campaign.toml"
 
 
@@ -57,6 +58,8 @@ class Reduction(Desk):
         What is open.
     active, trusted : tuple of bool
         Which of its passes and which of its references are in use.
+    offers : Offers
+        Corrections that findings offer, and those switched on by hand.
     axis : Axis or None
         Limits of integration and flat window in use.
     fmap : xarray.Dataset or None
@@ -95,6 +98,7 @@ class Reduction(Desk):
         self.campaign: Campaign | None = None
         self.active: tuple[bool, ...] = ()
         self.trusted: tuple[bool, ...] = ()
+        self.offers = Offers()
         self.axis: Axis | None = None
         self.fmap: xr.Dataset | None = None
         self.profiles: list[FieldLine] = []
@@ -103,8 +107,7 @@ class Reduction(Desk):
         self.notice = ""
         self.added: tuple[str, ...] = ()
         self._mapped = NOTHING
-        self._maps: dict[Choice, xr.Dataset] = {}
-        self._spacing: float | None = None
+        self._maps = KeptMaps()
         self._errors.clear()
 
     @property
@@ -114,14 +117,12 @@ class Reduction(Desk):
 
     @property
     def _choice(self) -> Choice:
-        return Choice(self.campaign, self.active, self.trusted)
+        return Choice(self.campaign, self.active, self.trusted, self.offers.ticked)
 
     @property
     def passes(self) -> tuple[Pass, ...]:
         """The passes in use."""
-        if self.campaign is None:
-            return ()
-        return tuple(self.campaign.passes[i] for i in self.marks)
+        return tuple(self.campaign.passes[i] for i in self.marks) if self.campaign else ()
 
     @property
     def marks(self) -> tuple[int, ...]:
@@ -181,16 +182,20 @@ class Reduction(Desk):
         with self.lock:
             if 0 <= index < len(self.active) and self.active[index] != used:
                 self.active = changed(self.active, index, to=used)
-                self.solve()
-                self.keep()
+                self._solve_and_keep()
 
     def trust(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
         """Use a reference, or leave it out, and solve again; as for `use`."""
         with self.lock:
             if 0 <= index < len(self.trusted) and self.trusted[index] != used:
                 self.trusted = changed(self.trusted, index, to=used)
-                self.solve()
-                self.keep()
+                self._solve_and_keep()
+
+    def correct(self, index: int, used: bool) -> None:  # noqa: FBT001 - the value of a checkbox
+        """Switch an offered correction on, or off again, and solve; as for `use`."""
+        with self.lock:
+            if self.offers.tick(index, to=used):
+                self._solve_and_keep()
 
     def move(
         self,
@@ -239,8 +244,7 @@ class Reduction(Desk):
                 self._tell("passes")
             self.added = added
             self._errors.clear()
-            self.solve()
-            self.keep()
+            self._solve_and_keep()
 
     def reset(self) -> None:
         """Everything as in the file, and nothing kept."""
@@ -255,6 +259,10 @@ class Reduction(Desk):
             else:
                 self._evaluate()
             self.keep()
+
+    def _solve_and_keep(self) -> None:
+        self.solve()
+        self.keep()
 
     def solve(self) -> None:
         """Make the map of what is in use, and evaluate it."""
@@ -281,10 +289,7 @@ class Reduction(Desk):
     @property
     def notes(self) -> tuple[Finding, ...]:
         """Every departure from the campaign file that what is shown rests on."""
-        campaign, active, trusted = self._mapped
-        if campaign is None or self.axis is None:
-            return ()
-        return tuple(departures(campaign, active, trusted, self.axis, self.added))
+        return () if self.axis is None else self._mapped.notes(self.axis, self.added)
 
     def _open(self, source: str | os.PathLike[str] | Campaign, tell: Tell) -> None:
         if self._try("reading the campaign", lambda: self._read(source, tell)):
@@ -297,7 +302,7 @@ class Reduction(Desk):
                 self.source, campaign = source.path, source
             else:
                 path = Path(source).expanduser()
-                self.source = path / CAMPAIGN_FILE if path.is_dir() else path
+                self.source = path / CAMPAIGN_FILE if is_folder(path) else path
                 campaign = load(path, tell=tell)
             self._go_on()
             with self.lock:
@@ -316,9 +321,9 @@ class Reduction(Desk):
         self.campaign, self.axis = campaign, campaign.axis if first else self._axis_of(campaign)
         self.active = (True,) * len(campaign.passes)
         self.trusted = (True,) * len(campaign.references)
+        self.offers = Offers()
         self.source = campaign.path
-        self._maps.clear()
-        self._spacing = None
+        self._maps = KeptMaps()
         if first:
             self._restore_kept()
 
@@ -357,30 +362,20 @@ class Reduction(Desk):
             if not self.background:
                 self.fmap = self.results = None
         found: list[xr.Dataset] = []
-        self._try("solving", lambda: found.append(self._map_of(wanted, tell)))
+
+        def solved(campaign: Campaign, spacing: float | None) -> xr.Dataset:
+            return stitch(campaign, knot_spacing=spacing, tell=tell)
+
+        self._try("solving", lambda: found.append(self._maps.of(wanted, solved)))
         with self.lock:
             self._go_on()  # under the lock: nobody asks for another one now
             self.fmap = found[0] if found else None
             self.profiles = map_lines(found[0]) if found else []
             self._mapped = wanted if found else NOTHING
+            if found and wanted.campaign is not None:
+                self.offers.see(found[0], wanted.campaign)
             self._tell("map")
             self._evaluate()
-
-    def _map_of(self, wanted: Choice, tell: Tell) -> xr.Dataset:
-        """The map of a choice, or the one made before."""
-        if wanted not in self._maps:
-            self._maps[wanted] = self._stitched(wanted, tell)
-            if len(self._maps) > MAPS_KEPT:
-                del self._maps[next(iter(self._maps))]
-        return self._maps[wanted]
-
-    def _stitched(self, wanted: Choice, tell: Tell) -> xr.Dataset:
-        """Solve; once a knot spacing has been found good, what is left out does not change it."""
-        spacing = None if wanted.whole else self._spacing
-        fmap = stitch(wanted.reduced(), knot_spacing=spacing, tell=tell)
-        if spacing is None:
-            self._spacing = float(fmap["knots"].values[..., 1].min())
-        return fmap
 
     def _evaluate(self) -> None:
         self.results = None

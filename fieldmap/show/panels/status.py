@@ -108,6 +108,8 @@ def _status(state: Reduction) -> str:
     words = f"Solved: {used} of {there} passes in use."
     if not all(state.trusted):
         words += f" {sum(state.trusted)} of {len(state.trusted)} references in use."
+    if made := len(state.offers.ticked):
+        words += f" {made} offered correction{'' if made == 1 else 's'} switched on."
     return f'<div role="status" class="fm-ready">{words}{notice}</div>'
 
 

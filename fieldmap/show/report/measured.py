@@ -12,6 +12,7 @@ from fieldmap.estimate.provenance import (
     map_stage,
 )
 from fieldmap.readings.probe import Wire
+from fieldmap.show.corrections import HEAD, correction_rows
 from fieldmap.show.numbers import plain, scale_for
 from fieldmap.show.report.parts import Column, Section, paragraph, safe, table
 from fieldmap.show.stated import in_handy_unit, stated_rows, written_out
@@ -24,7 +25,7 @@ if TYPE_CHECKING:
     from fieldmap.readings.passes import Axis
     from fieldmap.readings.probe import Probe
 
-__all__ = ["measured_section", "passes_section"]
+__all__ = ["corrections_sections", "measured_section", "passes_section"]
 
 _INSTRUMENTS: Final = (
     Column("Instrument"),
@@ -177,6 +178,35 @@ def passes_section(fmap: xr.Dataset) -> Section:
         "Passes",
         table("Passes of the probes", columns, rows, css="passes") + paragraph(note, "remark"),
     )
+
+
+def corrections_sections(fmap: xr.Dataset) -> list[Section]:
+    """The corrections that the user switched on, if there are any.
+
+    Parameters
+    ----------
+    fmap : xarray.Dataset
+        From `stitch` or `load_map`.
+
+    Returns
+    -------
+    list of Section
+    """
+    rows = correction_rows(fmap)
+    if not rows:
+        return []
+    words, numbers = HEAD[:2], HEAD[2:4]
+    columns = [
+        *(Column(head) for head in words),
+        *(Column(head, "number") for head in numbers),
+        Column(HEAD[4]),
+    ]
+    note = (
+        "Each undoes a fault of one pass. What is found of it comes from all passes together, and "
+        "its standard uncertainty u is part of every result."
+    )
+    body = table("Faults of single passes that were corrected", columns, rows)
+    return [Section("Corrections switched on", body + paragraph(note, "remark"))]
 
 
 def _pass(one: Mapping[str, Any], read: float, walk: float, *, several: bool) -> tuple[str, ...]:

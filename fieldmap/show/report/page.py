@@ -11,14 +11,18 @@ import itertools
 from pathlib import Path
 from typing import TYPE_CHECKING, Final
 
-from fieldmap.atomic import output_folder, replacing
+from fieldmap.atomic import is_folder, new_folder, replacing
 from fieldmap.estimate.map import map_axis, map_limits, map_title
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.show.cautions import caution_html
 from fieldmap.show.markup import findings_html
 from fieldmap.show.report.evidence import SIGNATURES, provenance_section, trust_section
 from fieldmap.show.report.lines import line_parts, residuals_part
-from fieldmap.show.report.measured import measured_section, passes_section
+from fieldmap.show.report.measured import (
+    corrections_sections,
+    measured_section,
+    passes_section,
+)
 from fieldmap.show.report.parts import Section, safe
 from fieldmap.show.report.results import head, verdicts_section
 from fieldmap.show.rows import line_title
@@ -93,6 +97,7 @@ def report_of(
     pieces: list[Section | str] = [
         measured_section(fmap, axis),
         Section(passes.title, passes.html + residuals_part(fmap, axis, next(names))),
+        *corrections_sections(fmap),
         *_results_sections(fmap, results, axis, k, names),
         *extra,
         Section("Findings", findings_html(results.findings)),
@@ -189,10 +194,9 @@ def save_report(
     """
     text = report_html(fmap, axis=axis, k=k, extra=extra)
     place = Path(path)
-    named = place.suffix.lower() in {".html", ".htm"} and not place.is_dir()
+    named = place.suffix.lower() in {".html", ".htm"} and not is_folder(place)
     file = place if named else place / FILE_NAME
-    output_folder(file.parent)
-    with replacing(file) as aside:
+    with new_folder(file.parent), replacing(file) as aside:
         write_report(text, aside)
     return file
 

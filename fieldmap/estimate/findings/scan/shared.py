@@ -1,0 +1,72 @@
+"""What would be wrong in several passes alike: directions of travel, a probe's size or window."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Literal
+
+import numpy as np
+import numpy.typing as npt
+
+from fieldmap.estimate.findings.scan.signatures import field_steps, slope
+from fieldmap.readings.probe import Coil
+
+if TYPE_CHECKING:
+    from collections.abc import Iterator
+
+    from fieldmap.estimate.solved import Solved
+
+__all__ = ["shared_signatures"]
+
+Floats = npt.NDArray[np.float64]
+SharedKind = Literal["lag", "backlash", "window", "gain"]
+
+
+def shared_signatures(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Floats]]]:
+    """Signatures of what the campaign states to be certain: where it is not, it is an unknown.
+
+    Parameters
+    ----------
+    solved : Solved
+        The line.
+
+    Yields
+    ------
+    kind : str
+        "lag" (s), "backlash" (m), "window" or "gain" (relative).
+    columns : dict of int to (n, 1) array
+        Increments for one unit of it, by pass, V s.
+    """
+    yield from _of_stage(solved)
+    probes = {model.one.probe.name for model in solved.models}
+    for name in sorted(probes):
+        own = [i for i, model in enumerate(solved.models) if model.one.probe.name == name]
+        if solved.state.index("gain", name) is None:
+            yield "gain", {n: field_steps(solved, n, solved.state.b)[:, None] for n in own}
+        coil = isinstance(solved.models[own[0]].one.probe, Coil)
+        if coil and solved.state.index("window", name) is None:
+            yield "window", {n: _widening(solved, n) for n in own}
+
+
+def _of_stage(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Floats]]]:
+    """A lag and a backlash, as far as they tell one pass from another."""
+    moved = {
+        n: (slope(solved, n, solved.state.b), model.bins) for n, model in enumerate(solved.models)
+    }
+    if solved.state.index("lag") is None:
+        speed = solved.frame.speed
+        yield (
+            "lag",
+            {n: np.diff(s * (bins.speed - speed))[:, None] for n, (s, bins) in moved.items()},
+        )
+    if solved.state.index("backlash") is None:
+        sense = solved.frame.sense
+        yield (
+            "backlash",
+            {n: np.diff(s * (bins.sense - sense) / 2)[:, None] for n, (s, bins) in moved.items()},
+        )
+
+
+def _widening(solved: Solved, number: int) -> Floats:
+    """Increments if the window is longer by its own length."""
+    model = solved.models[number]
+    return np.asarray(model.gain(solved.state) * (model.widening() @ solved.state.b))[:, None]
