@@ -386,4 +386,4 @@ def test_trials_of_a_corrected_campaign_confirm_it(kind):
     found = confirm(campaign, stitched(campaign), trials=TRIALS, workers=1)
     assert not found.refusals
     for key in KEYS:
-        assert 0.65 < found[key].spread / found[key].u < 1.35, key
+        assert 0.65 < found[key].ratio < 1.35, key

@@ -9,7 +9,7 @@ import pytest
 
 from fieldmap.bench.bench_errors import Noise
 from fieldmap.bench.faults import FAULTS, SEVERITIES, Setting, inject
-from fieldmap.bench.faults.assumptions import assumptions
+from fieldmap.estimate.findings.assumed import assumptions
 from fieldmap.bench.faults.ideal import Observer
 from fieldmap.bench.faults.table import table_of
 from fieldmap.bench.response import flux

@@ -24,6 +24,7 @@ from fieldmap.estimate.store import load_map, save_map
 from fieldmap.magnet.budget import budget
 from fieldmap.magnet.comparison import compare
 from fieldmap.magnet.comparison.design_profile import read_design
+from fieldmap.readings import text_table
 from fieldmap.readings.guess import guess_table
 from fieldmap.readings.layout import TableLayout, read_layout
 from fieldmap.readings.tables import preview_table, read_table
@@ -286,6 +287,14 @@ def test_quoted_cells_are_read_as_quickly_as_plain_ones(tmp_path):
     hidden = read_table(put(tmp_path, HEAD.strip() + ",note\n" + '0,0,0,"a,b"\n' * 4))
     assert hidden.samples.tolist() == [0.0] * 4
     assert "closed quotes" in refused(read_table, put(tmp_path, HEAD + '0,"0\n1,1",1\n' + ROWS))
+
+
+def test_text_is_told_from_other_bytes_piece_by_piece(monkeypatch):
+    monkeypatch.setattr(text_table, "_PIECE", 3)
+    whole = "aé𝔘b𝔘𝔘".encode()
+    assert text_table.plain_text(whole, "t.csv") == whole
+    assert "line 1: found the byte 0xff" in refused(text_table.plain_text, b"ab\xff", "t.csv")
+    assert "which is not UTF-8" in refused(text_table.plain_text, whole[:-1], "t.csv")
 
 
 # --- NetCDF and HDF5

@@ -20,6 +20,7 @@ from fieldmap.estimate.condition import NONE, check_digits, lost, undetermined
 from fieldmap.estimate.coverage import check_density, check_levels, stretches
 from fieldmap.estimate.findings import (
     Finding,
+    assumed_findings,
     line_findings,
     pass_findings,
     switched_findings,
@@ -110,6 +111,7 @@ def stitch(
     remarks = [
         *pass_findings(recorded, campaign.magnet.current),
         *switched_findings(recorded),
+        *assumed_findings(campaign),
     ]
     return build_map(campaign, lines, remarks, step)
 
@@ -232,9 +234,7 @@ def _fit_one(
     check_levels(stretches(passes, slack=2 * chosen), references)
     check_density(passes, gap)
 
-    def fit(
-        width: float, like: LineFit | None = None, passes: Sequence[Pass] = passes
-    ) -> LineFit:
+    def fit(width: float, like: LineFit | None = None, passes: Sequence[Pass] = passes) -> LineFit:
         knots = knots_for(every, low, high, width)
         texture = grain(gap, low, high)
         current = campaign.magnet.current

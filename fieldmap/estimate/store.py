@@ -78,7 +78,8 @@ def load_map(path: str | os.PathLike[str]) -> xr.Dataset:
     Raises
     ------
     InputError
-        Not there, or not such a map.
+        Not there, not such a map, or changed since it was written: a map holds the hash of all
+        that it says, so that a torn bit gives a sentence and no other number.
     """
     source = Path(path)
     settle(source.parent)

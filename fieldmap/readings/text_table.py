@@ -6,6 +6,7 @@ are parsed in ``text_blocks``.
 
 from __future__ import annotations
 
+import codecs
 import csv
 import re
 from dataclasses import dataclass
@@ -33,6 +34,7 @@ if TYPE_CHECKING:
 __all__ = ["TextTable", "open_text", "plain_text"]
 
 _MOST_COLUMNS: Final = 10_000
+_PIECE: Final = 1_000_000  # bytes
 # Comment lines and blank lines; what it has matched it does not look at again.
 _REMARKS: Final = re.compile(rb"(?:[ \t]*+(?:#[^\n]*+)?+(?:\n|\Z))*+")
 
@@ -129,7 +131,7 @@ def plain_text(data: bytes, file: str) -> bytes:
         found = f"binary data (a zero byte at offset {null})"
         raise InputError(file, found, "a table in text or NetCDF", remedy)
     data = data.removeprefix(b"\xef\xbb\xbf")
-    if not data.isascii():
+    if not (data.isascii() or _is_utf8(data)):
         try:
             data.decode()
         except UnicodeDecodeError as error:
@@ -139,6 +141,18 @@ def plain_text(data: bytes, file: str) -> bytes:
     if b"\r" in data:
         data = data.replace(b"\r\n", b"\n").replace(b"\r", b"\n")
     return data
+
+
+def _is_utf8(data: bytes) -> bool:
+    """Tell UTF-8 piece by piece: the text of a whole file can take four times its bytes."""
+    decoder = codecs.getincrementaldecoder("utf-8")()
+    try:
+        for start in range(0, len(data), _PIECE):
+            decoder.decode(data[start : start + _PIECE])
+        decoder.decode(b"", final=True)
+    except UnicodeDecodeError:
+        return False
+    return True
 
 
 def _skip(data: bytes, count: int) -> int:

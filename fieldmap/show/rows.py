@@ -7,6 +7,7 @@ from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any, Final
 
 from fieldmap.errors import InputError
+from fieldmap.estimate.findings.assumed import ASSUMED
 from fieldmap.readings.sections import RESULT_UNITS
 from fieldmap.show.numbers import Scale, like, plain, rounded, scale_for
 from fieldmap.units import scale_to_si
@@ -125,9 +126,10 @@ def line_title(line: LineResults) -> str:
 
 
 def worst_first(findings: Iterable[Finding]) -> list[Finding]:
-    """Refusals, then warnings, then notes."""
+    """Refusals, then warnings, then notes; what is assumed of any campaign stands elsewhere."""
     order = list(SEVERITY_WORDS)
-    return sorted(findings, key=lambda finding: order.index(finding.severity))
+    said = [finding for finding in findings if finding.code != ASSUMED]
+    return sorted(said, key=lambda finding: order.index(finding.severity))
 
 
 def result_rows(

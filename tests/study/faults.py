@@ -16,6 +16,7 @@ A campaign is drawn and reduced without a fault once; each fault is then put int
 from __future__ import annotations
 
 import argparse
+import itertools
 import json
 import math
 import os
@@ -25,7 +26,7 @@ import zlib
 from collections import Counter
 from concurrent.futures import ProcessPoolExecutor, as_completed
 from dataclasses import dataclass
-from functools import lru_cache
+from functools import lru_cache, partial
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -48,6 +49,7 @@ if TYPE_CHECKING:
     from fieldmap.readings import Campaign
 
 FIRST_SEED = 2000
+LONGEST = 24.0  # gaps: longer lines take too long to be solved ten thousand times
 LIMIT = 60.0  # s of processor time for one trial: a kit that takes longer hangs
 NO_PLACE = "no place"  # a kind that a campaign cannot have: counted nowhere
 COLUMNS = (
@@ -204,30 +206,45 @@ def run(
     done = {one.key for one in kept}
     wanted = [("none", 0), *((fault, severity) for fault in faults for severity in severities)]
     tasks = []
-    for seed in range(first_seed, first_seed + each):
-        for draw in draws:
-            left = [one for one in wanted if (*one, draw, seed) not in done]
-            tasks += [(draw, seed, left, out)] if left else []
+    for draw, seed in _rounds(each, first_seed, tuple(draws)):
+        left = [one for one in wanted if (*one, draw, seed) not in done]
+        tasks += [(draw, seed, left, out)] if left else []
     for made in _streamed(tasks, workers):
         kept += made
     return kept
+
+
+def _rounds(each: int, first_seed: int, draws: tuple[str, ...]) -> Iterator[tuple[str, int]]:
+    """`each` short campaigns of every kind, one of each kind after the other."""
+    short = {draw: filter(partial(_is_short, draw), itertools.count(first_seed)) for draw in draws}
+    for _ in range(each):
+        for draw in draws:
+            yield draw, next(short[draw])
+
+
+def _is_short(draw: str, seed: int) -> bool:
+    """Whether a campaign is quickly solved: its line is not too many gaps long."""
+    campaign, _ = draw_campaign(draw, seed)
+    ends = [(one.position.min(), one.position.max()) for one in campaign.passes]
+    length = max(high for _, high in ends) - min(low for low, _ in ends)
+    return bool(length < LONGEST * campaign.magnet.gap)
 
 
 def _streamed(tasks: list, workers: int) -> Iterator[list[Trial]]:
     """The tasks' trials as they come."""
     began = time.monotonic()
     if workers == 1:
-        for count, task in enumerate(tasks, 1):
+        for number, task in enumerate(tasks, 1):
             yield run_draw(*task)
-            _tell(count, len(tasks), began)
+            _tell(number, len(tasks), began)
         return
     os.environ["OMP_NUM_THREADS"] = "1"  # for the workers: they share the cores
     os.environ["OPENBLAS_NUM_THREADS"] = "1"
     with ProcessPoolExecutor(workers) as pool:
         waiting = [pool.submit(run_draw, *task) for task in tasks]
-        for count, task in enumerate(as_completed(waiting), 1):
+        for number, task in enumerate(as_completed(waiting), 1):
             yield task.result()
-            _tell(count, len(tasks), began)
+            _tell(number, len(tasks), began)
 
 
 def _tell(count: int, of: int, began: float) -> None:

@@ -6,6 +6,7 @@ from typing import TYPE_CHECKING, Final
 
 import numpy as np
 
+from fieldmap.estimate.findings import ASSUMED
 from fieldmap.estimate.map import map_lines, map_magnet, map_passes, map_title
 from fieldmap.estimate.provenance import map_joint, map_unknowns
 from fieldmap.magnet.budget import UNKNOWN_CAUSES
@@ -65,7 +66,8 @@ def trust_section(fmap: xr.Dataset, results: Results) -> Section:
         "Errors of different causes are independent of each other and normally distributed.",
         "Between the readings the field is as smooth as the readings show it to be.",
     )
-    listed = "".join(paragraph(one) for one in points)
+    assumed = [one.text for one in results.findings if one.code == ASSUMED]
+    listed = "".join(paragraph(one) for one in (*points, *assumed))
     tables = "".join(
         _unknowns(fmap, i, f": {line_title(line)}" if len(results.lines) > 1 else "")
         for i, line in enumerate(results.lines)

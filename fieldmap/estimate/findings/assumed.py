@@ -4,12 +4,15 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING
 
+from fieldmap.estimate.findings.finding import Finding
 from fieldmap.readings.passes import FlipReference, PointReference
 
 if TYPE_CHECKING:
     from fieldmap.readings.passes import Campaign, Pass, PlannedPass
 
-__all__ = ["assumptions"]
+__all__ = ["ASSUMED", "assumed_findings", "assumptions"]
+
+ASSUMED = "assumed"
 
 
 def assumptions(campaign: Campaign) -> tuple[str, ...]:
@@ -62,3 +65,10 @@ def assumptions(campaign: Campaign) -> tuple[str, ...]:
             "drift and its positions; a pass back tells."
         )
     return tuple(said)
+
+
+def assumed_findings(campaign: Campaign) -> list[Finding]:
+    """The same as notes, so that they stand in the map, in results.json and in the report."""
+    return [
+        Finding(ASSUMED, "note", "", f"Assumed: {sentence}") for sentence in assumptions(campaign)
+    ]
