@@ -465,6 +465,7 @@ def test_the_digest_sees_every_part(seeds):
         ("lines", lambda facts: facts[0].update(unknowns=None)),
         ("lines", lambda facts: facts[0].update(references=[99])),
         ("lines", lambda facts: facts[0]["unknowns"][0].update(sd=0)),
+        ("lines", lambda facts: facts[0]["unknowns"][0].update(kind="drift", where="no.csv")),
         ("passes", lambda facts: facts[0].update(readings=1.5)),
         ("passes", lambda facts: facts[0].update(walk_noise=1e400)),
         ("findings", lambda facts: facts.append({"code": 1})),

@@ -172,6 +172,9 @@ def _check_sense(campaign: Mapping[str, Any], facts: Mapping[str, Any]) -> None:
     for name, key in (("probe", "probes"), ("integrator", "integrators")):
         names = {one["name"] for one in campaign[key]}  # none in a map that was made by hand
         _require(not names or all(one[name] in names for one in facts["passes"]), "passes")
+    scans = {one["name"] for one in facts["passes"]}
+    drifts = [u for line in facts["lines"] for u in line["unknowns"] if u["kind"] == "drift"]
+    _require(all(one["where"] in scans for one in drifts), "lines")
     count = len(campaign["references"])
     for line in facts["lines"]:
         _require(all(1 <= number <= count for number in line["references"]), "lines")

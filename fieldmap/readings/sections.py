@@ -235,6 +235,7 @@ REFERENCES: Final[Mapping[str, Kind]] = MappingProxyType(
     }
 )
 
+
 def _any_name(raw: object, place: str) -> str:
     """Read the name of a pass, which need not come from a file: that it is one is seen later."""
     if not isinstance(raw, str):

@@ -30,7 +30,7 @@ import numpy as np
 
 SLOWEST = 10.0  # s of the processor
 IDLE = 30.0  # s by the clock, beside other work of the machine
-DEAD = 40.0  # s without a word from a worker
+DEAD = 120.0  # s without a word from a worker
 ALONE = "FIELDMAP_FUZZ_KIND"
 MEMORY = 4  # times the file
 BASE = 250_000_000  # bytes beside that: a solve, a figure, a library that is loaded
@@ -227,11 +227,11 @@ def _supervised(seed: int, numbers: range, end: float) -> list[dict]:
     """Run workers over a share of the inputs until all have been tried."""
     found: list[dict] = []
     while numbers:
-        told, at, kind = _one_worker(seed, numbers, end)
+        told, at, kind, code = _one_worker(seed, numbers, end)
         found += told
         if at is None:
             break
-        why = "the process died or stood still"
+        why = f"the process stood still or died (exit {code})"
         found.append(
             {"kind": kind, "number": at, "outcome": "harm", "why": why, "seconds": 0, "memory": 0}
         )
@@ -239,7 +239,7 @@ def _supervised(seed: int, numbers: range, end: float) -> list[dict]:
     return found
 
 
-def _one_worker(seed: int, numbers: range, end: float) -> tuple[list[dict], int | None, str]:
+def _one_worker(seed: int, numbers: range, end: float) -> tuple[list[dict], int | None, str, int]:
     """Lines of one worker; the input at which it died or stood still."""
     command = [sys.executable, "-m", "tests.study.fuzz", "--seed", str(seed), "--work"]
     command += [f"{numbers.start}:{numbers.stop}:{numbers.step}"]
@@ -265,7 +265,7 @@ def _one_worker(seed: int, numbers: range, end: float) -> tuple[list[dict], int 
             if heard[0] > end:
                 worker.kill()
                 over.set()
-                return told, None, ""
+                return told, None, "", 0
             one = json.loads(line)
             if "begins" in one:
                 open_at[:] = [(one["begins"], one["kind"])]
@@ -275,11 +275,11 @@ def _one_worker(seed: int, numbers: range, end: float) -> tuple[list[dict], int 
         over.set()
         worker.wait()
     if open_at:
-        return told, *open_at[0]
+        return told, *open_at[0], worker.returncode
     left = told[-1]["number"] + numbers.step if told else numbers.start
     if left < numbers.stop:
-        return told, left, chosen(seed, left)[0]
-    return told, None, ""
+        return told, left, chosen(seed, left)[0], worker.returncode
+    return told, None, "", 0
 
 
 def table(tally: Tally) -> str:

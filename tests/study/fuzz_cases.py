@@ -104,7 +104,7 @@ def same(got, wanted, what: str) -> None:
 
 def number_of(text: str) -> float | None:
     """A quantity such as "30 mm" in SI, where the unit is one of a few; None otherwise."""
-    match = re.fullmatch(r"\s*(\S+)\s*(.*?)\s*", str(text))
+    match = re.fullmatch(r"\s*([-+.0-9eE]+)\s*(.*?)\s*", str(text))
     factor = 1.0 if match and not match[2] else FACTORS.get(match[2]) if match else None
     return None if factor is None else float(match[1]) * factor
 

@@ -9,7 +9,7 @@ compared with what they say.
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING, Final, Literal, NamedTuple
+from typing import TYPE_CHECKING, Literal, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -23,6 +23,7 @@ from fieldmap.estimate.findings.scan.signatures import field_steps
 from fieldmap.estimate.findings.scan.suspects import Suspect
 from fieldmap.estimate.findings.scan.words import suspect_finding
 from fieldmap.estimate.findings.stated import departures
+from fieldmap.estimate.findings.thresholds import rarity
 from fieldmap.estimate.model import PassModel
 from fieldmap.estimate.noise import total
 from fieldmap.estimate.parameters import any_drift
@@ -41,7 +42,6 @@ Floats = npt.NDArray[np.float64]
 ABSURD = 30.0  # standard uncertainties that no stated value is off by, with readings that are right
 CLEAR = 12.0  # … and that a factor of a pass must show with
 LARGE = 0.1  # how far a factor must be from one to be gross
-KINDS: Final[tuple[Literal["factor", "shift"], ...]] = ("factor", "shift")
 WELL = 2.0  # mean square of the residuals up to which a fault explains a pass …
 NEARLY = 1e-3  # … or what it may leave of all the disagreement
 STEPS = 12  # towards the factor or the shift that fits
@@ -75,11 +75,10 @@ def grossly_wrong(fit: LineFit) -> bool:
 
 
 class _Without(NamedTuple):
-    """The others without one pass: how far they are from agreeing, and what they say of it."""
+    """The others without one pass: how far they are from agreeing, and that pass beside them."""
 
     unease: float
-    explained: bool
-    suspect: Suspect
+    compared: _Compared
 
 
 def blamed(passes: Sequence[Pass], refit: Callable[[list[Pass]], LineFit]) -> list[Finding]:
@@ -97,19 +96,31 @@ def blamed(passes: Sequence[Pass], refit: Callable[[list[Pass]], LineFit]) -> li
     list of Finding
         What is wrong with that pass; empty where none can be named.
     """
-    tried = [_without(passes, number, refit) for number in range(len(passes))]
-    told = [one for one in tried if one is not None and abs(one.suspect.normal) > CLEAR]
-    best = min(told, key=lambda one: one.unease, default=None)
-    if best is None or best.unease > AGREE:
+    tried = {number: _without(passes, number, refit) for number in range(len(passes))}
+    told = {number: one for number, one in tried.items() if one is not None}
+    if not told:
         return []
-    if best.explained:
-        return [suspect_finding(best.suspect, passes)]
+    odd = min(told, key=lambda number: told[number].unease)
+    if told[odd].unease > AGREE:
+        return []
+    return _odd_one(passes, odd, told[odd].compared)
+
+
+def _odd_one(passes: Sequence[Pass], number: int, compared: _Compared) -> list[Finding]:
+    """What is wrong with a pass that all others agree without; empty if it agrees as well."""
+    outcomes: dict[Literal["factor", "shift"], _Outcome] = {"factor": compared.factor()}
+    if outcomes["factor"].left > compared.explained:
+        outcomes["shift"] = compared.shift()
+    kind, best = min(outcomes.items(), key=lambda one: one[1].left)
+    suspect = Suspect(kind, (number,), best.amount, best.u, best.amount / best.u)
+    if best.left <= compared.explained:
+        return [suspect_finding(suspect, passes)] if abs(suspect.normal) > CLEAR else []
     text = (
-        f"it disagrees with all other passes ({abs(best.suspect.normal):.3g} standard "
-        "uncertainties from none), which agree among themselves without it; look for another "
-        "magnet, line or probe, or a fault within it, and take it out or again."
+        f"it disagrees with all other passes ({compared.disagreement:.3g} standard uncertainties "
+        "from none), which agree among themselves without it; look for another magnet, line or "
+        "probe, or a fault within it, and take it out or again."
     )
-    return [Finding("overlaps-disagree", "warn", passes[best.suspect.passes[0]].name, text)]
+    return [Finding("overlaps-disagree", "warn", passes[number].name, text)]
 
 
 def _without(
@@ -125,11 +136,7 @@ def _without(
         return None
     sizes = [excess(float(p.residual @ p.residual), max(p.freedom, 1.0)) for p in fit.passes]
     unease = max(float(np.abs(departures(fit)).max(initial=0.0)), *sizes)
-    compared = _Compared(fit, passes[number])
-    outcomes = [compared.factor(), compared.shift()]
-    kind, best = min(zip(KINDS, outcomes, strict=True), key=lambda one: one[1].left)
-    suspect = Suspect(kind, (number,), best.amount, best.u, best.amount / best.u)
-    return _Without(unease, best.left < compared.explained, suspect)
+    return _Without(unease, _Compared(fit, passes[number]))
 
 
 class _Outcome(NamedTuple):
@@ -150,6 +157,7 @@ class _Compared:
         _, off = self._made_and_off(self._model())
         whole = float(off @ linalg.pinvh(self.spread + self.noise) @ off)
         self.explained = max(WELL * len(off), NEARLY * whole)
+        self.disagreement = rarity(whole, len(off))
 
     def factor(self) -> _Outcome:
         """As if its flux were some times what it should be, followed to where it fits."""
