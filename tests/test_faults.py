@@ -9,13 +9,13 @@ import pytest
 
 from fieldmap.bench.bench_errors import Noise
 from fieldmap.bench.faults import FAULTS, SEVERITIES, Setting, inject
-from fieldmap.estimate.findings.assumed import assumptions
 from fieldmap.bench.faults.ideal import Observer
 from fieldmap.bench.faults.table import table_of
 from fieldmap.bench.response import flux
 from fieldmap.bench.sources import TanhMagnet
 from fieldmap.errors import InputError
 from fieldmap.estimate import stitch
+from fieldmap.estimate.findings.assumed import assumptions
 from fieldmap.readings import FlipReference, Integrator, Pass, PointReference, ZeroReference
 from tests.shop import DIPOLE, MAIN, RECT, ROUND, WIRE, measured, planned
 

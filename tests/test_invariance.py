@@ -127,7 +127,7 @@ def test_an_uncertain_scale_counts_from_the_zero_of_the_stage():
         assert far[key].u == pytest.approx(near[key].u, rel=0.02), key
 
 
-@pytest.mark.parametrize("change", [reordered, mirrored, amplified(1e-3)], ids=str)
+@pytest.mark.parametrize("change", [reordered, mirrored, amplified(1e-3)], ids=["reordered", "mirrored", "amplified"])
 @pytest.mark.parametrize("kind", [("wire+point", 4), ("rectangular+point", 3)], ids=str)
 def test_knots_that_are_found_are_the_same(kind, change):
     campaign, _ = draw_campaign(*kind)

@@ -93,7 +93,7 @@ class Trial:
     @property
     def revealable(self) -> bool:
         """Whether any test could have shown it."""
-        return self.z >= REVEALABLE
+        return self.z >= REVEALABLE and FAULTS[self.fault].revealed_by != "nothing"
 
     @property
     def column(self) -> str:

@@ -57,6 +57,7 @@ REVEALABLE: Final = 7.0
 """Below this z no test reveals a fault at a false-alarm rate as low as the kit's."""
 
 
+LINEAR: Final = 1e-6  # of all squares of a displacement: where less is left, no more is known of it
 _MOVED: Final = (0.01, 0.1, 0.25, 0.5, 1.0)  # gaps; far below one any step does as well
 _STRETCHED: Final = dict(zip(_MOVED, (1e-4, 1e-3, 1e-2, 3e-2, 0.1), strict=True))
 
@@ -154,7 +155,9 @@ class _Line:
         left = moved - evidence.design @ explained
         told = left @ self.noise.solve(left) + np.sum((offsets - references @ explained) ** 2)
         told += np.sum(explained[evidence.size :] ** 2)
-        return float(told + self._roughness(system, self.smoothness @ explained))
+        told += self._roughness(system, self.smoothness @ explained)
+        whole = float(moved @ weighed + offsets @ offsets)
+        return float(told) if told > LINEAR * whole else 0.0
 
     def _roughness(self, system: NormalSystem, rough: Floats) -> float:
         """What the smoothness adds, less the most that another plausible field takes off all."""
