@@ -218,6 +218,7 @@ def test_pointer_has_the_shape_asked_for():
         assert view.canvas._cursor == shape
 
 
+@pytest.mark.slow
 def test_updates_leave_no_figure_behind(view):
     line = line_on(view)
     view.refresh("five")

@@ -182,6 +182,7 @@ def departures(kind, how, seeds):
     return np.array(errors), np.array(differences), found
 
 
+@pytest.mark.slow
 @pytest.mark.parametrize(("kind", "how"), CASES)
 def test_a_corrected_campaign_tells_the_truth(kind, how):
     errors, differences, found = departures(kind, how, (100, 101))

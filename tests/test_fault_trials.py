@@ -63,6 +63,7 @@ def shop():
     return campaign, stitch(campaign, knot_spacing=0.01)
 
 
+@pytest.mark.slow
 def test_faults_are_put_in_and_counted(shop):
     told = []
     wanted = {"kinds": ["polarity", "area-everywhere"], "severities": [2, 5]}

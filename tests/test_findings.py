@@ -86,7 +86,9 @@ FAULTS = {
 }
 
 
-@pytest.mark.parametrize("integrator", [MAIN, OPEN], ids=["noise stated", "noise open"])
+@pytest.mark.parametrize(
+    "integrator", [MAIN, pytest.param(OPEN, marks=pytest.mark.slow)], ids=["stated", "open"]
+)
 @pytest.mark.parametrize("fault", FAULTS)
 def test_a_faulty_pass_is_named(fault, integrator):
     found = warnings(with_fault(bench(integrator), FAULTS[fault]))

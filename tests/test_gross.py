@@ -35,7 +35,9 @@ GROSS = {
 }
 
 
-@pytest.mark.parametrize("integrator", [MAIN, OPEN], ids=["noise stated", "noise open"])
+@pytest.mark.parametrize(
+    "integrator", [MAIN, pytest.param(OPEN, marks=pytest.mark.slow)], ids=["stated", "open"]
+)
 @pytest.mark.parametrize("code", GROSS)
 @pytest.mark.parametrize("probe", [WIRE, RECT], ids=["wires", "coils"])
 def test_the_wrong_pass_is_named(code, probe, integrator):

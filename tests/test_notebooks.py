@@ -118,6 +118,7 @@ def test_panel_and_calls_agree(name, maps, monkeypatch, tmp_path):
     ipywidgets.Widget.close_all()
 
 
+@pytest.mark.slow
 def test_every_cell_runs_in_a_kernel(tmp_path):
     for name in NAMES:
         shutil.copy(notebook_folder() / f"{name}.ipynb", tmp_path)

@@ -376,6 +376,7 @@ def test_a_solve_that_begins_when_its_campaign_is_gone_leaves_no_trace(panel, tm
     assert panel.state.error.startswith("missing.toml: found no such file")
 
 
+@pytest.mark.slow
 def test_many_threads_do_not_deadlock(panel, gate):
     rounds = 6
 

@@ -80,6 +80,7 @@ def test_wrong_uncertainties_are_found_out(shop, factor, good, words):
         assert words in found[key].sentence
 
 
+@pytest.mark.slow
 def test_the_number_of_workers_changes_nothing(shop):
     alone, together = (confirm(*shop, trials=6, workers=count) for count in (1, 2))
     assert alone == together

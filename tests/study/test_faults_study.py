@@ -32,6 +32,7 @@ def test_nothing_is_silently_wrong_that_could_be_revealed():
     assert sum(one.outcome in ("found", "refused") for one in made) >= len(made) / 3
 
 
+@pytest.mark.slow
 def test_a_trial_is_the_same_alone_and_goes_through_the_file(tmp_path):
     out = tmp_path / "trials.jsonl"
     wanted = {"faults": ["polarity"], "severities": [5], "draws": ["wire+point"], "out": out}
