@@ -8,6 +8,8 @@ import numpy as np
 import pytest
 
 from fieldmap.bench.sources import TanhMagnet
+from fieldmap.errors import RefusedError
+from fieldmap.estimate import stitch
 from fieldmap.estimate.findings.gross import blamed, grossly_wrong
 from fieldmap.readings import PointReference
 from tests.shop import MAIN, RECT, WIRE, measured, planned
@@ -64,6 +66,27 @@ def test_a_pass_of_another_magnet():
     (found,) = named(campaign)
     assert (found.code, found.where) == ("overlaps-disagree", "pass_02.csv")
     assert "agree among themselves without it" in found.text
+
+
+def test_those_that_fit_worst_are_tried():
+    campaign = with_fault(four_passes(), times(-1.0))
+    tried = []
+
+    def refit(passes):
+        tried.append(passes)
+        return fitted(campaign, passes)
+
+    (found,) = blamed(campaign.passes, refit, fitted(campaign))
+    assert found.where == "pass_02.csv"
+    assert campaign.passes[1] not in tried[0]
+
+
+def test_a_refusal_names_the_pass_that_is_its_reason():
+    references = [PointReference(0.0, 0.5, 1e-5)]
+    sound = four_passes(probes=(RECT,) * 4, references=references)
+    with pytest.raises(RefusedError) as caught:
+        stitch(with_fault(sound, times(1e3)))
+    assert (caught.value.code, caught.value.where) == ("power-of-ten", "pass_02.csv")
 
 
 def test_a_sound_line_is_not_gross():

@@ -243,11 +243,16 @@ def _fit_one(
         except np.linalg.LinAlgError as error:
             raise _undetermined(passes, error) from error
 
-    best = fit(chosen)
+    try:
+        best = fit(chosen)
+    except RefusedError as error:
+        raise _for_a_reason(
+            error, blamed(passes, lambda others: fit(chosen, passes=others))
+        ) from error
     remarks: list[Finding] = []
     spoilt = grossly_wrong(best)
     if spoilt:  # finer knots would only follow the fault
-        remarks = blamed(passes, lambda others: fit(chosen, passes=others))
+        remarks = blamed(passes, lambda others: fit(chosen, passes=others), best)
     elif spacing is None:
         best, remarks = _refine(best, fit, campaign.axis)
     remarks += check_digits(best, _result_rows(best, campaign.axis))
@@ -266,6 +271,15 @@ def _undetermined(passes: Sequence[Pass], error: np.linalg.LinAlgError) -> Refus
         "found readings that do not determine the field, expected readings at distinct times and "
         "positions; check that the time, position and flux columns are the right ones.",
     )
+
+
+def _for_a_reason(error: RefusedError, remarks: Sequence[Finding]) -> RefusedError:
+    """A refusal that names the pass without which there is none."""
+    for one in remarks:
+        undone = one.correction
+        how = f"; what undoes it in [[corrections]]: {undone.words}" if undone else ""
+        return RefusedError(one.code, one.where, f"{one.text.rstrip('.')}{how}.")
+    return error
 
 
 def _refine(

@@ -45,6 +45,7 @@ LARGE = 0.1  # how far a factor must be from one to be gross
 WELL = 2.0  # mean square of the residuals up to which a fault explains a pass …
 NEARLY = 1e-3  # … or what it may leave of all the disagreement
 STEPS = 12  # towards the factor or the shift that fits
+TRIED = 8  # passes that are left out in turn
 PLACES = 41  # that the search for a shift starts from
 AGREE = 6.0  # standard uncertainties within which passes agree among themselves
 
@@ -75,13 +76,17 @@ def grossly_wrong(fit: LineFit) -> bool:
 
 
 class _Without(NamedTuple):
-    """The others without one pass: how far they are from agreeing, and that pass beside them."""
+    """The others without one pass, and how far they are from agreeing."""
 
     unease: float
-    compared: _Compared
+    fit: LineFit
 
 
-def blamed(passes: Sequence[Pass], refit: Callable[[list[Pass]], LineFit]) -> list[Finding]:
+def blamed(
+    passes: Sequence[Pass],
+    refit: Callable[[list[Pass]], LineFit],
+    spoilt: LineFit | None = None,
+) -> list[Finding]:
     """The pass without which all others agree, if there is one.
 
     Parameters
@@ -90,20 +95,24 @@ def blamed(passes: Sequence[Pass], refit: Callable[[list[Pass]], LineFit]) -> li
         Of the line.
     refit : callable
         Fits the line from some of its passes.
+    spoilt : LineFit, optional
+        The line with all its passes, where it could be solved; those that fit worst are tried.
 
     Returns
     -------
     list of Finding
         What is wrong with that pass; empty where none can be named.
     """
-    tried = {number: _without(passes, number, refit) for number in range(len(passes))}
+    worst = list(range(len(passes)))
+    if spoilt is not None:
+        misfit = [float(p.residual @ p.residual) / max(p.freedom, 1.0) for p in spoilt.passes]
+        worst = np.argsort(misfit)[::-1].tolist()
+    tried = {number: _without(passes, number, refit) for number in worst[:TRIED]}
     told = {number: one for number, one in tried.items() if one is not None}
-    if not told:
+    odd = min(told, key=lambda number: told[number].unease, default=None)
+    if odd is None or told[odd].unease > AGREE:
         return []
-    odd = min(told, key=lambda number: told[number].unease)
-    if told[odd].unease > AGREE:
-        return []
-    return _odd_one(passes, odd, told[odd].compared)
+    return _odd_one(passes, odd, _Compared(told[odd].fit, passes[odd]))
 
 
 def _odd_one(passes: Sequence[Pass], number: int, compared: _Compared) -> list[Finding]:
@@ -136,7 +145,7 @@ def _without(
         return None
     sizes = [excess(float(p.residual @ p.residual), max(p.freedom, 1.0)) for p in fit.passes]
     unease = max(float(np.abs(departures(fit)).max(initial=0.0)), *sizes)
-    return _Without(unease, _Compared(fit, passes[number]))
+    return _Without(unease, fit)
 
 
 class _Outcome(NamedTuple):
@@ -155,7 +164,7 @@ class _Compared:
         self.fit, self.solved, self.one = fit, fit.solved, one
         self.spread, self.noise = self._spreads()
         _, off = self._made_and_off(self._model())
-        whole = float(off @ linalg.pinvh(self.spread + self.noise) @ off)
+        whole = self._outcome(np.zeros_like(off), off).left
         self.explained = max(WELL * len(off), NEARLY * whole)
         self.disagreement = rarity(whole, len(off))
 
@@ -167,7 +176,7 @@ class _Compared:
             step = self._outcome(made, off, max(1.0, 1 / abs(times)))
             if step.left >= best.left or not np.isfinite(step.u):
                 break
-            best = _Outcome(times * (1 + step.amount) - 1, times * step.u, step.left)
+            best = _Outcome(times * (1 + step.amount) - 1, abs(times) * step.u, step.left)
             times *= 1 + step.amount
             if abs(step.amount) < step.u or not times:
                 break
