@@ -11,6 +11,7 @@ passes read at the same positions, so the bound is as tight as it gets.
 
 from __future__ import annotations
 
+import os
 from dataclasses import dataclass
 
 import numpy as np
@@ -26,7 +27,8 @@ RATE, WALK, READ, U_DRIFT = 40.0, 2e-7, 1e-7, 3e-7
 MAIN = Integrator("main", walk_noise=WALK, read_noise=READ, u_drift=U_DRIFT)
 END = 0.25
 LIMITS = {"between the dwells": (-END, END), "between moving readings": (-0.2, 0.2)}
-CAMPAIGNS = 500
+SAMPLE = os.environ.get("FIELDMAP_STUDY", "whole") == "sample"
+CAMPAIGNS = 200 if SAMPLE else 500
 
 
 def motion(dwell, moving=301):
@@ -130,7 +132,7 @@ def test_stated_uncertainty_is_not_above_the_bound(dwell):
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("dwell", [80, 400])
+@pytest.mark.parametrize("dwell", [80] if SAMPLE else [80, 400])
 def test_error_of_the_integrated_field_attains_the_bound(dwell):
     trial = Trial(dwell)
     best = {name: trial.best(*ends) for name, ends in LIMITS.items()}
@@ -155,6 +157,6 @@ def test_error_of_the_integrated_field_attains_the_bound(dwell):
             f"of the best linear estimate {rms[1]:.3f}; error / u {in_u:.3f}"
         )
         assert abs(rms[1] - 1) < 3 / np.sqrt(2 * CAMPAIGNS)  # the bound is the right one
-        assert rms[0] < 1.05
+        assert rms[0] < 1.05 + (3 / np.sqrt(2 * CAMPAIGNS) if SAMPLE else 0.0)
         assert rms[0] < 1.02 * rms[1]  # on the same draws
         assert abs(in_u - 1) < 3 / np.sqrt(2 * CAMPAIGNS)
