@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import shutil
 import sys
 
 from fieldmap.bench.sources import TanhMagnet
 from fieldmap.estimate.findings import Finding, pass_findings
 from fieldmap.readings import Axis, Correction, Magnet, PointReference
+from fieldmap.shipped import demo_folder
 from tests.shop import measured
 
 LATE = Correction("lag", "pass_02.csv", 1e-3, 2e-3)
@@ -41,3 +43,17 @@ def offer(monkeypatch, *corrections):
 
     # the package has a function of the name of this module
     monkeypatch.setattr(sys.modules["fieldmap.estimate.stitch"], "pass_findings", found)
+
+
+def turned_demo(folder):
+    """A copy of the demo's gap dipole, the flux of its second pass of the other sign."""
+    shutil.copytree(demo_folder() / "gap_dipole", folder)
+    table = folder / "pass_02.csv"
+    lines = table.read_text("utf-8").splitlines()
+    head = next(i for i, line in enumerate(lines) if line.startswith("time"))
+    column = [name.split()[0] for name in lines[head].split(",")].index("flux")
+    for i, line in enumerate(lines[head + 1 :], start=head + 1):
+        cells = line.split(",")
+        cells[column] = repr(-float(cells[column]))
+        lines[i] = ",".join(cells)
+    table.write_text("\n".join(lines) + "\n", encoding="utf-8")

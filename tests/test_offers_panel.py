@@ -13,7 +13,7 @@ from fieldmap.estimate.provenance import map_corrections
 from fieldmap.readings import corrected, load
 from fieldmap.show.panels import FringeMapPanel, MagneticLengthPanel
 from fieldmap.show.panels.state import Reduction
-from tests.offering import LATE, TURNED, offer, small
+from tests.offering import LATE, TURNED, offer, small, turned_demo
 from tests.shop import planned
 
 
@@ -153,3 +153,16 @@ def test_a_correction_that_makes_it_worse_can_be_taken_back(bench, monkeypatch):
     state.correct(turned, used=False)
     state.correct(99, used=True)  # no such row: nothing happens
     assert state.results == before
+
+
+def test_a_pass_turned_round_is_named_and_put_right(tmp_path):
+    turned_demo(tmp_path / "turned")
+    panel = opened(tmp_path / "turned")
+    health = [note.value for note in panel.passes.notes]
+    assert "look at it" in health[1]
+    assert all("does not fit" in one for i, one in enumerate(health) if i != 1)
+    (box,) = panel.offers.boxes
+    assert box.description == "pass_02.csv: flux turned round"
+    box.value = True
+    assert all("fits" in note.value for note in panel.passes.notes)
+    ipywidgets.Widget.close_all()

@@ -19,6 +19,8 @@ if TYPE_CHECKING:
 
 __all__ = ["PassesPanel"]
 
+STRAYS: Final = 2.0  # times what the noise gives: residuals that speak for themselves
+
 # SVG shapes of the markers, in a box from -4 to 4
 _SHAPES: Final = {
     "o": '<circle r="3.2"/>',
@@ -84,8 +86,9 @@ class PassesPanel(TickList):
         found = {}
         for index, facts in zip(self.state.map_marks, map_passes(fmap), strict=True):
             size = math.sqrt(facts["chi_square"] / max(facts["freedom"], 1.0))
-            word = "look at it" if facts["name"] in warned else "fits"
-            mark = "▲" if facts["name"] in warned else "●"
+            word = "fits" if size < STRAYS else "does not fit"
+            word = "look at it" if facts["name"] in warned else word
+            mark = "●" if word == "fits" else "▲"
             made = ", corrected" if facts.get("corrections") else ""
             found[index] = (mark, f"{word}, residuals {size:.2f}{made}")
         return found
