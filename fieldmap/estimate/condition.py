@@ -22,8 +22,9 @@ __all__ = ["NONE", "check_digits", "lost", "undetermined", "weakest_unknown"]
 Floats = npt.NDArray[np.float64]
 
 # Rounding was found by solving 30 simulated campaigns scaled and in another order. Values moved by
-# 0.2 to 7 times what `NormalSystem.rounding` says of them or by a thirtieth of what it says of the
-# variance; variances by a tenth of it at most. The condition number overstated both a thousandfold.
+# 0.2 to 25 times what `NormalSystem.rounding` says of them, the most where the variance's bound is
+# larger still; variances by at most 0.9 of that bound, mostly a tenth. The condition number
+# overstated both a thousandfold.
 SLACK = 10.0  # of the bound of the variance
 FEW = 1e-3  # of u: beyond that, results begin to depend on the order of the readings
 NONE = 0.5
