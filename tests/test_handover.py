@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import hashlib
 import json
 from dataclasses import replace
 
@@ -88,3 +89,16 @@ def test_another_coverage_factor(reduced, tmp_path):
     fmap, _ = reduced
     files = save_reduction(fmap, evaluate(fmap, k=3.0), tmp_path, k=3.0)
     assert "k = 3 (about 99.7 % coverage)" in files[2].read_text("utf-8")
+
+
+def test_a_pass_table_is_never_replaced(tmp_path):
+    campaign = measured(planned((-0.4, 0.4), rate=20.0))
+    table = tmp_path / "map.nc"
+    table.write_bytes(b"a pass table that happens to bear this name")
+    own = hashlib.sha256(table.read_bytes()).hexdigest()
+    passes = tuple(replace(one, sha256=own) for one in campaign.passes)
+    fmap = stitch(replace(campaign, passes=passes), knot_spacing=0.01)
+    with pytest.raises(InputError, match="one of the pass tables"):
+        save_reduction(fmap, evaluate(fmap), tmp_path)
+    assert names(tmp_path) == ["map.nc"]
+    assert hashlib.sha256(table.read_bytes()).hexdigest() == own

@@ -2,11 +2,13 @@
 
 from __future__ import annotations
 
+import hashlib
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 from fieldmap.atomic import new_folder, replacing_set
 from fieldmap.errors import InputError
-from fieldmap.estimate.map import map_axis
+from fieldmap.estimate.map import map_axis, map_passes
 from fieldmap.estimate.store import write_map
 from fieldmap.magnet.evaluate import evaluate
 from fieldmap.magnet.results_file import write_results
@@ -14,7 +16,6 @@ from fieldmap.magnet.results_file import write_results
 if TYPE_CHECKING:
     import os
     from collections.abc import Sequence
-    from pathlib import Path
 
     import xarray as xr
 
@@ -84,15 +85,30 @@ def save_reduction(
 def write_reduction(
     fmap: xr.Dataset, results: Results, report: str, folder: str | os.PathLike[str]
 ) -> tuple[Path, Path, Path]:
-    """Write the three files, which take their places together; nothing is checked."""
+    """Write the three files, which take their places together; the results are not checked."""
     from fieldmap.show.report.page import FILE_NAME, write_report
 
     names = "map.nc", "results.json", FILE_NAME
+    _spare_readings(fmap, Path(folder), names)
     with new_folder(folder) as place, replacing_set(place, names) as asides:
         write_map(fmap, asides[0])
         write_results(results, asides[1])
         write_report(report, asides[2])
     return place / names[0], place / names[1], place / names[2]
+
+
+def _spare_readings(fmap: xr.Dataset, folder: Path, names: Sequence[str]) -> None:
+    """Refuse to replace what the map was made from, if a table should bear one of the names."""
+    read = {facts["sha256"] for facts in map_passes(fmap)} - {""}
+    for name in names:
+        place = folder / name
+        if place.is_file() and hashlib.sha256(place.read_bytes()).hexdigest() in read:
+            raise InputError(
+                str(place),
+                "one of the pass tables that the map was made from",
+                "a folder in which results take the place of earlier results only",
+                "name another folder",
+            )
 
 
 def _agree(own: Results, given: Results) -> bool:
