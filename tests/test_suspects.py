@@ -161,7 +161,7 @@ def test_the_sentence_has_place_number_and_remedy(kind):
     finding = suspect_finding(first, campaign.passes)
     assert finding.severity == "warn"
     assert finding.where == "pass_02.csv"
-    assert f"{abs(first.normal):.3g} standard uncertainties from none" in finding.text
+    assert f"({abs(first.normal):.3g} u from none, where chance allows " in finding.text
     assert finding.text.endswith(".")
     assert "; " in finding.text
     assert "|" not in finding.text

@@ -23,7 +23,7 @@ from fieldmap.estimate.findings.scan.signatures import field_steps
 from fieldmap.estimate.findings.scan.suspects import Suspect
 from fieldmap.estimate.findings.scan.words import suspect_finding
 from fieldmap.estimate.findings.stated import departures
-from fieldmap.estimate.findings.thresholds import rarity
+from fieldmap.estimate.findings.thresholds import beyond_chance, rarity
 from fieldmap.estimate.model import PassModel
 from fieldmap.estimate.noise import total
 from fieldmap.estimate.parameters import any_drift
@@ -121,13 +121,13 @@ def _odd_one(passes: Sequence[Pass], number: int, compared: _Compared) -> list[F
     if outcomes["factor"].left > compared.explained:
         outcomes["shift"] = compared.shift()
     kind, best = min(outcomes.items(), key=lambda one: one[1].left)
-    suspect = Suspect(kind, (number,), best.amount, best.u, best.amount / best.u)
+    suspect = Suspect(kind, (number,), best.amount, best.u, best.amount / best.u, CLEAR)
     if best.left <= compared.explained:
         return [suspect_finding(suspect, passes)] if abs(suspect.normal) > CLEAR else []
     text = (
-        f"it disagrees with all other passes ({compared.disagreement:.3g} standard uncertainties "
-        "from none), which agree among themselves without it; look for another magnet, line or "
-        "probe, or a fault within it, and take it out or again."
+        "it disagrees with all other passes "
+        f"({beyond_chance(compared.disagreement, CLEAR)}), which agree among themselves without it; "
+        "look for another magnet, line or probe, or a fault within it, and take it out or again."
     )
     return [Finding("overlaps-disagree", "warn", passes[number].name, text)]
 

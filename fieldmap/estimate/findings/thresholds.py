@@ -10,7 +10,7 @@ from __future__ import annotations
 import numpy as np
 from scipy import special
 
-__all__ = ["FAMILY_SHARE", "beyond", "rarity"]
+__all__ = ["FAMILY_SHARE", "beyond", "beyond_chance", "rarity"]
 
 FAR = 1e-280  # below which a probability is taken by its logarithm
 FAMILY_SHARE = 5e-5  # probability that a family of tests warns of a clean campaign
@@ -34,6 +34,17 @@ def beyond(count: int) -> float:
     (4.06, 5.45)
     """
     return float(-special.ndtri(FAMILY_SHARE / (2 * max(count, 1))))
+
+
+def beyond_chance(normal: float, allowed: float) -> str:
+    """A number that triggered a warning, beside what it had to exceed.
+
+    Examples
+    --------
+    >>> beyond_chance(-7764.2, 5.13)
+    '7.76e+03 u from none, where chance allows 5.1'
+    """
+    return f"{abs(normal):.3g} u from none, where chance allows {allowed:.2g}"
 
 
 def rarity(chi_square: float, freedom: float) -> float:

@@ -8,7 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.estimate.findings.finding import Finding
-from fieldmap.estimate.findings.thresholds import beyond
+from fieldmap.estimate.findings.thresholds import beyond, beyond_chance
 from fieldmap.readings.passes import FlipReference, PointReference
 
 if TYPE_CHECKING:
@@ -65,11 +65,13 @@ def reference_findings(solved: Solved, known: float) -> list[Finding]:
     if not len(off):
         return []
     worst = int(np.argmax(np.abs(off)))
-    if abs(off[worst]) <= max(beyond(len(off)), ALIKE * known):
+    allowed = beyond(len(off))
+    if abs(off[worst]) <= max(allowed, ALIKE * known):
         return []
     text = (
-        f"it lies {abs(float(off[worst])):.3g} standard uncertainties from what the passes and the "
-        "other references give; check its value, position and unit, and the probes' sizes."
+        "it is not what the passes and the other references give "
+        f"({beyond_chance(float(off[worst]), allowed)}); check its value, position and unit, and "
+        "the probes' sizes."
     )
     return [Finding("reference-contradicted", "warn", _named(solved.references[worst]), text)]
 

@@ -13,7 +13,7 @@ from fieldmap.estimate.findings.scan.scores import Scores
 from fieldmap.estimate.findings.scan.suspects import suspects
 from fieldmap.estimate.findings.scan.words import suspect_finding
 from fieldmap.estimate.findings.stated import departures
-from fieldmap.estimate.findings.thresholds import beyond
+from fieldmap.estimate.findings.thresholds import beyond, beyond_chance
 
 if TYPE_CHECKING:
     from fieldmap.estimate.findings.scan.leftover import Leftover
@@ -57,23 +57,24 @@ def _left(one: PassFit, leftover: Leftover, threshold: float) -> list[Finding]:
     if leftover.shape > threshold:
         text = (
             "its field has a shape of its own beside the other passes "
-            f"({leftover.shape:.3g} standard uncertainties from none); look for another magnet, "
-            "current, probe or line, and compare it with its neighbours in the figure of overlaps."
+            f"({beyond_chance(leftover.shape, threshold)}); look for another magnet, current, "
+            "probe or line, and compare it with its neighbours in the figure of overlaps."
         )
         return [Finding("overlaps-disagree", "warn", name, text)]
     if leftover.size > threshold:
         cause = "than one noise level for all passes explains" if one.level.open else "than stated"
         text = (
-            f"residuals are {leftover.factor:.2f} times larger {cause} ({leftover.size:.3g} "
-            "standard uncertainties from none); look for spikes, jumps, pick-up, a wrong probe or "
-            "a pass that disagrees with its neighbours."
+            f"residuals are {leftover.factor:.2f} times larger {cause} "
+            f"({beyond_chance(leftover.size, threshold)}); look for spikes, jumps, pick-up, a "
+            "wrong probe or a pass that disagrees with its neighbours."
         )
         return [Finding("residuals-too-large", "warn", name, text)]
     if abs(leftover.correlation) > threshold:
         text = (
-            f"neighbouring residuals hang together ({leftover.correlation:.3g} standard "
-            "uncertainties from none): they are no noise; look for pick-up, jumps, positions that "
-            "come late, or a gap in [magnet] that is too large for the knots."
+            "neighbouring residuals hang together "
+            f"({beyond_chance(leftover.correlation, threshold)}): they are no noise; look for "
+            "pick-up, jumps, positions that come late, or a gap in [magnet] that is too large for "
+            "the knots."
         )
         return [Finding("residuals-not-white", "warn", name, text)]
     if leftover.size < -threshold and not one.level.open:

@@ -16,7 +16,7 @@ from fieldmap.estimate.findings.scan.left_out import field_without
 from fieldmap.estimate.findings.scan.scores import Scores
 from fieldmap.estimate.findings.scan.shared import shared_signatures
 from fieldmap.estimate.findings.scan.signatures import FaultKind, pass_signatures, step_within
-from fieldmap.estimate.findings.thresholds import beyond
+from fieldmap.estimate.findings.thresholds import beyond, beyond_chance
 
 if TYPE_CHECKING:
     from collections.abc import Iterator, Mapping
@@ -54,6 +54,8 @@ class Suspect:
         Its size and standard uncertainty: relative, m, s or V s by the kind.
     normal : float
         Size over standard uncertainty; a unit normal by chance.
+    allowed : float
+        The largest that chance is taken to explain.
     reading : int
         First reading that is wrong; 0 where all are.
     """
@@ -63,7 +65,13 @@ class Suspect:
     amount: float
     u: float
     normal: float
+    allowed: float
     reading: int = 0
+
+    @property
+    def rareness(self) -> str:
+        """What triggered it, in words."""
+        return beyond_chance(self.normal, self.allowed)
 
 
 @dataclass(frozen=True, eq=False)
@@ -71,7 +79,6 @@ class _Trial:
     """The strongest of the signatures of one kind in one place."""
 
     suspect: Suspect
-    threshold: float
     columns: Mapping[int, Floats]
 
 
@@ -123,7 +130,7 @@ def faulty(fit: LineFit) -> bool:
 
 def _best(scores: Scores, fields: list[Floats]) -> _Trial | None:
     """The most telling fault beyond its threshold; of nearly equal ones the plainest."""
-    telling = [t for t in _trials(scores, fields) if abs(t.suspect.normal) > t.threshold]
+    telling = [t for t in _trials(scores, fields) if abs(t.suspect.normal) > t.suspect.allowed]
     most = max((abs(trial.suspect.normal) for trial in telling), default=0.0)
     enough = ALMOST * most**2 - BY_CHANCE
     near = [trial for trial in telling if trial.suspect.normal**2 >= enough]
@@ -179,4 +186,4 @@ def _trial(
     reading: int,
 ) -> _Trial:
     amount, u, normal = (float(v[best]) for v in (score.amount, score.u, score.normal))
-    return _Trial(Suspect(kind, passes, amount, u, normal, reading), threshold, columns)
+    return _Trial(Suspect(kind, passes, amount, u, normal, threshold, reading), columns)

@@ -53,10 +53,9 @@ def suspect_finding(suspect: Suspect, passes: Sequence[Pass]) -> Finding:
 def _warn(
     code: str, where: str, suspect: Suspect, text: str, correction: Correction | None = None
 ) -> Finding:
-    """A warning that ends with how rare its number is."""
-    rare = f"{abs(suspect.normal):.3g} standard uncertainties from none"
+    """A warning with the number that triggered it."""
     found, remedy = text.split(" | ")
-    return Finding(code, "warn", where, f"{found} ({rare}); {remedy}.", correction)
+    return Finding(code, "warn", where, f"{found} ({suspect.rareness}); {remedy}.", correction)
 
 
 def _factor(suspect: Suspect, one: Pass) -> Finding:
