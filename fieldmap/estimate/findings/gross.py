@@ -126,8 +126,9 @@ def _odd_one(passes: Sequence[Pass], number: int, compared: _Compared) -> list[F
         return [suspect_finding(suspect, passes)] if abs(suspect.normal) > CLEAR else []
     text = (
         "it disagrees with all other passes "
-        f"({beyond_chance(compared.disagreement, CLEAR)}), which agree among themselves without it; "
-        "look for another magnet, line or probe, or a fault within it, and take it out or again."
+        f"({beyond_chance(compared.disagreement, CLEAR)}), which agree among themselves without "
+        "it; look for another magnet, line or probe, or a fault within it, and take it out or "
+        "again."
     )
     return [Finding("overlaps-disagree", "warn", passes[number].name, text)]
 

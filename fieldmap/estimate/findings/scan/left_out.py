@@ -36,7 +36,7 @@ def field_without(solved: Solved, number: int) -> Floats:
     if len(solved.models) < 2:
         return solved.state.b
     own = pass_information(solved.linearised.passes[number], solved.covariance(number))
-    right = solved.system.matrix @ solved.values - own.right
+    right = solved.right - own.right
     try:
         values = NormalSystem(solved.system.matrix - own.matrix).solve(right)
     except np.linalg.LinAlgError:
