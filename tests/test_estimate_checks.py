@@ -71,15 +71,23 @@ def test_time_and_travel():
         check_time_and_travel([scan(), scan("late", time=(5.0, 5.0, 5.0))], 0.0, 0.2)
 
 
+GAP = 0.03
+
+
 def test_positions_out_of_all_proportion():
     near, far = scan("near"), scan("far", position=(0.0, 100.0, 200.0))
-    check_reach([near, scan("longer", position=(-0.3, 0.0, 0.6))], (0.05, 0.15))
-    check_reach([scan(position=(0.0, 0.3, 0.6))], (0.0, 0.2))
+    check_reach([near, scan("longer", position=(-0.3, 0.0, 0.6))], (0.05, 0.15), GAP)
+    check_reach([scan(position=(0.0, 0.3, 0.6))], (0.0, 0.2), GAP)
+    wide = [scan("a", position=(-8.0, 0.0, 8.0)), scan("b", position=(8.0, 0.0, -8.0))]
+    with pytest.raises(RefusedError, match="a, b: found positions from -8000 to 8000 mm"):
+        check_reach(wide, (-0.4, 0.4), GAP)
+    check_reach(wide, (-0.9, 0.9), GAP)
+    check_reach(wide, (-0.4, 0.4), 0.1)
     for passes in ([near, far], [far]):
         with pytest.raises(
             RefusedError, match=r"far: found positions from 0 to 200000 mm"
         ) as caught:
-            check_reach(passes, (0.0, 0.2))
+            check_reach(passes, (0.0, 0.2), 10.0)
         assert caught.value.code == "positions-out-of-proportion"
 
 

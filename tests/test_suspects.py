@@ -8,13 +8,15 @@ import numpy as np
 import pytest
 
 from fieldmap.bench.bench_errors import Errors
+from fieldmap.estimate import map_findings, stitch
 from fieldmap.estimate.findings.scan import faulty, scan_findings
 from fieldmap.estimate.findings.scan.scores import Scores
 from fieldmap.estimate.findings.scan.suspects import suspects
 from fieldmap.estimate.findings.scan.words import suspect_finding
 from fieldmap.readings import PointReference, Stage
-from tests.shop import RECT, STAGE, WIRE
+from tests.shop import RECT, ROUND, STAGE, WIRE
 from tests.solved_lines import GAP, NOISE, fitted, four_passes, with_fault
+from tests.study.draw import draw_campaign
 
 READING = 250
 
@@ -142,12 +144,19 @@ def test_a_size_that_is_stated_to_be_certain():
     assert ("gain", (2, 3)) in {(one.kind, one.passes) for one in found}
 
 
-@pytest.mark.parametrize("probe", [WIRE, RECT], ids=["wires", "coils"])
+@pytest.mark.parametrize("probe", [WIRE, RECT, ROUND], ids=["wires", "coils", "round coils"])
 def test_a_sound_line_shows_none(probe):
-    for seed in range(6):
+    for seed in range(5):
         fit = fitted(passes_of(probe, seed=seed))
         assert scan_findings(fit, GAP) == []
         assert not faulty(fit)
+
+
+@pytest.mark.parametrize(("kind", "seed"), [("round+flip", 5000), ("rectangular+flip", 5005)])
+def test_a_coil_alone_is_not_told_its_window(kind, seed):
+    campaign, _ = draw_campaign(kind, seed)
+    found = [one.code for one in map_findings(stitch(campaign)) if one.severity == "warn"]
+    assert "window-contradicted" not in found
 
 
 def test_faulty_is_what_shows_far_beyond_chance():

@@ -27,6 +27,7 @@ __all__ = ["check_reach", "check_references", "check_spacing", "check_time_and_t
 
 MOST_STATED = 6000  # knots: a matrix of that size still fits in memory several times
 
+FAR, MANY = 10.0, 200.0  # times the limits and times the gap that a line may be long
 FARTHEST = 5.0  # times the length of all else that one pass may stretch the line to
 
 
@@ -115,7 +116,7 @@ def check_time_and_travel(passes: Sequence[Pass], low: float, high: float) -> No
             )
 
 
-def check_reach(passes: Sequence[Pass], integrate: tuple[float, float]) -> None:
+def check_reach(passes: Sequence[Pass], integrate: tuple[float, float], gap: float) -> None:
     """Refuse positions that lie far beyond all others: a wrong unit, most often.
 
     Parameters
@@ -124,12 +125,24 @@ def check_reach(passes: Sequence[Pass], integrate: tuple[float, float]) -> None:
         Of one line.
     integrate : tuple of float
         Limits of the integrated field, m.
+    gap : float
+        Full gap or bore, m.
 
     Raises
     ------
     RefusedError
         ``positions-out-of-proportion``.
     """
+    ends = [(float(one.position.min()), float(one.position.max())) for one in passes]
+    low, high = min(end for end, _ in ends), max(end for _, end in ends)
+    if high - low > max(FAR * (integrate[1] - integrate[0]), MANY * gap):
+        raise RefusedError(
+            "positions-out-of-proportion",
+            ", ".join(one.name for one in passes),
+            f"found positions from {low * 1e3:.6g} to {high * 1e3:.6g} mm, expected a line of at "
+            f"most {FAR:g} times the limits in [axis] integrate or {MANY:g} gaps; check the columns "
+            "and the unit of the position, and the units in [axis] and [magnet].",
+        )
     for one in passes:
         others = [p.position for p in passes if p is not one]
         known = [*integrate, *(end for p in others for end in (float(p.min()), float(p.max())))]

@@ -226,7 +226,7 @@ def _fit_one(
     low = min(float(one.position.min()) for one in passes)
     high = max(float(one.position.max()) for one in passes)
     check_time_and_travel(passes, low, high)
-    check_reach(passes, campaign.axis.integrate)
+    check_reach(passes, campaign.axis.integrate, campaign.magnet.gap)
     check_spacing(spacing, low, high)
     gap, every = campaign.magnet.gap, passes
     chosen = spacing or first_spacing(gap, low, high, sampling(passes))

@@ -43,7 +43,9 @@ def shared_signatures(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Fl
         if solved.state.index("gain", name) is None:
             yield "gain", {n: field_steps(solved, n, solved.state.b)[:, None] for n in own}
         coil = isinstance(solved.models[own[0]].one.probe, Coil)
-        if coil and solved.state.index("window", name) is None:
+        # alone, a coil of another window has been in another field, which only seems rougher
+        compared = coil and len(probes) > 1
+        if compared and solved.state.index("window", name) is None:
             yield "window", {n: _widening(solved, n) for n in own}
 
 
