@@ -140,8 +140,8 @@ def check_reach(passes: Sequence[Pass], integrate: tuple[float, float], gap: flo
             "positions-out-of-proportion",
             ", ".join(one.name for one in passes),
             f"found positions from {low * 1e3:.6g} to {high * 1e3:.6g} mm, expected a line of at "
-            f"most {FAR:g} times the limits in [axis] integrate or {MANY:g} gaps; check the columns "
-            "and the unit of the position, and the units in [axis] and [magnet].",
+            f"most {FAR:g} times the limits in [axis] integrate or {MANY:g} gaps; check the "
+            "position column and its unit, and the units in [axis] and [magnet].",
         )
     for one in passes:
         others = [p.position for p in passes if p is not one]
