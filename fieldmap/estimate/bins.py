@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from fieldmap.estimate.response import Response
     from fieldmap.readings.passes import Pass
 
-__all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows"]
+__all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows", "pass_starts"]
 
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.intp]
@@ -66,7 +66,7 @@ class Bins:
     strength: Floats | None = None
 
 
-def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
+def bin_starts(time: Floats, position: Floats, step: float, fewest: int = 1) -> Ints:
     """First reading of each bin: bins of about `step` of travel, dwells cut into slices.
 
     Parameters
@@ -75,6 +75,8 @@ def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
         s and m, in the order of recording.
     step : float
         Travel after which a bin closes, m.
+    fewest : int
+        Readings that a bin holds at least; the last one may hold fewer.
 
     Returns
     -------
@@ -82,7 +84,7 @@ def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
         Increasing, starting with 0.
     """
     n = len(time)
-    block = max(1, n // MAX_BLOCKS)
+    block = max(fewest, n // MAX_BLOCKS)
     first = np.arange(0, n, block)
     middle = np.add.reduceat(position, first) / np.diff(np.append(first, n))
     duration = float(time[-1] - time[0])
@@ -102,6 +104,15 @@ def bin_starts(time: Floats, position: Floats, step: float) -> Ints:
     return np.array(starts, dtype=np.intp)
 
 
+def pass_starts(one: Pass, step: float) -> Ints:
+    """First reading of each bin of a pass; as `bin_starts`.
+
+    The spline through the samples of a voltage spreads their noise over more than the next bin
+    where bins hold one of them: there they hold two.
+    """
+    return bin_starts(one.time, one.position, step, 2 if one.record == "voltage" else 1)
+
+
 def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bins:
     """Average a pass in bins.
 
@@ -118,7 +129,7 @@ def bin_pass(one: Pass, step: float, nominal_current: float | None = None) -> Bi
     -------
     Bins
     """
-    starts = bin_starts(one.time, one.position, step)
+    starts = pass_starts(one, step)
     n = len(one.time)
     count = np.diff(np.append(starts, n)).astype(float)
     origin = one.flux[0]  # the constant is unknown anyway; removing it saves digits
@@ -183,7 +194,7 @@ def _bridge(one: Pass, starts: Ints, count: Floats) -> Floats:
     if one.record == "voltage":
         # the spline through the samples spreads each of them over its neighbours' steps
         step = np.add.reduceat(gap, starts) / count
-        share = share + step * np.where(count == 1, ALONE, SPREAD / count)
+        share = share + step * np.where(count == 1, ALONE, SPREAD / count)  # 1: the last
     return np.asarray(share)
 
 

@@ -26,7 +26,7 @@ Floats = npt.NDArray[np.float64]
 # larger still; variances by at most 0.9 of that bound, mostly a tenth. The condition number
 # overstated both a thousandfold.
 SLACK = 10.0  # of the bound of the variance
-FEW = 1e-3  # of u: beyond that, results begin to depend on the order of the readings
+FEW = 0.02  # of u: beyond that, results begin to depend on the order of the readings
 NONE = 0.5
 DOMINANT = 0.5  # of the squares of a direction: one nuisance is meant
 BROAD = 0.2  # of the line: what is wider is its level, not the field at a place

@@ -29,7 +29,7 @@ from fieldmap.bench.faults import inject
 from fieldmap.bench.faults.setting import strength
 from fieldmap.bench.response import flux
 from fieldmap.errors import FieldmapError
-from fieldmap.estimate.bins import bin_starts
+from fieldmap.estimate.bins import pass_starts
 from fieldmap.estimate.map import map_lines
 from fieldmap.estimate.noise import total
 from fieldmap.estimate.normal import NormalSystem
@@ -186,7 +186,7 @@ class _Line:
         """Displacement of one pass, as increments of the bin means of the fault-free pass."""
         index = self.passes[k]
         own, now = self.setting.campaign.passes[index], faulty.campaign.passes[index]
-        starts = bin_starts(own.time, own.position, self.step)
+        starts = pass_starts(own, self.step)
         if now is own:
             return np.zeros(len(starts) - 1)
         clean = np.arange(len(own.time))
@@ -225,7 +225,7 @@ def other_fields(line: FieldLine, gap: float) -> list[Floats]:
     Returns
     -------
     list of (size, k) array
-        Coefficients of B, T: stronger everywhere, with either end, or all, moved or stretched.
+        Coefficients of B, T: stronger everywhere, with either end moved, or moved and stretched.
     """
     from scipy.interpolate import CubicSpline
 
@@ -236,14 +236,20 @@ def other_fields(line: FieldLine, gap: float) -> list[Floats]:
     def elsewhere(moved: Floats) -> Floats:
         return np.asarray(curve(np.clip(moved, at[0], at[-1])) - line.b)
 
-    found = []
+    found: list[Floats] = []
+    halves: tuple[list[Floats], list[Floats]] = [line.b], [line.b]
     for share in _MOVED:
         for sign in (1.0, -1.0):
             change = elsewhere(at - sign * share * gap)
             low, high = np.where(at < centre, change, 0.0), np.where(at >= centre, change, 0.0)
-            stretched = elsewhere(centre + (at - centre) * (1.0 - sign * _STRETCHED[share]))
+            longer = elsewhere(centre + (at - centre) * (1.0 - sign * _STRETCHED[share]))
+            softer = np.where(at < centre, longer, 0.0), np.where(at >= centre, longer, 0.0)
             found.append(np.column_stack([line.b, low, high]))
-            found.append(np.column_stack([line.b, stretched]))
+            found.append(np.column_stack([line.b, low, high, *softer]))
+            halves[0].extend((low, softer[0]))
+            halves[1].extend((high, softer[1]))
+    # one half alone moved and stretched by anything in between
+    found += [np.column_stack(half) for half in halves]
     return found
 
 

@@ -19,7 +19,7 @@ __all__ = ["contradicted", "departures", "trusted"]
 
 Floats = npt.NDArray[np.float64]
 
-LEAST_TOLD = 0.02  # of a prior variance: where the readings tell less, they contradict nothing
+LEAST_TOLD = 0.3  # of a prior variance: where the readings tell less, they contradict nothing
 
 
 def departures(fit: LineFit) -> Floats:
