@@ -226,9 +226,9 @@ def test_noise_stated_as_none_is_refused_where_it_leaves_no_digits(probe):
 
 
 def test_few_digits_are_warned_of():
-    quiet = Integrator("main", read_noise=1e-9, walk_noise=1e-9, u_drift=1e-6)
+    quiet = Integrator("main", read_noise=3e-10, walk_noise=3e-10, u_drift=1e-6)
     passes = [
-        scan(DIPOLE, RECT, one, 800, seed=5, walk=1e-9, read=1e-9, integrator=quiet)
+        scan(DIPOLE, RECT, one, 800, seed=5, walk=3e-10, read=3e-10, integrator=quiet)
         for one in (ENDS, ENDS[::-1])
     ]
     _, fmap = results_of(campaign_of(passes, stage=Stage()), knot_spacing=0.003)

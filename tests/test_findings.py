@@ -11,8 +11,10 @@ from fieldmap.bench.bench_errors import Errors, Noise
 from fieldmap.bench.sources import TanhMagnet
 from fieldmap.estimate import map_findings, stitch
 from fieldmap.estimate.findings import Finding, pass_findings
+from fieldmap.estimate.findings.stated import departures
 from fieldmap.readings import Axis, Coil, Integrator, PointReference, Stage
 from tests.shop import MAIN, RECT, ROUND, STAGE, WIRE, measured, planned
+from tests.solved_lines import fitted, four_passes
 
 SHORT = TanhMagnet(0.5, length=0.1, lam=0.03 / np.pi)
 LINE = Axis("z", (-0.18, 0.18), (-0.02, 0.02))
@@ -184,3 +186,17 @@ def test_every_remark_is_one_sentence_with_a_place_or_a_number():
             "text": one.text,
         }
         assert isinstance(one, Finding)
+
+
+def test_departures_are_unit_normals_or_nothing():
+    # nothing checks a wire's size without a reference; the way back tells the lag
+    off = []
+    for seed in range(8):
+        fit = fitted(four_passes(seed=seed))
+        found = dict(zip([one.name for one in fit.unknowns], departures(fit).tolist(), strict=True))
+        assert found["gain wire"] == found["scale"] == 0.0
+        off += [abs(value) for name, value in found.items() if name.startswith("drift")]
+    assert max(off) < 4.5
+    late = fitted(four_passes(errors=Errors(lag=0.02, noise=NOISE)))
+    lag = [one.kind for one in late.unknowns].index("lag")
+    assert departures(late)[lag] > 8
