@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, NamedTuple
 
 import numpy as np
 import numpy.typing as npt
@@ -249,16 +249,22 @@ def _fit_one(
         raise _for_a_reason(
             error, blamed(passes, lambda others: fit(chosen, passes=others))
         ) from error
-    remarks: list[Finding] = []
-    spoilt = grossly_wrong(best)
-    if spoilt:  # finer knots would only follow the fault
-        remarks = blamed(passes, lambda others: fit(chosen, passes=others), best)
+    named, refined = [], _Refined(best)
+    if grossly_wrong(best):  # finer knots would only follow the fault
+        named = blamed(passes, lambda others: fit(chosen, passes=others), best)
     elif spacing is None:
-        best, remarks = _refine(best, fit, campaign.axis)
-    remarks += check_digits(best, _result_rows(best, campaign.axis))
-    remarks += line_findings(best, low, high, campaign.stage, gap, scanned=not (spoilt and remarks))
+        refined = _refine(best, fit, campaign.axis)
+    best = refined.best
+    said = [
+        *named,
+        *refined.remarks,
+        *check_digits(best, _result_rows(best, campaign.axis)),
+        *line_findings(
+            best, low, high, campaign.stage, gap, scanned=not named, finer=refined.finer
+        ),
+    ]
     numbers = tuple(number for number, _ in numbered)
-    return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(remarks), numbers)
+    return MappedLine(passes[0].x, passes[0].y, low, high, best, tuple(said), numbers)
 
 
 def _undetermined(passes: Sequence[Pass], error: np.linalg.LinAlgError) -> RefusedError:
@@ -282,31 +288,37 @@ def _for_a_reason(error: RefusedError, remarks: Sequence[Finding]) -> RefusedErr
     return error
 
 
-def _refine(
-    best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis
-) -> tuple[LineFit, list[Finding]]:
+class _Refined(NamedTuple):
+    """Knots that do, the same on finer knots where they were tried, and what is to be said."""
+
+    best: LineFit
+    finer: LineFit | None = None
+    remarks: tuple[Finding, ...] = ()
+
+
+def _refine(best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis) -> _Refined:
     """Halve the knots until that moves no result by more than STILL times its uncertainty.
 
     Residuals that halving makes whiter show knots too coarse for very quiet readings as well.
     """
     for _ in range(HALVINGS):
         if best.spline.size > MOST_KNOTS / 2:
-            return best, [_unsure("halving the knots was not tried: there would be too many")]
+            return _unsure(best, "was not tried: there would be too many")
         try:
             finer = fit(best.spline.spacing / 2, best)
         except RefusedError:  # what coarser knots determine, finer ones lose to rounding
-            return best, [_unsure("halving the knots was not possible: too few digits are left")]
+            return _unsure(best, "was not possible: too few digits are left")
         if lost(finer, _result_rows(finer, axis)) >= NONE:
-            return best, [_unsure("halving the knots was of no use: too few digits are left")]
+            return _unsure(best, "was of no use: too few digits are left")
         moved = _moved(best, finer, axis)
         whiter = _misfit(finer) < WHITER * _misfit(best) or _less_coloured(best, finer)
         if moved <= STILL and not whiter:
-            return best, []
+            return _Refined(best, finer)
         best = finer
         if faulty(best):  # finer knots would only follow the fault
-            return best, []
+            return _Refined(best)
     spacing = f"{best.spline.spacing * 1e3:.3g} mm"
-    return best, [_unsure(f"halving the knots to {spacing} still moved a result by {moved:.2g} u")]
+    return _unsure(best, f"to {spacing} still moved a result by {moved:.2g} u")
 
 
 def _misfit(fit: LineFit) -> float:
@@ -321,9 +333,9 @@ def _less_coloured(coarse: LineFit, fine: LineFit) -> bool:
     return before > COLOURED and colour(fine) < 0.8 * before
 
 
-def _unsure(outcome: str) -> Finding:
-    text = f"{outcome}; check the gap in [magnet], which sets the first knot spacing."
-    return Finding("knots-not-settled", "warn", "[magnet] gap", text)
+def _unsure(best: LineFit, outcome: str) -> _Refined:
+    text = f"halving the knots {outcome}; check the gap in [magnet], which sets the first spacing."
+    return _Refined(best, remarks=(Finding("knots-not-settled", "warn", "[magnet] gap", text),))
 
 
 def _moved(coarse: LineFit, fine: LineFit, axis: Axis) -> float:

@@ -21,7 +21,14 @@ SHARE_WORTH_A_WORD = 0.75  # of the variance of the level
 
 
 def line_findings(
-    fit: LineFit, low: float, high: float, stage: Stage, gap: float, *, scanned: bool = True
+    fit: LineFit,
+    low: float,
+    high: float,
+    stage: Stage,
+    gap: float,
+    *,
+    scanned: bool = True,
+    finer: LineFit | None = None,
 ) -> list[Finding]:
     """Remarks on one fitted line.
 
@@ -37,12 +44,17 @@ def line_findings(
         Full gap or bore diameter, m.
     scanned : bool
         Look for what is wrong with the readings; not where one gross fault explains it all.
+    finer : LineFit, optional
+        The same on finer knots, where that was solved: what only the coarser one shows is no
+        fault of the readings.
 
     Returns
     -------
     list of Finding
     """
-    found = [*scan_findings(fit, gap), *contradicted(fit)] if scanned else []
+    found = _wrong(fit, gap) if scanned else []
+    if found and finer is not None:
+        found = _wrong(finer, gap)
     found += [finding for one in fit.passes for finding in _sampling(one.one, gap)]
     found += _drift(fit, low, high)
     found += trusted(fit)
@@ -57,6 +69,11 @@ def line_findings(
             )
         )
     return found
+
+
+def _wrong(fit: LineFit, gap: float) -> list[Finding]:
+    """What the readings show to be wrong with themselves or with what is stated."""
+    return [*scan_findings(fit, gap), *contradicted(fit)]
 
 
 def _sampling(one: Pass, gap: float) -> list[Finding]:
