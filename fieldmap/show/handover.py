@@ -102,13 +102,21 @@ def _spare_readings(fmap: xr.Dataset, folder: Path, names: Sequence[str]) -> Non
     read = {facts["sha256"] for facts in map_passes(fmap)} - {""}
     for name in names:
         place = folder / name
-        if place.is_file() and hashlib.sha256(place.read_bytes()).hexdigest() in read:
+        if _digest(place) in read:
             raise InputError(
                 str(place),
                 "one of the pass tables that the map was made from",
                 "a folder in which results take the place of earlier results only",
                 "name another folder",
             )
+
+
+def _digest(place: Path) -> str:
+    """Hash of a file as passes keep it; of what cannot be read, none: replacing it is refused."""
+    try:
+        return hashlib.sha256(place.read_bytes()).hexdigest() if place.is_file() else ""
+    except OSError:
+        return ""
 
 
 def _agree(own: Results, given: Results) -> bool:
