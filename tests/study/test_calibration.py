@@ -10,7 +10,7 @@ import pytest
 from tests.study.calibration import figures, run, table
 
 SAMPLE = os.environ.get("FIELDMAP_STUDY", "whole") == "sample"
-EACH = 7 if SAMPLE else 100
+EACH = 6 if SAMPLE else 100
 COILS = ("rectangular", "round")
 
 

@@ -10,7 +10,7 @@ import pytest
 from tests.study.tails import RESULTS, figures, run, table
 
 SAMPLE = os.environ.get("FIELDMAP_STUDY", "whole") == "sample"
-EACH = 7 if SAMPLE else 100
+EACH = 5 if SAMPLE else 100
 
 
 @pytest.fixture(scope="module")
