@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.estimate.findings.scan.signatures import field_steps, slope
+from fieldmap.estimate.findings.scan.signatures import field_steps, in_motion, slope
 from fieldmap.readings.probe import Coil
 
 if TYPE_CHECKING:
@@ -52,23 +52,21 @@ def shared_signatures(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Fl
 def _of_stage(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Floats]]]:
     """A lag and a backlash, as far as they tell one pass from another."""
     moved = {
-        n: (slope(solved, n, solved.state.b), model.bins) for n, model in enumerate(solved.models)
+        n: (slope(solved, n, solved.state.b), in_motion(model), model.bins)
+        for n, model in enumerate(solved.models)
     }
-    if solved.state.index("lag") is None:
-        speed = solved.frame.speed
-        yield (
-            "lag",
-            {n: np.diff(s * (bins.speed - speed))[:, None] for n, (s, bins) in moved.items()},
-        )
+    speed, sense = solved.frame.speed, solved.frame.sense
+    if solved.state.index("lag") is not None:
+        return  # it takes a backlash in as well, but for the ramps, which tell next to nothing
+    late = {n: m * np.diff(s * (bins.speed - speed)) for n, (s, m, bins) in moved.items()}
+    yield "lag", {n: column[:, None] for n, column in late.items()}
     if solved.state.index("backlash") is None:
-        sense = solved.frame.sense
-        yield (
-            "backlash",
-            {n: np.diff(s * (bins.sense - sense) / 2)[:, None] for n, (s, bins) in moved.items()},
-        )
+        play = {n: m * np.diff(s * (bins.sense - sense) / 2) for n, (s, m, bins) in moved.items()}
+        yield "backlash", {n: column[:, None] for n, column in play.items()}
 
 
 def _widening(solved: Solved, number: int) -> Floats:
     """Increments if the window is longer by its own length."""
     model = solved.models[number]
-    return np.asarray(model.gain(solved.state) * (model.widening() @ solved.state.b))[:, None]
+    change = model.gain(solved.state) * (model.widening() @ solved.state.b)
+    return np.asarray(in_motion(model) * change)[:, None]

@@ -13,6 +13,7 @@ import numpy as np
 import numpy.typing as npt
 
 if TYPE_CHECKING:
+    from fieldmap.estimate.model import PassModel
     from fieldmap.estimate.solved import Solved
 
 __all__ = [
@@ -20,6 +21,7 @@ __all__ = [
     "Signatures",
     "field_shapes",
     "field_steps",
+    "in_motion",
     "pass_signatures",
     "slope",
     "step_within",
@@ -38,6 +40,7 @@ FaultKind = Literal[
     "drift follows temperature",
 ]
 
+STANDING = 0.1  # of the fastest bin: what is slower stands, and only jitters
 CUTS = 24  # places where a change within a pass is looked for
 BENDS = 6  # half waves of a drift within a pass
 MOST_PIECES = 24  # of a difference between the field of a pass and that of the others
@@ -87,15 +90,16 @@ def pass_signatures(solved: Solved, number: int, b: Floats) -> list[Signatures]:
     """
     model = solved.models[number]
     steps, swing = field_steps(solved, number, b), slope(solved, number, b)
+    moving = in_motion(model)
     time, place = _centred(model.bins.time), model.bins.position - model.bins.position.mean()
     later = 0.5 * (time[1:] + time[:-1])
     found = [
         _throughout("factor", steps),
-        _throughout("shift", np.diff(swing)),
-        _throughout("stretch", np.diff(swing * place)),
+        _throughout("shift", moving * np.diff(swing)),
+        _throughout("stretch", moving * np.diff(swing * place)),
         _throughout("factor drifts", steps * later),
         _after("factor changes", steps),
-        _slips(swing),
+        _slips(swing, moving),
         Signatures("drift bends", _bends(time), np.zeros(BENDS, dtype=np.intp)),
     ]
     temperature = model.one.temperature
@@ -104,6 +108,16 @@ def pass_signatures(solved: Solved, number: int, b: Floats) -> list[Signatures]:
         mean = np.add.reduceat(temperature, model.bins.starts) / counted
         found.append(_throughout("drift follows temperature", np.diff(mean)))
     return found
+
+
+def in_motion(model: PassModel) -> Floats:
+    """1 for each increment of a pass over which the probe moved, 0 where it stood.
+
+    A probe that stands is recorded at positions that jitter. What they would change is in the
+    residuals with the opposite sign: a signature made of it would always be found.
+    """
+    fast = np.abs(model.bins.speed) >= STANDING * np.abs(model.bins.speed).max()
+    return np.asarray(fast[1:] & fast[:-1], dtype=float)
 
 
 def field_shapes(solved: Solved, number: int, piece: float) -> Floats:
@@ -127,12 +141,13 @@ def field_shapes(solved: Solved, number: int, piece: float) -> Floats:
     middles = model.spline.middles()
     hats = np.array([np.interp(middles, corners, one) for one in np.eye(count)]).T
     rows = solved.design(number)[:, : model.spline.size]
-    return np.asarray(rows @ hats)
+    return np.asarray(in_motion(model)[:, None] * (rows @ hats))
 
 
 def field_steps(solved: Solved, number: int, b: Floats) -> Floats:
-    """Increments of a pass that the field b (T, recorded frame) makes, V s."""
-    return np.asarray(solved.design(number)[:, : len(b)] @ b)
+    """Increments of a pass that the field b (T, recorded frame) makes while it moves, V s."""
+    steps = solved.design(number)[:, : len(b)] @ b
+    return np.asarray(in_motion(solved.models[number]) * steps)
 
 
 def step_within(solved: Solved, number: int, first: int) -> tuple[Floats, npt.NDArray[np.intp]]:
@@ -176,11 +191,12 @@ def _after(kind: FaultKind, steps: Floats) -> Signatures:
     return Signatures(kind, columns, cuts)
 
 
-def _slips(swing: Floats) -> Signatures:
+def _slips(swing: Floats, moving: Floats) -> Signatures:
     """The positions from some bin on are too small by one metre."""
-    cuts = _spread(np.abs(np.diff(swing)))
+    cuts = _spread(moving * np.abs(np.diff(swing)))
     after = np.arange(len(swing))[:, None] >= cuts
-    return Signatures("position slips", np.diff(np.where(after, swing[:, None], 0.0), axis=0), cuts)
+    columns = np.diff(np.where(after, swing[:, None], 0.0), axis=0)
+    return Signatures("position slips", moving[:, None] * columns, cuts)
 
 
 def _spread(weight: Floats) -> npt.NDArray[np.intp]:

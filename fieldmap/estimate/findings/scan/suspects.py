@@ -34,6 +34,7 @@ MOST = 3  # faults that are looked for in a line: more are most often one of ano
 ALMOST = 0.995  # of the χ² of the most telling: a plainer fault explains as much …
 BY_CHANCE = 30.0  # … also where it lacks so much of it
 LESS_PLAIN = (
+    ("backlash",),  # beside a lag, which is the same but on the ramps
     ("factor drifts", "drift bends", "drift follows temperature"),
     ("factor changes", "position slips"),
 )
