@@ -10,6 +10,7 @@ from typing import TYPE_CHECKING, Any, Final
 
 import numpy as np
 
+from fieldmap.estimate.parameters import UNITS
 from fieldmap.readings.passes import (
     Axis,
     FlipReference,
@@ -79,7 +80,7 @@ _PASS: Final[Mapping[str, Test]] = {
     "readings": _whole,
 }
 _UNKNOWN: Final[Mapping[str, Test]] = {
-    "kind": _text,
+    "kind": lambda value: _text(value) and value in UNITS,
     "where": _text,
     "unit": _text,
     "mean": _number,
@@ -237,7 +238,11 @@ def check_arrays(fmap: xr.Dataset) -> None:
     for dims, names in _DIMENSIONS.items():
         for name in names.split():
             _require(fmap[name].dims == tuple(dims.split()), name)
-    _check_sizes(fmap.sizes, len(json.loads(fmap.attrs["lines"])))
+    lines = json.loads(fmap.attrs["lines"])
+    _check_sizes(fmap.sizes, len(lines))
+    owners = fmap["reference_line"].values.tolist()
+    counts = [owners.count(number) for number in range(len(lines))]
+    _require(counts == [len(one["references"]) for one in lines], "lines")
     for name in ("x", "y", "z"):
         _require(name in fmap.coords and fmap[name].dims == (name,), name)
         _require(_grows(fmap[name].values), name)

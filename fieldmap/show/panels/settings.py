@@ -23,6 +23,8 @@ LOG: Final = logging.getLogger("fieldmap")
 LARGEST: Final = 1_000_000  # bytes
 OWN: Final = frozenset({"format", "campaign"})
 
+LONGEST: Final = 200  # letters of a reason
+
 
 class _Entry(NamedTuple):
     get: Callable[[], Any]
@@ -91,7 +93,7 @@ class Settings:
                 entry.put(values[name])
             except Exception as error:  # noqa: BLE001 - whatever stands in the file
                 reason = str(error).splitlines()[0] if str(error) else type(error).__name__
-                told.append(f"The setting '{name}' was not taken up ({reason}).")
+                told.append(f"The setting '{name}' was not taken up ({reason:.{LONGEST}}).")
         return told
 
     def read(self, campaign_file: Path) -> tuple[dict[str, Any], str]:
