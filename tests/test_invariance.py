@@ -33,7 +33,13 @@ OF_U = 1e-4  # of u itself, which has no more digits than two
 PLACES = ("boundary_in", "boundary_out", "magnetic_centre")
 KEYS = ("integrated_field", "central_field", "magnetic_length", *PLACES)
 # noise and drift stated or open, voltage, increments, droop
-DRAWN = (("wire+point", 1), ("rectangular+flip", 1), ("mixed", 4))
+DRAWN = (
+    ("mixed", 4),
+    *(
+        pytest.param(one, marks=pytest.mark.slow)
+        for one in (("wire+point", 1), ("rectangular+flip", 1))
+    ),
+)
 CHANGES = {
     "order and names": lambda campaign: renamed(reordered(campaign)),
     "time since an epoch": later(1.7e9),
