@@ -16,7 +16,17 @@ if TYPE_CHECKING:
     from fieldmap.magnet.results import Results
     from fieldmap.readings.passes import Campaign
 
-__all__ = ["JUDGED", "OUTCOMES", "Outcome", "OutcomeName", "Twin", "judged", "reduced", "twin_of"]
+__all__ = [
+    "JUDGED",
+    "OUTCOMES",
+    "Outcome",
+    "OutcomeName",
+    "Twin",
+    "judged",
+    "reduced",
+    "twin_of",
+    "unsaid",
+]
 
 OutcomeName = Literal["harmless", "found", "refused", "off", "silent"]
 Key = tuple[int, str]
@@ -129,12 +139,15 @@ def judged(results: Results, twin: Twin) -> Outcome:
     errors = _errors(results, twin.truth)
     new = _warnings(results) - twin.said
     said = tuple(sorted(f"{code} {where}".strip() for code, where in new))
-    worst = max((abs(error) for error in errors.values()), default=0.0)
-    if said:
-        return Outcome("found", errors, said)
+    return Outcome("found" if said else unsaid(errors), errors, said)
+
+
+def unsaid(errors: Mapping[Key, float]) -> OutcomeName:
+    """What errors are called of which nothing is said."""
+    worst = max(map(abs, errors.values()), default=0.0)
     if worst <= HARMLESS:
-        return Outcome("harmless", errors)
-    return Outcome("off" if worst <= SILENT else "silent", errors)
+        return "harmless"
+    return "off" if worst <= SILENT else "silent"
 
 
 def _warnings(results: Results) -> set[tuple[str, str]]:

@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from fieldmap.estimate.response import Response
     from fieldmap.readings.passes import Pass
 
-__all__ = ["Bins", "bin_pass", "bin_starts", "mean_rows", "pass_starts"]
+__all__ = ["Bins", "bin_pass", "bin_starts", "in_motion", "mean_rows", "pass_starts"]
 
 Floats = npt.NDArray[np.float64]
 Ints = npt.NDArray[np.intp]
@@ -177,11 +177,16 @@ def _bin_speed(one: Pass, starts: Ints) -> Floats:
 
 def _sense(speed: Floats) -> Floats:
     """Direction of travel of each bin, carried on through dwells."""
-    moving = np.flatnonzero(np.abs(speed) > SLOWEST * np.abs(speed).max(initial=0.0))
+    moving = np.flatnonzero(in_motion(speed))
     if not len(moving):
         return np.zeros(len(speed))
     last = np.searchsorted(moving, np.arange(len(speed)), side="right") - 1
     return np.asarray(np.sign(speed[moving[np.maximum(last, 0)]]))
+
+
+def in_motion(speed: Floats) -> npt.NDArray[np.bool_]:
+    """Which bins travel; the others stand, and only jitter."""
+    return np.asarray(np.abs(speed) > SLOWEST * np.abs(speed).max(initial=0.0))
 
 
 def _bridge(one: Pass, starts: Ints, count: Floats) -> Floats:

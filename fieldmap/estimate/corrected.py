@@ -71,16 +71,9 @@ def _corrected(one: Pass, corrections: Sequence[Correction]) -> Pass:
             flux = flux * each.value
         elif each.kind == "polarity":
             flux = -flux
-    stays = left_in(one, corrections)
-    return replace(
-        one,
-        time=one.time[stays],
-        position=position[stays],
-        flux=flux[stays],
-        temperature=None if one.temperature is None else one.temperature[stays],
-        current=None if one.current is None else one.current[stays],
-        corrections=(*one.corrections, *corrections),
-    )
+    made = (*one.corrections, *corrections)
+    moved = replace(one, position=position, flux=flux, corrections=made)
+    return moved.only(left_in(one, corrections))
 
 
 def reached(time: Floats, position: Floats, lag: float) -> Floats:

@@ -47,6 +47,11 @@ class PassFit:
     freedom: float
     level: NoiseLevel
 
+    @property
+    def square(self) -> float:
+        """Sum of the squared residuals."""
+        return float(self.residual @ self.residual)
+
 
 @dataclass(frozen=True, eq=False)
 class LineFit:

@@ -16,6 +16,7 @@ from fieldmap.estimate.findings import Finding
 from fieldmap.estimate.map_attributes import FORMAT, describe
 from fieldmap.estimate.map_facts import check_arrays, check_facts
 from fieldmap.estimate.mapped_line import MappedLine
+from fieldmap.estimate.noise import total
 from fieldmap.estimate.provenance import (
     map_corrections,
     map_evidence,
@@ -33,9 +34,7 @@ if TYPE_CHECKING:
 
     import xarray as xr
 
-    from fieldmap.estimate.evidence import Evidence
     from fieldmap.estimate.fit import LineFit
-    from fieldmap.estimate.noise import Tridiagonal
 
 __all__ = [
     "FORMAT",
@@ -212,19 +211,13 @@ def check_map(fmap: xr.Dataset, where: str) -> None:
         for read in readers:
             read(fmap)
         for index in range(len(lines)):
-            _sum_of_noise(map_evidence(fmap, index)).factor()
+            total(map_evidence(fmap, index).noise).factor()
     except InputError as error:
         raise _no_map(where, error.found) from error
     except (*_DAMAGE, RecursionError) as error:
         raise _no_map(where, f"a part that is missing or damaged ({error!s:.120})") from error
     if not whole:
         raise _no_map(where, "coefficients that are not all numbers")
-
-
-def _sum_of_noise(evidence: Evidence) -> Tridiagonal:
-    """Covariance of the increments of a line, all causes together."""
-    first, *others = evidence.noise.values()
-    return sum(others, first)
 
 
 def _is_whole(line: FieldLine) -> bool:

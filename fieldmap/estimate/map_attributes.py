@@ -123,7 +123,7 @@ def _pass_facts(one: PassFit) -> dict[str, Any]:
         "walk_stated": one.level.walk_known,
         "read_noise": one.level.read,
         "read_stated": one.level.read_known,
-        "chi_square": float(one.residual @ one.residual),
+        "chi_square": one.square,
         "freedom": one.freedom,
         "corrections": [correction.as_entry() for correction in measured.corrections],
     }

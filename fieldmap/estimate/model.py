@@ -42,6 +42,7 @@ __all__ = [
     "PassModel",
     "Rows",
     "State",
+    "dense_columns",
     "pass_information",
     "reference_information",
     "reference_rows",
@@ -266,10 +267,15 @@ class PassModel:
         return Rows(design, target)
 
 
+def dense_columns(design: sparse.csr_array) -> tuple[npt.NDArray[np.intp], Floats]:
+    """The columns that a pass touches, and their content: a stretch of the knots, most often."""
+    used = np.flatnonzero(np.diff(design.tocsc().indptr))
+    return used, np.asarray(design[:, used].todense())
+
+
 def pass_information(rows: Rows, covariance: Tridiagonal) -> Information:
     """Normal equations of one pass."""
-    used = np.flatnonzero(np.diff(rows.design.tocsc().indptr))
-    dense = np.asarray(rows.design[:, used].todense())
+    used, dense = dense_columns(rows.design)
     solved = covariance.solve(np.column_stack([dense, rows.target]))
     product = rows.design[:, used].T @ solved
     size = rows.design.shape[1]

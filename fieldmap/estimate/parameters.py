@@ -17,7 +17,7 @@ if TYPE_CHECKING:
     from fieldmap.readings.passes import Pass
     from fieldmap.readings.probe import Probe, Stage
 
-__all__ = ["CORRECTED", "GAINS", "Kind", "Nuisance", "any_drift", "nuisances"]
+__all__ = ["CORRECTED", "GAINS", "Kind", "Nuisance", "drift_sd", "nuisances"]
 
 Kind = Literal[
     "drift",
@@ -113,10 +113,10 @@ def nuisances(passes: Sequence[Pass], probes: Sequence[Probe], stage: Stage) -> 
     """
     found: list[Nuisance] = []
     for one in passes:
-        known, scale = one.integrator.u_drift, integrator_scale(one)
-        sd = any_drift(one) if known is None else known * abs(scale)
+        sd = drift_sd(one)
         if sd > 0:
-            found.append(Nuisance("drift", one.name, one.integrator.drift * scale, sd))
+            mean = one.integrator.drift * integrator_scale(one)
+            found.append(Nuisance("drift", one.name, mean, sd))
     for probe in {probe.name: probe for probe in probes}.values():
         found += _of_probe(probe)
     shared: list[tuple[Kind, float]] = [
@@ -163,7 +163,12 @@ def _of_probe(probe: Probe) -> list[Nuisance]:
     return [Nuisance(kind, probe.name, mean, float(sd)) for kind, mean, sd in found if sd > 0]
 
 
-def any_drift(one: Pass) -> float:
-    """Where no drift is stated: one that could have made all the flux of the pass, V s/s."""
+def drift_sd(one: Pass) -> float:
+    """Standard uncertainty of the drift of a pass before the scan, V s/s.
+
+    Where none is stated: a drift that could have made all its flux.
+    """
+    if one.integrator.u_drift is not None:
+        return one.integrator.u_drift * abs(integrator_scale(one))
     duration = float(one.time[-1] - one.time[0])
     return (float(np.ptp(one.flux)) or 1e-15) / duration

@@ -243,15 +243,16 @@ def _fit_one(
         except np.linalg.LinAlgError as error:
             raise _undetermined(passes, error) from error
 
+    def of_some(others: list[Pass]) -> LineFit:
+        return fit(chosen, passes=others)
+
     try:
         best = fit(chosen)
     except RefusedError as error:
-        raise _for_a_reason(
-            error, blamed(passes, lambda others: fit(chosen, passes=others))
-        ) from error
+        raise _for_a_reason(error, blamed(passes, of_some)) from error
     named, refined = [], _Refined(best)
     if grossly_wrong(best):  # finer knots would only follow the fault
-        named = blamed(passes, lambda others: fit(chosen, passes=others), best)
+        named = blamed(passes, of_some, best)
     elif spacing is None:
         refined = _refine(best, fit, campaign.axis)
     best = refined.best
@@ -323,7 +324,7 @@ def _refine(best: LineFit, fit: Callable[[float, LineFit], LineFit], axis: Axis)
 
 def _misfit(fit: LineFit) -> float:
     """Mean square of the whitened residuals over what is expected of them."""
-    square = sum(float(one.residual @ one.residual) for one in fit.passes)
+    square = sum(one.square for one in fit.passes)
     return square / max(sum(one.freedom for one in fit.passes), 1.0)
 
 

@@ -13,6 +13,7 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.model import dense_columns
 from fieldmap.estimate.noise import Tridiagonal, read_part
 from fieldmap.estimate.resolution import counted_step
 
@@ -165,8 +166,7 @@ def _part(model: PassModel, name: str, value: float) -> Tridiagonal:
 
 def _score(one: Fitted, parts: Sequence[Tridiagonal], covariance: Floats) -> tuple[Floats, Floats]:
     """Gradient and average information of the restricted likelihood of one pass."""
-    used = np.flatnonzero(np.diff(one.rows.design.tocsc().indptr))
-    design = np.asarray(one.rows.design[:, used].todense())
+    used, design = dense_columns(one.rows.design)
     block = covariance[np.ix_(used, used)]
     solved = one.covariance.solve(np.column_stack([design, one.residual]))
     design_solved, weighed = solved[:, :-1], solved[:, -1]

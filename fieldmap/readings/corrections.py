@@ -8,7 +8,7 @@ from __future__ import annotations
 
 import json
 from dataclasses import dataclass, replace
-from typing import TYPE_CHECKING, Any, Final, Literal
+from typing import TYPE_CHECKING, Any, Final, Literal, get_args
 
 import numpy as np
 import numpy.typing as npt
@@ -35,15 +35,7 @@ __all__ = [
 
 CorrectionKind = Literal["polarity", "factor", "lag", "shift", "step", "spikes"]
 
-CORRECTIONS: Final[tuple[CorrectionKind, ...]] = (
-    "polarity",
-    "factor",
-    "lag",
-    "shift",
-    "step",
-    "spikes",
-)
-
+CORRECTIONS: Final[tuple[CorrectionKind, ...]] = get_args(CorrectionKind)
 
 RINGING: Final = 8  # samples beside a wild voltage in which its share falls to a millionth
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import math
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING, Literal
 
 import numpy as np
@@ -84,6 +84,17 @@ class Pass:
     source: Path | None = None
     sha256: str = ""
     corrections: tuple[Correction, ...] = ()
+
+    def only(self, rows: npt.NDArray[np.bool_]) -> Pass:
+        """The pass with some of its readings, as if it had no others."""
+        return replace(
+            self,
+            time=self.time[rows],
+            position=self.position[rows],
+            flux=self.flux[rows],
+            temperature=None if self.temperature is None else self.temperature[rows],
+            current=None if self.current is None else self.current[rows],
+        )
 
 
 @dataclass(frozen=True)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import textwrap
 from html import escape
 from typing import TYPE_CHECKING, Final
 
@@ -10,6 +9,7 @@ from fieldmap.show.budget_rows import with_unit
 from fieldmap.show.display import Shown
 from fieldmap.show.look import MM
 from fieldmap.show.numbers import plain, rounded, scale_for
+from fieldmap.show.plain_text import ruled_table, wrapped
 from fieldmap.show.rows import label, one_line
 
 if TYPE_CHECKING:
@@ -21,7 +21,6 @@ if TYPE_CHECKING:
 __all__ = ["comparison_html", "comparison_text", "show_comparison"]
 
 K: Final = 2.0
-WIDTH: Final = 88
 RESULTS_HEAD: Final = ("result", "first", "second", "difference", "± U", "unit", "significant")
 STRETCHES_HEAD: Final = ("from (mm)", "to (mm)", "largest at (mm)", "difference", "± band", "unit")
 
@@ -57,13 +56,13 @@ def comparison_text(comparison: Comparison) -> str:
     parts = [_title(comparison)]
     if comparison.results:
         rows = [_result_cells(key, one) for key, one in comparison.results.items()]
-        parts.append(f"{_wrapped(_coverage())}\n{_table(RESULTS_HEAD, rows)}")
-    parts.append("\n".join(_wrapped(one) for one in _sentences(comparison)))
+        parts.append(f"{wrapped(_coverage())}\n{_table(RESULTS_HEAD, rows)}")
+    parts.append("\n".join(wrapped(one) for one in _sentences(comparison)))
     if comparison.stretches:
         rows = [_stretch_cells(one) for one in comparison.stretches]
         parts.append(_table(STRETCHES_HEAD, rows))
     if comparison.remarks:
-        parts.append("\n".join(_wrapped(one_line(one)) for one in comparison.remarks))
+        parts.append("\n".join(wrapped(one_line(one)) for one in comparison.remarks))
     return "\n\n".join(parts)
 
 
@@ -183,17 +182,8 @@ def _stretch_cells(one: Stretch) -> tuple[str, ...]:
 
 def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> str:
     cells = [tuple(head), *rows]
-    widths = [max(len(row[i]) for row in cells) for i in range(len(head))]
-    left = {0} if head is RESULTS_HEAD else set()
-    lines = [
-        "  ".join(
-            cell.ljust(width) if i in left else cell.rjust(width)
-            for i, (cell, width) in enumerate(zip(row, widths, strict=True))
-        ).rstrip()
-        for row in cells
-    ]
-    lines.insert(1, "  ".join("-" * width for width in widths))
-    return "\n".join(lines)
+    left = (0,) if head is RESULTS_HEAD else ()
+    return "\n".join(ruled_table(cells, left))
 
 
 def _html_table(title: str, head: Sequence[str], rows: Sequence[tuple[str, Sequence[str]]]) -> str:
@@ -208,7 +198,3 @@ def _html_table(title: str, head: Sequence[str], rows: Sequence[tuple[str, Seque
         f'<table class="fm-table"><caption>{escape(title)}</caption>'
         f"<thead><tr>{names}</tr></thead><tbody>{body}</tbody></table>"
     )
-
-
-def _wrapped(text: str) -> str:
-    return textwrap.fill(text, WIDTH, subsequent_indent="  ", break_on_hyphens=False)

@@ -2,22 +2,19 @@
 
 from __future__ import annotations
 
-import textwrap
 from html import escape
 from typing import TYPE_CHECKING, Final
 
 from fieldmap.show.display import Shown
 from fieldmap.show.numbers import rounded, scale_for
+from fieldmap.show.plain_text import ruled_table, wrapped
 from fieldmap.show.rows import label, one_line
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
-
     from fieldmap.bench.confirmation import Confirmation, Confirmed
 
 __all__ = ["confirmation_html", "confirmation_shown", "confirmation_text"]
 
-WIDTH: Final = 88
 _HEAD: Final = ("result", "value", "u", "unit", "spread", "mean off", "95 % within", "inside 2 u")
 _LEFT: Final = (0, 3)  # columns of words; numbers stand to the right
 _NOTE: Final = "Spread, mean and 95 % interval of the trials' errors are in units of u."
@@ -48,12 +45,9 @@ def confirmation_text(confirmation: Confirmation) -> str:
     Magnetic length  400.0049  0.0084  mm      0.71     +0.03  -1.0 to +1.0       100 %
     """
     cells = [_HEAD, *(_cells(one, _several(confirmation)) for one in confirmation.results)]
-    widths = [max(len(row[i]) for row in cells) for i in range(len(_HEAD))]
-    table = [_aligned(row, widths) for row in cells]
-    table.insert(1, "  ".join("-" * width for width in widths))
-    head = [_title(confirmation), _wrapped(confirmation.refused), _NOTE]
-    said = [_wrapped(sentence) for sentence in _sentences(confirmation)]
-    return "\n".join([*head, "", *table, "", *said])
+    head = [_title(confirmation), wrapped(one_line(confirmation.refused)), _NOTE]
+    said = [wrapped(one_line(sentence)) for sentence in _sentences(confirmation)]
+    return "\n".join([*head, "", *ruled_table(cells, _LEFT), "", *said])
 
 
 def confirmation_html(confirmation: Confirmation) -> str:
@@ -156,15 +150,3 @@ def _row(one: Confirmed, several: bool) -> str:  # noqa: FBT001 - as above
         + "".join(f"<td>{escape(cell)}</td>" for cell in cells)
         + "</tr>"
     )
-
-
-def _aligned(cells: Sequence[str], widths: Sequence[int]) -> str:
-    padded = [
-        cell.ljust(width) if i in _LEFT else cell.rjust(width)
-        for i, (cell, width) in enumerate(zip(cells, widths, strict=True))
-    ]
-    return "  ".join(padded).rstrip()
-
-
-def _wrapped(text: str) -> str:
-    return textwrap.fill(one_line(text), WIDTH, subsequent_indent="  ", break_on_hyphens=False)

@@ -2,24 +2,21 @@
 
 from __future__ import annotations
 
-import textwrap
 from html import escape
 from typing import TYPE_CHECKING, Final
 
 from fieldmap.bench.fault_outcome import OUTCOMES
 from fieldmap.bench.faults import FAULTS
 from fieldmap.show.display import Shown
+from fieldmap.show.plain_text import ruled_table, wrapped
 from fieldmap.show.rows import one_line
 
 if TYPE_CHECKING:
-    from collections.abc import Sequence
-
     from fieldmap.bench.fault_trials import FaultTrials
     from fieldmap.bench.faults import FaultKind
 
 __all__ = ["faults_html", "faults_shown", "faults_text"]
 
-WIDTH: Final = 88
 _HEAD: Final = ("fault", *OUTCOMES, "unseen from severity")
 _NOTE: Final = (
     "Harmless: integrated field, central field and magnetic length within 2U. Found: a warning "
@@ -57,11 +54,8 @@ def faults_text(faults: FaultTrials) -> str:
     polarity         0      1        0    0       0
     """
     rows = [_HEAD, *(_cells(faults, kind) for kind in faults.kinds)]
-    widths = [max(len(row[i]) for row in rows) for i in range(len(_HEAD))]
-    lines = [_aligned(row, widths) for row in rows]
-    lines.insert(1, "  ".join("-" * width for width in widths))
-    said = [_wrapped(sentence) for sentence in _sentences(faults)]
-    return "\n".join([_title(faults), _wrapped(_NOTE), "", *lines, "", *said])
+    said = [wrapped(one_line(sentence)) for sentence in _sentences(faults)]
+    return "\n".join([_title(faults), wrapped(_NOTE), "", *ruled_table(rows), "", *said])
 
 
 def faults_html(faults: FaultTrials) -> str:
@@ -165,15 +159,3 @@ def _row(faults: FaultTrials, kind: FaultKind) -> str:
         f'<tr data-key="{escape(name)}"><th scope="row" title="{escape(FAULTS[name].words)}">'
         f"{escape(name)}</th>" + "".join(f"<td>{escape(cell)}</td>" for cell in cells) + "</tr>"
     )
-
-
-def _aligned(cells: Sequence[str], widths: Sequence[int]) -> str:
-    first, *others = [
-        cell.rjust(width) if i else cell.ljust(width)
-        for i, (cell, width) in enumerate(zip(cells, widths, strict=True))
-    ]
-    return "  ".join((first, *others)).rstrip()
-
-
-def _wrapped(text: str) -> str:
-    return textwrap.fill(one_line(text), WIDTH, subsequent_indent="  ", break_on_hyphens=False)

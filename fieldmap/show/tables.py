@@ -5,10 +5,10 @@ The same in HTML is in `fieldmap.show.markup`, and can be had from here too.
 
 from __future__ import annotations
 
-import textwrap
 from typing import TYPE_CHECKING, Any
 
 from fieldmap.show.markup import findings_html, results_html, verdicts_html
+from fieldmap.show.plain_text import ruled_table, wrapped
 from fieldmap.show.rows import (
     SEVERITY_WORDS,
     campaign_title,
@@ -37,8 +37,6 @@ __all__ = [
     "verdicts_html",
     "verdicts_text",
 ]
-
-WIDTH = 88
 
 
 def results_text(
@@ -111,7 +109,7 @@ def findings_text(findings: Iterable[Finding]) -> str:
         place = one_line(finding.where)
         head = SEVERITY_WORDS[finding.severity] + (f", {place}" if place else "")
         words = one_line(f"{finding.text} {finding.offer}".rstrip())
-        paragraphs.append(_wrapped(f"{head}: {words} [{finding.code}]"))
+        paragraphs.append(wrapped(f"{head}: {words} [{finding.code}]"))
     return "\n".join(paragraphs) or "No findings."
 
 
@@ -138,7 +136,7 @@ def verdicts_text(results: Results, limits: Sequence[Limit] = ()) -> str:
     ACCEPT Magnetic length: probability of conformity 99.99 %.
     """
     words = [verdict_words(verdict, results, limits) for verdict in results.verdicts]
-    lines = [_wrapped(f"{word.decision} {word.sentence}") for word in words]
+    lines = [wrapped(f"{word.decision} {word.sentence}") for word in words]
     return "\n".join(lines) or "No limits are set, so nothing was decided."
 
 
@@ -183,10 +181,7 @@ def _line_text(line: LineResults, truth: Mapping[str, Mapping[str, Any]] | None,
     cells = [_HEAD, *(_cells(row) for row in rows)]
     if truth is None:
         cells = [row[:4] for row in cells]
-    widths = [max(len(row[i]) for row in cells) for i in range(len(cells[0]))]
-    lines = [_aligned(row, widths) for row in cells]
-    lines.insert(1, "  ".join("-" * width for width in widths))
-    return "\n".join(lines)
+    return "\n".join(ruled_table(cells, _LEFT))
 
 
 _HEAD = ("result", "value", "± U", "unit", "truth", "off by")
@@ -195,15 +190,3 @@ _LEFT = (0, 3)  # columns of words; numbers stand to the right
 
 def _cells(row: ResultRow) -> tuple[str, ...]:
     return (row.label, row.value, row.half_width, row.unit, row.truth, row.difference)
-
-
-def _aligned(cells: Sequence[str], widths: Sequence[int]) -> str:
-    padded = [
-        cell.ljust(width) if i in _LEFT else cell.rjust(width)
-        for i, (cell, width) in enumerate(zip(cells, widths, strict=True))
-    ]
-    return "  ".join(padded).rstrip()
-
-
-def _wrapped(text: str) -> str:
-    return textwrap.fill(text, WIDTH, subsequent_indent="  ", break_on_hyphens=False)

@@ -34,7 +34,7 @@ import numpy as np
 
 import fieldmap
 from fieldmap.bench.bench_errors import Noise
-from fieldmap.bench.fault_outcome import HARMLESS, SILENT, Outcome, Twin, reduced, twin_of
+from fieldmap.bench.fault_outcome import Outcome, Twin, reduced, twin_of, unsaid
 from fieldmap.bench.faults import FAULTS, SEVERITIES, Setting, inject
 from fieldmap.bench.faults.ideal import REVEALABLE, Observer
 from fieldmap.errors import FieldmapError
@@ -186,10 +186,8 @@ def run_draw(
 def _whole(draw: str, seed: int) -> Trial:
     """The campaign without a fault."""
     own = drawn(draw, seed).twin
-    wrong = max(map(abs, own.errors.values()), default=0.0)
-    name = "harmless" if wrong <= HARMLESS else "off" if wrong <= SILENT else "silent"
     said = tuple(sorted(" ".join(one).strip() for one in own.said))
-    return trial("none", 0, draw, seed, Outcome(name, own.errors, said))
+    return trial("none", 0, draw, seed, Outcome(unsaid(own.errors), own.errors, said))
 
 
 def run(

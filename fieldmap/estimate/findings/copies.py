@@ -12,6 +12,7 @@ import numpy.typing as npt
 
 from fieldmap.estimate.findings.finding import Finding
 from fieldmap.estimate.findings.places import place
+from fieldmap.estimate.findings.thresholds import FAMILY_SHARE
 from fieldmap.estimate.resolution import flux_step
 
 if TYPE_CHECKING:
@@ -25,7 +26,6 @@ Floats = npt.NDArray[np.float64]
 Codes = npt.NDArray[np.complex128]
 Ints = npt.NDArray[np.intp]
 
-CHANCE: Final = 5e-5  # that two clean passes of a campaign agree by chance
 SAMPLES: Final = 256  # readings of a pass that are looked for in another
 FEWEST: Final = 8  # readings in a row that must agree
 LIKELIEST: Final = 0.995  # chance of agreement beyond which rounding hides the noise
@@ -65,7 +65,7 @@ def copy_findings(passes: Sequence[Pass]) -> list[Finding]:
     for a, b in combinations(readings, 2):
         if a.one is b.one:
             continue
-        finding = _same_file(a.one, b.one) or _shared(a, b, CHANCE / looks)
+        finding = _same_file(a.one, b.one) or _shared(a, b, FAMILY_SHARE / looks)
         if finding is not None:
             found.append(finding)
     return found

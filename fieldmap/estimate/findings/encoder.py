@@ -9,6 +9,7 @@ import numpy as np
 from fieldmap.estimate.findings.finding import Finding
 from fieldmap.estimate.findings.places import place
 from fieldmap.estimate.findings.steps import EDGE, Steps, steps_of
+from fieldmap.estimate.findings.thresholds import FAMILY_SHARE
 from fieldmap.estimate.findings.wild import Wild, wild_runs
 from fieldmap.readings.corrections import Correction
 
@@ -19,7 +20,6 @@ if TYPE_CHECKING:
 
 __all__ = ["encoder_findings"]
 
-CHANCE: Final = 5e-5  # of a false alarm in a whole campaign
 LEAST: Final = 1e-3  # of the usual way: a smaller jump is rounding
 STEPWISE: Final = 0.3  # of the travel in jumps: the stage goes from stop to stop
 RETURNS: Final = 0.2  # of a jump: what may be left when it is taken back
@@ -41,7 +41,7 @@ def encoder_findings(passes: Sequence[Pass]) -> list[Finding]:
     list of Finding
     """
     looks = max(sum(len(one.time) for one in passes), 1)
-    return [finding for one in passes for finding in _jumps(one, CHANCE / looks)]
+    return [finding for one in passes for finding in _jumps(one, FAMILY_SHARE / looks)]
 
 
 def _jumps(one: Pass, chance: float) -> list[Finding]:

@@ -26,7 +26,7 @@ from fieldmap.estimate.findings.stated import departures
 from fieldmap.estimate.findings.thresholds import beyond_chance, rarity
 from fieldmap.estimate.model import PassModel
 from fieldmap.estimate.noise import total
-from fieldmap.estimate.parameters import any_drift
+from fieldmap.estimate.parameters import drift_sd
 
 if TYPE_CHECKING:
     from collections.abc import Callable, Sequence
@@ -105,7 +105,7 @@ def blamed(
     """
     worst = list(range(len(passes)))
     if spoilt is not None:
-        misfit = [float(p.residual @ p.residual) / max(p.freedom, 1.0) for p in spoilt.passes]
+        misfit = [p.square / max(p.freedom, 1.0) for p in spoilt.passes]
         worst = np.argsort(misfit)[::-1].tolist()
     tried = {number: _without(passes, number, refit) for number in worst[:TRIED]}
     told = {number: one for number, one in tried.items() if one is not None}
@@ -144,7 +144,7 @@ def _without(
         fit = refit(others)
     except (FieldmapError, np.linalg.LinAlgError):
         return None
-    sizes = [excess(float(p.residual @ p.residual), max(p.freedom, 1.0)) for p in fit.passes]
+    sizes = [excess(p.square, max(p.freedom, 1.0)) for p in fit.passes]
     unease = max(float(np.abs(departures(fit)).max(initial=0.0)), *sizes)
     return _Without(unease, fit)
 
@@ -243,9 +243,7 @@ class _Compared:
         solved, model = self.solved, self._model()
         rows = model.rows(solved.state, solved.frame)
         half = solved.half_spread(rows.design.toarray().T)
-        known = self.one.integrator.u_drift
-        rate = any_drift(self.one) if known is None else known
-        drift = rate * np.diff(model.bins.time)
+        drift = drift_sd(self.one) * np.diff(model.bins.time)
         level = _level(self.fit, self.one)
         noise = total(model.noise(solved.state, level.walk, level.read, solved.jitter))
         return half.T @ half, np.asarray(noise @ np.eye(len(drift)) + np.outer(drift, drift))

@@ -15,6 +15,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.estimate.findings.finding import Finding
+from fieldmap.estimate.findings.thresholds import FAMILY_SHARE
 
 if TYPE_CHECKING:
     from collections.abc import Sequence
@@ -25,7 +26,6 @@ __all__ = ["pickup_findings"]
 
 Floats = npt.NDArray[np.float64]
 
-CHANCE: Final = 5e-5  # of a false alarm in a whole campaign
 FEWEST: Final = 256  # readings
 EVEN: Final = 0.02  # of a step: how far time stamps may be off a regular grid
 AROUND: Final = 48  # frequencies on either side that a line is held against
@@ -80,7 +80,7 @@ def pickup_findings(passes: Sequence[Pass]) -> list[Finding]:
     looks = max(sum(len(one.time) // 2 for one in passes), 1)
     found = []
     for one in passes:
-        line = _line(one, CHANCE / looks)
+        line = _line(one, FAMILY_SHARE / looks)
         if line is not None:
             found.append(_told(one, line))
     return found

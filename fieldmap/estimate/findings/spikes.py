@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass
 from typing import TYPE_CHECKING, Final
 
 import numpy as np
@@ -10,6 +10,7 @@ import numpy.typing as npt
 
 from fieldmap.estimate.findings.finding import Finding
 from fieldmap.estimate.findings.places import many, place
+from fieldmap.estimate.findings.thresholds import FAMILY_SHARE
 from fieldmap.estimate.findings.wild import FEWEST, Wild, wild_runs
 from fieldmap.estimate.resolution import flux_step, unswung
 from fieldmap.readings.checks import FEWEST_READINGS
@@ -24,7 +25,6 @@ __all__ = ["spike_findings", "without_spikes"]
 
 Floats = npt.NDArray[np.float64]
 
-CHANCE: Final = 5e-5  # of a false alarm in a whole campaign
 ISOLATED: Final = 2  # readings that are left out unasked
 LONGEST: Final = 6  # readings of a burst; a longer one is a step there and a step back
 SEVERAL: Final = 8  # bursts of a pass that are named one by one
@@ -102,20 +102,13 @@ def _without(one: Pass, spikes: Sequence[_Spike]) -> Pass:
         rows[spike.start : spike.start + spike.count] = False
     if rows.all() or np.count_nonzero(rows) < FEWEST_READINGS:
         return one
-    return replace(
-        one,
-        time=one.time[rows],
-        position=one.position[rows],
-        flux=one.flux[rows],
-        temperature=None if one.temperature is None else one.temperature[rows],
-        current=None if one.current is None else one.current[rows],
-    )
+    return one.only(rows)
 
 
 def _searched(passes: Sequence[Pass]) -> list[tuple[Pass, list[_Spike]]]:
     """Wild runs of each pass, at a chance that holds for all of them together."""
     looks = max(sum(len(one.time) for one in passes), 1)
-    return [(one, _spikes(one, CHANCE / looks)) for one in passes]
+    return [(one, _spikes(one, FAMILY_SHARE / looks)) for one in passes]
 
 
 def _spikes(one: Pass, chance: float) -> list[_Spike]:

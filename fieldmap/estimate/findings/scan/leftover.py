@@ -10,6 +10,7 @@ import numpy.typing as npt
 from fieldmap.estimate.findings.scan.scores import Scores
 from fieldmap.estimate.findings.scan.signatures import field_shapes
 from fieldmap.estimate.findings.thresholds import rarity
+from fieldmap.estimate.model import dense_columns
 
 if TYPE_CHECKING:
     from fieldmap.estimate.line_fit import LineFit
@@ -118,10 +119,9 @@ def whiteness(scores: Scores, number: int, residual: Floats) -> float:
     float
     """
     solved = scores.solved
-    design = solved.design(number)
-    used = np.flatnonzero(np.diff(design.tocsc().indptr))
-    white = scores.covariances[number].whiten(np.asarray(design[:, used].todense()))
-    gradient = np.zeros((design.shape[1], len(white)))
+    used, dense = dense_columns(solved.design(number))
+    white = scores.covariances[number].whiten(dense)
+    gradient = np.zeros((len(solved.values), len(white)))
     gradient[used] = white.T
     half = solved.half_spread(gradient)
     followed = float(np.sum(half[:, 1:] * half[:, :-1]))

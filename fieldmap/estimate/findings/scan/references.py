@@ -8,6 +8,7 @@ import numpy as np
 import numpy.typing as npt
 
 from fieldmap.estimate.findings.finding import Finding
+from fieldmap.estimate.findings.scan.scores import LEAST_LEFT
 from fieldmap.estimate.findings.thresholds import beyond, beyond_chance
 from fieldmap.readings.passes import FlipReference, PointReference
 
@@ -19,8 +20,6 @@ __all__ = ["contradictions", "reference_findings"]
 
 ALIKE = 1.01
 Floats = npt.NDArray[np.float64]
-
-LEAST_LEFT = 1e-6  # of a reference's variance: less is a reference that nothing else checks
 
 
 def contradictions(solved: Solved) -> Floats:

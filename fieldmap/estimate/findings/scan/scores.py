@@ -18,6 +18,8 @@ from typing import TYPE_CHECKING
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.model import dense_columns
+
 if TYPE_CHECKING:
     from fieldmap.estimate.solved import Solved
 
@@ -116,9 +118,9 @@ class Scores:
         """Test a step of the flux between any two neighbouring bins of a pass."""
         covariance, design = self.covariances[number], self.solved.design(number)
         own = covariance.inverse_bands()[0]
-        used = np.flatnonzero(np.diff(design.tocsc().indptr))
+        used, dense = dense_columns(design)
         gradient = np.zeros((design.shape[1], len(own)))
-        gradient[used] = covariance.solve(np.asarray(design[:, used].todense())).T
+        gradient[used] = covariance.solve(dense).T
         spread = np.square(self.solved.half_spread(gradient)).sum(axis=0)
         shared = [push.by_pass[number] for push, _ in self.accepted]
         return self._told(self.weighed[number].copy(), own, own - spread, shared)

@@ -7,7 +7,7 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 import numpy.typing as npt
 
-from fieldmap.estimate.findings.scan.signatures import field_steps, in_motion, slope
+from fieldmap.estimate.findings.scan.signatures import field_steps, slope, while_moving
 from fieldmap.readings.probe import Coil
 
 if TYPE_CHECKING:
@@ -15,13 +15,14 @@ if TYPE_CHECKING:
 
     from fieldmap.estimate.solved import Solved
 
-__all__ = ["shared_signatures"]
+__all__ = ["Shared", "shared_signatures"]
 
 Floats = npt.NDArray[np.float64]
 SharedKind = Literal["lag", "backlash", "window", "gain"]
+Shared = tuple[SharedKind, dict[int, Floats]]
 
 
-def shared_signatures(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Floats]]]:
+def shared_signatures(solved: Solved) -> Iterator[Shared]:
     """Signatures of what the campaign states to be certain: where it is not, it is an unknown.
 
     Parameters
@@ -49,10 +50,10 @@ def shared_signatures(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Fl
             yield "window", {n: _widening(solved, n) for n in own}
 
 
-def _of_stage(solved: Solved) -> Iterator[tuple[SharedKind, dict[int, Floats]]]:
+def _of_stage(solved: Solved) -> Iterator[Shared]:
     """A lag and a backlash, as far as they tell one pass from another."""
     moved = {
-        n: (slope(solved, n, solved.state.b), in_motion(model), model.bins)
+        n: (slope(solved, n, solved.state.b), while_moving(model), model.bins)
         for n, model in enumerate(solved.models)
     }
     speed, sense = solved.frame.speed, solved.frame.sense
@@ -69,4 +70,4 @@ def _widening(solved: Solved, number: int) -> Floats:
     """Increments if the window is longer by its own length."""
     model = solved.models[number]
     change = model.gain(solved.state) * (model.widening() @ solved.state.b)
-    return np.asarray(in_motion(model) * change)[:, None]
+    return np.asarray(while_moving(model) * change)[:, None]

@@ -12,6 +12,8 @@ from typing import TYPE_CHECKING, Literal
 import numpy as np
 import numpy.typing as npt
 
+from fieldmap.estimate.bins import in_motion
+
 if TYPE_CHECKING:
     from fieldmap.estimate.model import PassModel
     from fieldmap.estimate.solved import Solved
@@ -21,10 +23,10 @@ __all__ = [
     "Signatures",
     "field_shapes",
     "field_steps",
-    "in_motion",
     "pass_signatures",
     "slope",
     "step_within",
+    "while_moving",
 ]
 
 Floats = npt.NDArray[np.float64]
@@ -40,7 +42,6 @@ FaultKind = Literal[
     "drift follows temperature",
 ]
 
-STANDING = 0.1  # of the fastest bin: what is slower stands, and only jitters
 CUTS = 24  # places where a change within a pass is looked for
 BENDS = 6  # half waves of a drift within a pass
 MOST_PIECES = 24  # of a difference between the field of a pass and that of the others
@@ -90,7 +91,7 @@ def pass_signatures(solved: Solved, number: int, b: Floats) -> list[Signatures]:
     """
     model = solved.models[number]
     steps, swing = field_steps(solved, number, b), slope(solved, number, b)
-    moving = in_motion(model)
+    moving = while_moving(model)
     time, place = _centred(model.bins.time), model.bins.position - model.bins.position.mean()
     later = 0.5 * (time[1:] + time[:-1])
     found = [
@@ -110,13 +111,13 @@ def pass_signatures(solved: Solved, number: int, b: Floats) -> list[Signatures]:
     return found
 
 
-def in_motion(model: PassModel) -> Floats:
+def while_moving(model: PassModel) -> Floats:
     """1 for each increment of a pass over which the probe moved, 0 where it stood.
 
     A probe that stands is recorded at positions that jitter. What they would change is in the
     residuals with the opposite sign: a signature made of it would always be found.
     """
-    fast = np.abs(model.bins.speed) >= STANDING * np.abs(model.bins.speed).max()
+    fast = in_motion(model.bins.speed)
     return np.asarray(fast[1:] & fast[:-1], dtype=float)
 
 
@@ -141,13 +142,13 @@ def field_shapes(solved: Solved, number: int, piece: float) -> Floats:
     middles = model.spline.middles()
     hats = np.array([np.interp(middles, corners, one) for one in np.eye(count)]).T
     rows = solved.design(number)[:, : model.spline.size]
-    return np.asarray(in_motion(model)[:, None] * (rows @ hats))
+    return np.asarray(while_moving(model)[:, None] * (rows @ hats))
 
 
 def field_steps(solved: Solved, number: int, b: Floats) -> Floats:
     """Increments of a pass that the field b (T, recorded frame) makes while it moves, V s."""
     steps = solved.design(number)[:, : len(b)] @ b
-    return np.asarray(in_motion(solved.models[number]) * steps)
+    return np.asarray(while_moving(solved.models[number]) * steps)
 
 
 def step_within(solved: Solved, number: int, first: int) -> tuple[Floats, npt.NDArray[np.intp]]:

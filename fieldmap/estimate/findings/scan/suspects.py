@@ -14,7 +14,7 @@ import numpy.typing as npt
 
 from fieldmap.estimate.findings.scan.left_out import field_without
 from fieldmap.estimate.findings.scan.scores import Scores
-from fieldmap.estimate.findings.scan.shared import shared_signatures
+from fieldmap.estimate.findings.scan.shared import Shared, shared_signatures
 from fieldmap.estimate.findings.scan.signatures import FaultKind, pass_signatures, step_within
 from fieldmap.estimate.findings.thresholds import beyond, beyond_chance
 
@@ -98,13 +98,14 @@ def suspects(scores: Scores) -> list[Suspect]:
     """
     found: list[Suspect] = []
     fields = [scores.solved.state.b] * len(scores.solved.models)
+    shared = list(shared_signatures(scores.solved))
     for _ in range(MOST):
-        best = _best(scores, fields)
+        best = _best(scores, fields, shared)
         if best is None:
             break
         if abs(best.suspect.normal) > GROSS and not found:
             fields = [field_without(scores.solved, n) for n in range(len(fields))]
-            best = _best(scores, fields) or best
+            best = _best(scores, fields, shared) or best
         found.append(best.suspect)
         scores.accept(dict(best.columns))
     return found
@@ -125,13 +126,16 @@ def faulty(fit: LineFit) -> bool:
     if fit.solved is None:
         return False
     scores = Scores(fit.solved)
-    best = _best(scores, [fit.solved.state.b] * len(fit.solved.models))
+    fields = [fit.solved.state.b] * len(fit.solved.models)
+    best = _best(scores, fields, list(shared_signatures(fit.solved)))
     return best is not None and abs(best.suspect.normal) > GROSS
 
 
-def _best(scores: Scores, fields: list[Floats]) -> _Trial | None:
+def _best(scores: Scores, fields: list[Floats], shared: list[Shared]) -> _Trial | None:
     """The most telling fault beyond its threshold; of nearly equal ones the plainest."""
-    telling = [t for t in _trials(scores, fields) if abs(t.suspect.normal) > t.suspect.allowed]
+    telling = [
+        t for t in _trials(scores, fields, shared) if abs(t.suspect.normal) > t.suspect.allowed
+    ]
     most = max((abs(trial.suspect.normal) for trial in telling), default=0.0)
     enough = ALMOST * most**2 - BY_CHANCE
     near = [trial for trial in telling if trial.suspect.normal**2 >= enough]
@@ -145,7 +149,7 @@ def _plainness(trial: _Trial) -> tuple[int, float]:
     return rank, -abs(trial.suspect.normal)
 
 
-def _trials(scores: Scores, fields: list[Floats]) -> Iterator[_Trial]:
+def _trials(scores: Scores, fields: list[Floats], shared: list[Shared]) -> Iterator[_Trial]:
     solved = scores.solved
     count = len(solved.models)
     bins = sum(len(model.bins.time) for model in solved.models)
@@ -163,7 +167,7 @@ def _trials(scores: Scores, fields: list[Floats]) -> Iterator[_Trial]:
             reading = int(solved.models[number].bins.starts[start])
             threshold = beyond(count * len(score.normal))
             yield _trial(signatures.kind, (number,), score, best, threshold, columns, reading)
-    for kind, columns in shared_signatures(solved):
+    for kind, columns in shared:
         score = scores.test_all(columns)
         yield _trial(kind, tuple(columns), score, 0, beyond(4), columns, 0)
 
